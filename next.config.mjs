@@ -1,0 +1,15 @@
+/** @type {import('next').NextConfig} */
+export default {
+  poweredByHeader: false,
+  reactStrictMode: true,
+  serverExternalPackages: [
+    '@libsql/client',
+    '@node-rs/argon2',
+    'audio-decode',
+    '@wasm-audio-decoders/flac',
+    '@wasm-audio-decoders/ogg-vorbis',
+    'ogg-opus-decoder',
+    'mpg123-decoder',
+    'pino',
+  ],
+};
