@@ -1,0 +1,130 @@
+import { index, integer, primaryKey, sqliteTable, text, uniqueIndex } from 'drizzle-orm/sqlite-core';
+import { at } from './columns';
+
+const stamp = (name: string) => integer(name, { mode: 'timestamp_ms' });
+
+/** People. The table names and columns of this first group are Better Auth's. */
+export const user = sqliteTable('user', {
+  id: text('id').primaryKey(),
+  name: text('name').notNull(),
+  email: text('email').notNull().unique(),
+  emailVerified: integer('email_verified', { mode: 'boolean' }).notNull().default(false),
+  image: text('image'),
+  createdAt: stamp('created_at').notNull(),
+  updatedAt: stamp('updated_at').notNull(),
+  twoFactorEnabled: integer('two_factor_enabled', { mode: 'boolean' }).default(false),
+  /** What a person does, in words, for the plate: "Respiratory medicine". */
+  jobTitle: text('job_title'),
+  /** Set when a person left: may not sign in, and stays named in everything they did. */
+  leftAt: at('left_at'),
+});
+
+export const session = sqliteTable(
+  'session',
+  {
+    id: text('id').primaryKey(),
+    expiresAt: stamp('expires_at').notNull(),
+    token: text('token').notNull().unique(),
+    createdAt: stamp('created_at').notNull(),
+    updatedAt: stamp('updated_at').notNull(),
+    ipAddress: text('ip_address'),
+    userAgent: text('user_agent'),
+    userId: text('user_id')
+      .notNull()
+      .references(() => user.id, { onDelete: 'cascade' }),
+  },
+  (t) => [index('session_by_user').on(t.userId)],
+);
+
+export const account = sqliteTable(
+  'account',
+  {
+    id: text('id').primaryKey(),
+    accountId: text('account_id').notNull(),
+    providerId: text('provider_id').notNull(),
+    userId: text('user_id')
+      .notNull()
+      .references(() => user.id, { onDelete: 'cascade' }),
+    accessToken: text('access_token'),
+    refreshToken: text('refresh_token'),
+    idToken: text('id_token'),
+    accessTokenExpiresAt: stamp('access_token_expires_at'),
+    refreshTokenExpiresAt: stamp('refresh_token_expires_at'),
+    scope: text('scope'),
+    password: text('password'),
+    createdAt: stamp('created_at').notNull(),
+    updatedAt: stamp('updated_at').notNull(),
+  },
+  (t) => [index('account_by_user').on(t.userId)],
+);
+
+export const verification = sqliteTable(
+  'verification',
+  {
+    id: text('id').primaryKey(),
+    identifier: text('identifier').notNull(),
+    value: text('value').notNull(),
+    expiresAt: stamp('expires_at').notNull(),
+    createdAt: stamp('created_at').notNull(),
+    updatedAt: stamp('updated_at').notNull(),
+  },
+  (t) => [index('verification_by_identifier').on(t.identifier)],
+);
+
+export const twoFactor = sqliteTable(
+  'two_factor',
+  {
+    id: text('id').primaryKey(),
+    secret: text('secret').notNull(),
+    backupCodes: text('backup_codes').notNull(),
+    userId: text('user_id')
+      .notNull()
+      .references(() => user.id, { onDelete: 'cascade' }),
+    verified: integer('verified', { mode: 'boolean' }).default(true),
+  },
+  (t) => [index('two_factor_by_user').on(t.userId)],
+);
+
+export const rateLimit = sqliteTable('rate_limit', {
+  id: text('id').primaryKey(),
+  key: text('key').notNull().unique(),
+  count: integer('count').notNull(),
+  lastRequest: integer('last_request').notNull(),
+});
+
+/** Roles are ours: a person may hold several. */
+export const personRole = sqliteTable(
+  'person_role',
+  {
+    personId: text('person_id')
+      .notNull()
+      .references(() => user.id),
+    role: text('role', { enum: ['biomed', 'clinician', 'itadmin', 'auditor'] }).notNull(),
+    givenBy: text('given_by'),
+    givenAt: at('given_at').notNull(),
+  },
+  (t) => [primaryKey({ columns: [t.personId, t.role] })],
+);
+
+export const invitation = sqliteTable(
+  'invitation',
+  {
+    id: text('id').primaryKey(),
+    email: text('email').notNull(),
+    name: text('name').notNull(),
+    /** Comma-separated role ids; wards as ward ids. Both small and read whole. */
+    roles: text('roles').notNull(),
+    wardIds: text('ward_ids').notNull().default(''),
+    jobTitle: text('job_title'),
+    /** SHA-256 of the token in the mail, hex. */
+    tokenHash: text('token_hash').notNull(),
+    invitedBy: text('invited_by')
+      .notNull()
+      .references(() => user.id),
+    createdAt: at('created_at').notNull(),
+    expiresAt: at('expires_at').notNull(),
+    acceptedAt: at('accepted_at'),
+    withdrawnAt: at('withdrawn_at'),
+  },
+  (t) => [uniqueIndex('invitation_by_token').on(t.tokenHash), index('invitation_by_email').on(t.email)],
+);
