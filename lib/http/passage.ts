@@ -1,0 +1,20 @@
+import { insertFiling, placementOf } from '@/lib/filing/placeRecording';
+import { createAnalysisPool, type AnalysisPool } from '@/lib/ingest/analysisPool';
+import type { IngestServices, PlaceRecording } from '@/lib/ingest/completeRecording';
+import type { Services } from '@/lib/platform/services';
+
+/** Where ingestion and filing meet: ingestion asks in its own transaction where the clip belongs. */
+const placeRecording: PlaceRecording = async (tx, clip, nowMs) => {
+  const place = await placementOf(tx, clip);
+  if (typeof place === 'string') return { tray: place };
+  await insertFiling(tx, clip.id, place, nowMs);
+  return { filed: place };
+};
+
+const shared = globalThis as { bellkeepAnalysis?: AnalysisPool };
+
+/** The services of a request, with what only ingestion needs: the analysing threads and the way to filing. */
+export function ingestServices(services: Services): IngestServices {
+  shared.bellkeepAnalysis ??= createAnalysisPool();
+  return { ...services, analysis: shared.bellkeepAnalysis, place: placeRecording };
+}
