@@ -1,0 +1,34 @@
+import { applyMigrations } from '@/db/migrate';
+import { sweepRecordings } from '@/lib/ingest/sweep';
+import { currentSigningKey } from '@/lib/keys/signingKeys';
+import { startOutbox } from '@/lib/platform/outbox';
+import { recordPeerAddresses } from './clientAddress';
+import { ingestServices } from './passage';
+import { getServices } from './services';
+
+const SWEEP_EVERY_MS = 30_000;
+
+/** What one web process does beside answering. All of it may run in several processes at once. */
+export async function startProcess(): Promise<void> {
+  recordPeerAddresses();
+  const services = await getServices();
+  await applyMigrations(services.database);
+  await currentSigningKey(services, 'device-token');
+  startOutbox(services);
+
+  let sweeping = false;
+  const sweep = setInterval(async () => {
+    if (sweeping) return;
+    sweeping = true;
+    try {
+      const done = await sweepRecordings(ingestServices(services));
+      if (done > 0) services.log.info({ done }, 'the sweep carried clips on');
+    } catch (error) {
+      services.log.error({ err: error }, 'the sweep failed');
+    } finally {
+      sweeping = false;
+    }
+  }, SWEEP_EVERY_MS);
+  sweep.unref();
+  services.log.info({ origin: services.env.BELLKEEP_ORIGIN }, 'Bellkeep is up');
+}
