@@ -4,7 +4,19 @@ import { existsSync, readdirSync, readFileSync, statSync, writeFileSync } from '
 import { join } from 'node:path';
 
 const STAMP = '.next/bellkeep-built';
-const SOURCES = ['app', 'components', 'db', 'lib', 'public', 'next.config.mjs', 'postcss.config.mjs', 'proxy.ts', 'instrumentation.ts', 'package-lock.json', 'tsconfig.json'];
+const SOURCES = [
+  'app',
+  'components',
+  'db',
+  'lib',
+  'public',
+  'next.config.mjs',
+  'postcss.config.mjs',
+  'proxy.ts',
+  'instrumentation.ts',
+  'package-lock.json',
+  'tsconfig.json',
+];
 
 function* filesOf(path) {
   if (!existsSync(path)) return;
@@ -14,7 +26,8 @@ function* filesOf(path) {
 
 function sourceHash() {
   const hash = createHash('sha256');
-  for (const path of SOURCES.flatMap((source) => [...filesOf(source)])) hash.update(path).update('\0').update(readFileSync(path));
+  for (const path of SOURCES.flatMap((source) => [...filesOf(source)]))
+    hash.update(path).update('\0').update(readFileSync(path));
   return hash.digest('hex');
 }
 
@@ -28,8 +41,12 @@ export async function ensureBuilt() {
     env: { ...process.env, NODE_ENV: 'production', NEXT_TELEMETRY_DISABLED: '1' },
   });
   let said = '';
-  child.stdout.on('data', (text) => { said += text; });
-  child.stderr.on('data', (text) => { said += text; });
+  child.stdout.on('data', (text) => {
+    said += text;
+  });
+  child.stderr.on('data', (text) => {
+    said += text;
+  });
   const code = await new Promise((resolve) => child.on('exit', resolve));
   if (code !== 0) {
     console.error(said);

@@ -5,6 +5,10 @@ import { ensureInstalled } from './install.mjs';
 // npm run passage -- [--json] [--model-rate HZ] FILE...: install and build what is missing, then run.
 ensureInstalled();
 if (!(await ensureBuilt())) process.exit(1);
-const child = spawn(process.execPath, ['--import', 'tsx', 'lib/launch/passageRun.ts', ...process.argv.slice(2)], { stdio: 'inherit' });
+const child = spawn(
+  process.execPath,
+  ['--import', 'tsx', 'lib/launch/passageRun.ts', ...process.argv.slice(2)],
+  { stdio: 'inherit' },
+);
 for (const signal of ['SIGINT', 'SIGTERM']) process.on(signal, () => child.kill(signal));
 child.on('exit', (code) => process.exit(code ?? 1));

@@ -51,7 +51,9 @@ export class Household {
 export async function untilAnswers(url, entry, milliseconds = 60_000) {
   const until = Date.now() + milliseconds;
   let ended = null;
-  entry.ended.then((how) => { ended = how; });
+  entry.ended.then((how) => {
+    ended = how;
+  });
   for (;;) {
     if (ended) throw new Error(`${entry.name} ended at once:\n${entry.said}`);
     try {

@@ -32,12 +32,26 @@ export function localSettings({ folder, webPort, storagePort }) {
 
 /** Arguments of node that start the storage fake with these settings. */
 export const storageFakeArgs = (settings, folder) => [
-  '--import', 'tsx', 'storage-fake/server.ts',
-  '--port', new URL(settings.S3_ENDPOINT).port,
-  '--dir', join(folder, 'objects'),
-  '--access-key', settings.S3_ACCESS_KEY_ID,
-  '--secret-key', settings.S3_SECRET_ACCESS_KEY,
-  '--bucket', settings.S3_BUCKET,
+  '--import',
+  'tsx',
+  'storage-fake/server.ts',
+  '--port',
+  new URL(settings.S3_ENDPOINT).port,
+  '--dir',
+  join(folder, 'objects'),
+  '--access-key',
+  settings.S3_ACCESS_KEY_ID,
+  '--secret-key',
+  settings.S3_SECRET_ACCESS_KEY,
+  '--bucket',
+  settings.S3_BUCKET,
 ];
 
-export const webArgs = (port) => ['node_modules/next/dist/bin/next', 'start', '-p', String(port), '-H', '127.0.0.1'];
+export const webArgs = (port) => [
+  'node_modules/next/dist/bin/next',
+  'start',
+  '-p',
+  String(port),
+  '-H',
+  '127.0.0.1',
+];
