@@ -3,7 +3,12 @@ import { credential, device, deviceModel, proofSeen } from '@/db/schema';
 import { isUniqueViolation, type Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
 import { SERVICE_ACTOR } from '@/lib/custody/entry';
-import { type AuthenticatedDevice, type DeviceModelRow, type DeviceRow, deviceActor } from '@/lib/keys/device';
+import {
+  type AuthenticatedDevice,
+  type DeviceModelRow,
+  type DeviceRow,
+  deviceActor,
+} from '@/lib/keys/device';
 import { type CredentialRow, verifyToken } from '@/lib/keys/token';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
@@ -24,7 +29,11 @@ const refused = (why: string) => new Refusal('token-invalid', undefined, {}, { c
  * @param address the called address as devices see it, without query
  * @throws Refusal `token-invalid`, `proof-invalid`, `use-dpop-nonce`
  */
-export async function authenticateDevice(services: Needs, request: Request, address: string): Promise<AuthenticatedDevice> {
+export async function authenticateDevice(
+  services: Needs,
+  request: Request,
+  address: string,
+): Promise<AuthenticatedDevice> {
   const { scheme, token } = readAuthorization(request);
   const claims = await verifyToken(services, token);
   const [row] = await services.read
@@ -34,7 +43,11 @@ export async function authenticateDevice(services: Needs, request: Request, addr
     .innerJoin(deviceModel, eq(deviceModel.id, device.modelId))
     .where(eq(credential.id, claims.credentialId))
     .limit(1);
-  if (!row || row.credential.deviceId !== claims.deviceId || row.credential.boundThumbprint !== claims.thumbprint) {
+  if (
+    !row ||
+    row.credential.deviceId !== claims.deviceId ||
+    row.credential.boundThumbprint !== claims.thumbprint
+  ) {
     throw refused('no such credential');
   }
   const now = services.clock.now();
@@ -44,7 +57,13 @@ export async function authenticateDevice(services: Needs, request: Request, addr
     if (scheme !== 'dpop') throw refused('bound credential sent as bearer');
     const proof = request.headers.get('dpop');
     if (proof === null) throw new Refusal('proof-invalid', 'The request carries no DPoP proof.');
-    jti = await verifyProof(services, { proof, method: request.method, url: address, token, thumbprint: row.credential.boundThumbprint });
+    jti = await verifyProof(services, {
+      proof,
+      method: request.method,
+      url: address,
+      token,
+      thumbprint: row.credential.boundThumbprint,
+    });
   } else if (scheme !== 'bearer' || row.model.signsRequests) {
     throw refused('plain bearer is not allowed for this model');
   }
@@ -71,7 +90,11 @@ function standingOf(row: CredentialRow, now: number): string {
   return 'good';
 }
 
-async function noteMisuse(services: Needs, row: { credential: CredentialRow; device: DeviceRow }, why: string) {
+async function noteMisuse(
+  services: Needs,
+  row: { credential: CredentialRow; device: DeviceRow },
+  why: string,
+) {
   if (why === 'expired') return;
   services.log.warn({ credentialId: row.credential.id, why }, 'an ended credential was used');
   await services.write((tx) =>
@@ -79,18 +102,28 @@ async function noteMisuse(services: Needs, row: { credential: CredentialRow; dev
       {
         kind: 'credential-misused',
         actor: deviceActor(row.device),
-        subjects: [{ kind: 'device', id: row.device.id }, { kind: 'credential', id: row.credential.id }],
+        subjects: [
+          { kind: 'device', id: row.device.id },
+          { kind: 'credential', id: row.credential.id },
+        ],
         detail: { why },
       },
     ]),
   );
 }
 
-async function noteUse(tx: Tx, row: { credential: CredentialRow; device: DeviceRow; model: DeviceModelRow }, jti: string | null, now: number) {
+async function noteUse(
+  tx: Tx,
+  row: { credential: CredentialRow; device: DeviceRow; model: DeviceModelRow },
+  jti: string | null,
+  now: number,
+) {
   if (jti !== null) {
     await tx.delete(proofSeen).where(lt(proofSeen.expiresAt, now));
     try {
-      await tx.insert(proofSeen).values({ key: `${row.credential.id} ${jti}`, expiresAt: now + proofMemoryMs });
+      await tx
+        .insert(proofSeen)
+        .values({ key: `${row.credential.id} ${jti}`, expiresAt: now + proofMemoryMs });
     } catch (error) {
       if (isUniqueViolation(error)) throw new Refusal('proof-invalid', 'This proof was used before.');
       throw error;
@@ -101,11 +134,25 @@ async function noteUse(tx: Tx, row: { credential: CredentialRow; device: DeviceR
   if (!fresh) return;
   await tx
     .update(credential)
-    .set({ lastUsedAt: now, firstUsedAt: fresh.firstUsedAt ?? now, state: fresh.state === 'issued' ? 'in-use' : fresh.state })
+    .set({
+      lastUsedAt: now,
+      firstUsedAt: fresh.firstUsedAt ?? now,
+      state: fresh.state === 'issued' ? 'in-use' : fresh.state,
+    })
     .where(eq(credential.id, fresh.id));
   if (fresh.firstUsedAt !== null) return;
-  const subjects = [{ kind: 'device' as const, id: row.device.id }, { kind: 'credential' as const, id: fresh.id }];
-  await appendEntries(tx, now, [{ kind: 'credential-first-used', actor: deviceActor(row.device), subjects, detail: { label: fresh.label } }]);
+  const subjects = [
+    { kind: 'device' as const, id: row.device.id },
+    { kind: 'credential' as const, id: fresh.id },
+  ];
+  await appendEntries(tx, now, [
+    {
+      kind: 'credential-first-used',
+      actor: deviceActor(row.device),
+      subjects,
+      detail: { label: fresh.label },
+    },
+  ]);
   if (fresh.predecessorId === null) return;
   const [retired] = await tx
     .update(credential)
@@ -117,7 +164,10 @@ async function noteUse(tx: Tx, row: { credential: CredentialRow; device: DeviceR
       {
         kind: 'credential-retired',
         actor: SERVICE_ACTOR,
-        subjects: [{ kind: 'device', id: row.device.id }, { kind: 'credential', id: retired.id }],
+        subjects: [
+          { kind: 'device', id: row.device.id },
+          { kind: 'credential', id: retired.id },
+        ],
         detail: { label: retired.label, why: 'its successor is in use' },
       },
     ]);

@@ -25,15 +25,20 @@ const invalid = (cause: string | Error) => new Refusal('proof-invalid', undefine
  * @returns the proof's jti, to be remembered against replay
  * @throws Refusal `proof-invalid`, `use-dpop-nonce`
  */
-export async function verifyProof(services: Pick<Services, 'env' | 'clock'>, expected: ProofFor): Promise<string> {
+export async function verifyProof(
+  services: Pick<Services, 'env' | 'clock'>,
+  expected: ProofFor,
+): Promise<string> {
   let nonce: unknown;
   let jti: string;
   try {
     if (expected.proof.length > 4096) throw invalid('too long');
     const header = decodeProtectedHeader(expected.proof);
     const jwk = PublicJwk.safeParse(publicMembers(header.jwk));
-    if (!jwk.success || Object.keys(header.jwk ?? {}).includes('d')) throw invalid('key in header is not a public key of ours');
-    if ((await calculateJwkThumbprint(jwk.data, 'sha256')) !== expected.thumbprint) throw invalid('another key');
+    if (!jwk.success || Object.keys(header.jwk ?? {}).includes('d'))
+      throw invalid('key in header is not a public key of ours');
+    if ((await calculateJwkThumbprint(jwk.data, 'sha256')) !== expected.thumbprint)
+      throw invalid('another key');
     const algorithms = jwk.data.kty === 'OKP' ? ['EdDSA', 'Ed25519'] : ['ES256'];
     const { payload } = await jwtVerify(expected.proof, EmbeddedJWK, {
       algorithms,
@@ -44,20 +49,32 @@ export async function verifyProof(services: Pick<Services, 'env' | 'clock'>, exp
     });
     if (payload.htm !== expected.method) throw invalid('htm');
     if (!sameAddress(payload.htu, expected.url)) throw invalid('htu');
-    if (payload.ath !== createHash('sha256').update(expected.token, 'ascii').digest('base64url')) throw invalid('ath');
-    if (typeof payload.jti !== 'string' || payload.jti.length < 8 || payload.jti.length > 200) throw invalid('jti');
+    if (payload.ath !== createHash('sha256').update(expected.token, 'ascii').digest('base64url'))
+      throw invalid('ath');
+    if (typeof payload.jti !== 'string' || payload.jti.length < 8 || payload.jti.length > 200)
+      throw invalid('jti');
     nonce = payload.nonce;
     jti = payload.jti;
   } catch (cause) {
-    if (cause instanceof errors.JOSEError || cause instanceof TypeError || cause instanceof SyntaxError || cause instanceof DOMException) {
+    if (
+      cause instanceof errors.JOSEError ||
+      cause instanceof TypeError ||
+      cause instanceof SyntaxError ||
+      cause instanceof DOMException
+    ) {
       throw invalid(cause);
     }
     throw cause;
   }
   if (!isFreshNonce(services, nonce)) {
-    throw new Refusal('use-dpop-nonce', undefined, {}, {
-      headers: { 'DPoP-Nonce': currentNonce(services), 'WWW-Authenticate': 'DPoP error="use_dpop_nonce"' },
-    });
+    throw new Refusal(
+      'use-dpop-nonce',
+      undefined,
+      {},
+      {
+        headers: { 'DPoP-Nonce': currentNonce(services), 'WWW-Authenticate': 'DPoP error="use_dpop_nonce"' },
+      },
+    );
   }
   return jti;
 }
