@@ -119,7 +119,9 @@ function amzHeaders(request: S3Request): string {
 }
 
 function resourceOf(request: S3Request): string {
-  const path = request.virtualHost ? `/${request.bucket}${request.rawPath}` : request.rawPath;
+  const sent = request.virtualHost ? `/${request.bucket}${request.rawPath}` : request.rawPath;
+  // A bucket is signed with a slash behind it, whether or not one was sent.
+  const path = request.key === undefined && !sent.endsWith('/') ? `${sent}/` : sent;
   const parameters = [...request.query]
     .filter(([name]) => SUBRESOURCES.has(name))
     .sort(([a], [b]) => (a < b ? -1 : 1))

@@ -1,0 +1,66 @@
+import { randomUUID } from 'node:crypto';
+import { GetObjectLockConfigurationCommand } from '@aws-sdk/client-s3';
+import type { Connection } from './client';
+import { saysNoObjectLock, toStorageError } from './errors';
+import type { CheckReport, CheckStep, Storage } from './port';
+
+/**
+ * Do for real, with a small object under `prefix`, what Bellkeep needs of a store. Later steps are tried even where
+ * an earlier one failed, and the object is removed in any case.
+ */
+export async function checkStorage(
+  storage: Storage,
+  connection: Connection,
+  prefix: string,
+): Promise<CheckReport> {
+  const key = `${prefix}check-${randomUUID()}`;
+  const body = Buffer.from(`storage check ${key}\n`);
+  const steps: CheckStep[] = [];
+  const step = async (name: string, work: () => Promise<string>): Promise<void> => {
+    try {
+      steps.push({ name, ok: true, detail: await work() });
+    } catch (error) {
+      const detail = error instanceof Unexpected ? error.message : toStorageError(error, name, key).code;
+      steps.push({ name, ok: false, detail });
+    }
+  };
+  const put = () => storage.put({ key, body, contentType: 'text/plain', ifAbsent: true });
+  await step('write', async () => {
+    if ((await put()).outcome !== 'stored') throw new Unexpected('a new key was said to exist');
+    return `${body.length} bytes`;
+  });
+  await step('refuse to overwrite', async () => {
+    if ((await put()).outcome !== 'exists')
+      throw new Unexpected('the store overwrote an object it was told to leave');
+    return 'conditional writes are kept';
+  });
+  await step('read', async () => {
+    const read = await storage.getBytes(key, 1024);
+    if (!body.equals(read)) throw new Unexpected('other bytes came back');
+    return 'the same bytes came back';
+  });
+  await step('list', async () => {
+    const page = await storage.list(key);
+    if (page.entries[0]?.key !== key) throw new Unexpected('the object is not in the listing');
+    return 'the object is in the listing';
+  });
+  await step('remove', async () => {
+    await storage.remove(key);
+    if ((await storage.head(key)) !== null) throw new Unexpected('the object is still there');
+    return 'the object is gone';
+  });
+  const objectLock = await hasObjectLock(connection);
+  return { ok: steps.every(({ ok }) => ok), steps, objectLock };
+}
+
+class Unexpected extends Error {}
+
+async function hasObjectLock({ client, bucket }: Connection): Promise<boolean> {
+  try {
+    const answer = await client.send(new GetObjectLockConfigurationCommand({ Bucket: bucket }));
+    return answer.ObjectLockConfiguration?.ObjectLockEnabled === 'Enabled';
+  } catch (error) {
+    if (saysNoObjectLock(error)) return false;
+    return false;
+  }
+}
