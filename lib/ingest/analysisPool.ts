@@ -27,7 +27,9 @@ interface Thread {
 
 function startWorker(): Worker {
   // Under the framework the thread's code is bundled; elsewhere it is read as TypeScript.
-  const worker = new Worker(new URL('./worker.ts', import.meta.url), { execArgv: process.env.NEXT_RUNTIME ? [] : ['--import', 'tsx'] });
+  const worker = new Worker(new URL('./worker.ts', import.meta.url), {
+    execArgv: process.env.NEXT_RUNTIME ? [] : ['--import', 'tsx'],
+  });
   worker.unref();
   return worker;
 }
@@ -63,7 +65,11 @@ export function createAnalysisPool(size = Math.max(2, availableParallelism())): 
     }
   }
 
-  const take = (long: boolean) => new Promise<Thread>((resolve) => { waiting.push({ long, resolve }); hand(); });
+  const take = (long: boolean) =>
+    new Promise<Thread>((resolve) => {
+      waiting.push({ long, resolve });
+      hand();
+    });
 
   function give(thread: Thread, long: boolean, broken: boolean): void {
     if (long) longRunning--;
@@ -95,20 +101,33 @@ export function createAnalysisPool(size = Math.max(2, availableParallelism())): 
   };
 }
 
-async function converse(worker: Worker, bytes: AsyncIterable<Uint8Array>, request: AnalysisRequest): Promise<AnalysisResult | null | 'broken'> {
+async function converse(
+  worker: Worker,
+  bytes: AsyncIterable<Uint8Array>,
+  request: AnalysisRequest,
+): Promise<AnalysisResult | null | 'broken'> {
   let underWay = 0;
   let roomFor: (() => void) | null = null;
   let over: AnalysisResult | null | 'broken' | undefined;
   let settle: (outcome: AnalysisResult | null | 'broken') => void = () => undefined;
   const outcome = new Promise<AnalysisResult | null | 'broken'>((resolve) => {
-    settle = (value) => { over = value; roomFor?.(); resolve(value); };
+    settle = (value) => {
+      over = value;
+      roomFor?.();
+      resolve(value);
+    };
   });
   let silence = setTimeout(() => settle('broken'), SILENCE_MS);
-  const stillThere = () => { clearTimeout(silence); silence = setTimeout(() => settle('broken'), SILENCE_MS); };
+  const stillThere = () => {
+    clearTimeout(silence);
+    silence = setTimeout(() => settle('broken'), SILENCE_MS);
+  };
   const onMessage = (message: FromWorker) => {
     stillThere();
-    if (message.type === 'taken') { underWay--; roomFor?.(); }
-    else settle(message.type === 'result' ? message.result : null);
+    if (message.type === 'taken') {
+      underWay--;
+      roomFor?.();
+    } else settle(message.type === 'result' ? message.result : null);
   };
   const onDeath = () => settle('broken');
   worker.on('message', onMessage).on('error', onDeath).on('exit', onDeath);
@@ -117,7 +136,10 @@ async function converse(worker: Worker, bytes: AsyncIterable<Uint8Array>, reques
     say({ type: 'start', request });
     for await (const chunk of bytes) {
       if (over !== undefined) continue; // the hash still wants the rest
-      if (underWay >= CHUNKS_UNDER_WAY) await new Promise<void>((resolve) => { roomFor = resolve; });
+      if (underWay >= CHUNKS_UNDER_WAY)
+        await new Promise<void>((resolve) => {
+          roomFor = resolve;
+        });
       // A copy of its own: what storage hands out may share its buffer with other answers.
       const own = new Uint8Array(chunk);
       underWay++;

@@ -7,6 +7,7 @@ import { StorageError } from '@/lib/storage/port';
 import type { IngestServices, RecordingRow } from './completeRecording';
 import type { AnalysisRequest } from './messages';
 import { type Arrived, readArrived } from './readArrived';
+import { retentionEnd } from './sealRecording';
 
 /**
  * Awaited to received: read what was put, check that it is what was announced, and write so.
@@ -17,14 +18,23 @@ import { type Arrived, readArrived } from './readArrived';
  *
  * @throws Refusal `bytes-missing`, `bytes-mismatch`, `storage-unavailable`
  */
-export async function arrive(services: IngestServices, row: RecordingRow, request: AnalysisRequest): Promise<Arrived> {
+export async function arrive(
+  services: IngestServices,
+  row: RecordingRow,
+  request: AnalysisRequest,
+): Promise<Arrived> {
   let arrived: Arrived;
   try {
     arrived = await readArrived(services.storage, services.analysis, row.slotKey, request);
   } catch (error) {
     if (!(error instanceof StorageError)) throw error;
     if (error.code === 'not-found') throw new Refusal('bytes-missing', undefined, { recording: row.number });
-    throw new Refusal('storage-unavailable', undefined, {}, { cause: error, headers: { 'retry-after': '2' } });
+    throw new Refusal(
+      'storage-unavailable',
+      undefined,
+      {},
+      { cause: error, headers: { 'retry-after': '2' } },
+    );
   }
   if (arrived.bytes !== row.declaredBytes || arrived.sha256 !== row.declaredSha256) {
     await quarantine(services, row, arrived);
@@ -43,8 +53,17 @@ export async function arrive(services: IngestServices, row: RecordingRow, reques
       {
         kind: 'received',
         actor: deviceActor(sender ?? { id: row.deviceId, assetTag: row.deviceId }),
-        subjects: [{ kind: 'recording', id: row.id }, { kind: 'device', id: row.deviceId }],
-        detail: { number: row.number, sha256: arrived.sha256, bytes: arrived.bytes, thumbprint: sender?.keyThumbprint ?? null, clockOffsetMs: row.clockOffsetMs },
+        subjects: [
+          { kind: 'recording', id: row.id },
+          { kind: 'device', id: row.deviceId },
+        ],
+        detail: {
+          number: row.number,
+          sha256: arrived.sha256,
+          bytes: arrived.bytes,
+          thumbprint: sender?.keyThumbprint ?? null,
+          clockOffsetMs: row.clockOffsetMs,
+        },
       },
     ]);
   });
@@ -54,8 +73,12 @@ export async function arrive(services: IngestServices, row: RecordingRow, reques
 async function quarantine(services: IngestServices, row: RecordingRow, arrived: Arrived): Promise<void> {
   const key = `quarantine/${row.id}/${arrived.sha256}`;
   await services.storage.seal({
-    from: row.slotKey, to: key, retainUntil: null, contentType: 'application/octet-stream',
-    expectedEtag: arrived.etag, contentLength: arrived.bytes,
+    from: row.slotKey,
+    to: key,
+    retainUntilMs: retentionEnd(services, services.clock.now()),
+    contentType: 'application/octet-stream',
+    expectedEtag: arrived.etag,
+    contentLength: arrived.bytes,
   });
   const now = services.clock.now();
   // If the process dies before this line the copy lies unnamed in quarantine, and the next call makes it again.
@@ -70,10 +93,16 @@ async function quarantine(services: IngestServices, row: RecordingRow, arrived: 
       {
         kind: 'bytes-quarantined',
         actor: { kind: 'service', id: 'bellkeep', label: 'Bellkeep' },
-        subjects: [{ kind: 'recording', id: row.id }, { kind: 'device', id: row.deviceId }],
+        subjects: [
+          { kind: 'recording', id: row.id },
+          { kind: 'device', id: row.deviceId },
+        ],
         detail: {
-          number: row.number, why: 'bytes-mismatch', announced: { sha256: row.declaredSha256, bytes: row.declaredBytes },
-          arrived: { sha256: arrived.sha256, bytes: arrived.bytes }, key,
+          number: row.number,
+          why: 'bytes-mismatch',
+          announced: { sha256: row.declaredSha256, bytes: row.declaredBytes },
+          arrived: { sha256: arrived.sha256, bytes: arrived.bytes },
+          key,
         },
       },
     ]);

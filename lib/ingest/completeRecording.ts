@@ -45,7 +45,11 @@ const running = new Map<string, Promise<void>>();
  *
  * @throws Refusal `not-found`, `bytes-missing`, `bytes-mismatch`, `storage-unavailable`
  */
-export async function completeRecording(services: IngestServices, caller: AuthenticatedDevice, number: string): Promise<CompleteAnswer> {
+export async function completeRecording(
+  services: IngestServices,
+  caller: AuthenticatedDevice,
+  number: string,
+): Promise<CompleteAnswer> {
   const row = await findRecording(services, number);
   if (!row || row.deviceId !== caller.device.id) throw new Refusal('not-found');
   await carryOn(services, row.id);
@@ -82,11 +86,18 @@ async function passage(services: IngestServices, recordingId: string): Promise<v
 }
 
 async function findRecording(services: Pick<Services, 'read'>, number: string): Promise<RecordingRow | null> {
-  const [row] = await services.read.select().from(recording).where(eq(recording.number, number.toUpperCase())).limit(1);
+  const [row] = await services.read
+    .select()
+    .from(recording)
+    .where(eq(recording.number, number.toUpperCase()))
+    .limit(1);
   return row ?? null;
 }
 
-async function load(services: Pick<Services, 'read'>, id: string): Promise<{ row: RecordingRow; model: DeviceModelRow }> {
+async function load(
+  services: Pick<Services, 'read'>,
+  id: string,
+): Promise<{ row: RecordingRow; model: DeviceModelRow }> {
   const [found] = await services.read
     .select({ row: recording, model: deviceModel })
     .from(recording)
@@ -97,7 +108,11 @@ async function load(services: Pick<Services, 'read'>, id: string): Promise<{ row
   return found;
 }
 
-async function answerFor(services: IngestServices, caller: AuthenticatedDevice, id: string): Promise<CompleteAnswer> {
+async function answerFor(
+  services: IngestServices,
+  caller: AuthenticatedDevice,
+  id: string,
+): Promise<CompleteAnswer> {
   const { row } = await load(services, id);
   const [place] = await services.read
     .select({ encounter: encounter.number, by: filing.by })
@@ -114,7 +129,11 @@ async function answerFor(services: IngestServices, caller: AuthenticatedDevice, 
     recording: row.number,
     stage: row.stage === 'filed' ? 'filed' : 'measured',
     verdict: row.verdict ?? 'repeat',
-    reasons: findings.map((finding) => ({ code: finding.code, severity: finding.severity, ...findingSentence(finding) })),
+    reasons: findings.map((finding) => ({
+      code: finding.code,
+      severity: finding.severity,
+      ...findingSentence(finding),
+    })),
     sha256: row.declaredSha256,
     durationSeconds: row.durationSeconds,
     findings,

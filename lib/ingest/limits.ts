@@ -11,10 +11,16 @@ import type { Services } from '@/lib/platform/services';
  *
  * @returns limits and the policy's version (0: none was made, the defaults stand)
  */
-export async function limitsFor(services: Pick<Services, 'read'>, model: DeviceModelRow): Promise<{ limits: JudgingLimits; version: number }> {
+export async function limitsFor(
+  services: Pick<Services, 'read'>,
+  model: DeviceModelRow,
+): Promise<{ limits: JudgingLimits; version: number }> {
   const [row] = await services.read.select().from(policy).orderBy(desc(policy.version)).limit(1);
   const known = Object.fromEntries(
-    Object.entries(row?.limits ?? {}).filter(([name, value]) => name in DEFAULT_LIMITS && typeof value === typeof DEFAULT_LIMITS[name as keyof JudgingLimits]),
+    Object.entries(row?.limits ?? {}).filter(
+      ([name, value]) =>
+        name in DEFAULT_LIMITS && typeof value === typeof DEFAULT_LIMITS[name as keyof JudgingLimits],
+    ),
   );
   return {
     version: row?.version ?? 0,

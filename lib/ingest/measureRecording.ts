@@ -30,20 +30,32 @@ interface Picture {
  * Sealed to measured, and to filed where something ties the clip to an encounter. Measures, verdict, pictures,
  * filing and their custody entries commit together.
  */
-export async function measureRecording(services: IngestServices, row: Pick<RecordingRow, 'id' | 'slotKey'>, analysed: AnalysisResult | null, policyVersion: number): Promise<void> {
+export async function measureRecording(
+  services: IngestServices,
+  row: Pick<RecordingRow, 'id' | 'slotKey'>,
+  analysed: AnalysisResult | null,
+  policyVersion: number,
+): Promise<void> {
   const recordingId = row.id;
   const result = analysed ?? BEYOND_READING;
   const pictures = await storePictures(services, recordingId, result);
   // Died before the next line: the pictures lie under the names that the next call will use again.
   const now = services.clock.now();
   await services.write(async (tx) => {
-    const [sealed] = await tx.select().from(recording).where(and(eq(recording.id, recordingId), eq(recording.stage, 'sealed'))).limit(1);
+    const [sealed] = await tx
+      .select()
+      .from(recording)
+      .where(and(eq(recording.id, recordingId), eq(recording.stage, 'sealed')))
+      .limit(1);
     if (!sealed) return;
     for (const picture of pictures) {
       await tx
         .insert(derivedObject)
         .values({ recordingId, ...picture, inputSha256: sealed.declaredSha256, madeAt: now })
-        .onConflictDoUpdate({ target: [derivedObject.recordingId, derivedObject.kind], set: { key: picture.key, sha256: picture.sha256, bytes: picture.bytes, madeAt: now } });
+        .onConflictDoUpdate({
+          target: [derivedObject.recordingId, derivedObject.kind],
+          set: { key: picture.key, sha256: picture.sha256, bytes: picture.bytes, madeAt: now },
+        });
     }
     const place = await services.place(tx, sealed, now);
     await tx
@@ -65,7 +77,10 @@ export async function measureRecording(services: IngestServices, row: Pick<Recor
         dcFraction: result.measures?.dcFraction ?? null,
       })
       .where(eq(recording.id, recordingId));
-    await appendEntries(tx, now, [measuredEntry(sealed, result, policyVersion, pictures), placedEntry(sealed, place)]);
+    await appendEntries(tx, now, [
+      measuredEntry(sealed, result, policyVersion, pictures),
+      placedEntry(sealed, place),
+    ]);
   });
   await services.storage.remove(row.slotKey).catch((error: unknown) => {
     // The slot's copy is only in the way; the sweep removes what stays.
@@ -73,7 +88,11 @@ export async function measureRecording(services: IngestServices, row: Pick<Recor
   });
 }
 
-async function storePictures(services: IngestServices, recordingId: string, result: AnalysisResult): Promise<Picture[]> {
+async function storePictures(
+  services: IngestServices,
+  recordingId: string,
+  result: AnalysisResult,
+): Promise<Picture[]> {
   const pictures: Picture[] = [];
   try {
     for (const kind of ['peaks', 'spectrogram'] as const) {
@@ -85,21 +104,39 @@ async function storePictures(services: IngestServices, recordingId: string, resu
       pictures.push({ kind, key, sha256, bytes: body.byteLength });
     }
   } catch (error) {
-    if (error instanceof StorageError) throw new Refusal('storage-unavailable', undefined, {}, { cause: error, headers: { 'retry-after': '2' } });
+    if (error instanceof StorageError)
+      throw new Refusal(
+        'storage-unavailable',
+        undefined,
+        {},
+        { cause: error, headers: { 'retry-after': '2' } },
+      );
     throw error;
   }
   return pictures;
 }
 
-const measuredEntry = (row: RecordingRow, result: AnalysisResult, policyVersion: number, pictures: Picture[]): NewEntry => ({
+const measuredEntry = (
+  row: RecordingRow,
+  result: AnalysisResult,
+  policyVersion: number,
+  pictures: Picture[],
+): NewEntry => ({
   kind: 'measured',
   actor: SERVICE_ACTOR,
-  subjects: [{ kind: 'recording', id: row.id }, { kind: 'device', id: row.deviceId }],
+  subjects: [
+    { kind: 'recording', id: row.id },
+    { kind: 'device', id: row.deviceId },
+  ],
   detail: {
     number: row.number,
     verdict: result.verdict,
     policy: policyVersion,
-    findings: result.findings.map(({ code, severity, value }) => ({ code, severity, ...(value === undefined ? {} : { value }) })),
+    findings: result.findings.map(({ code, severity, value }) => ({
+      code,
+      severity,
+      ...(value === undefined ? {} : { value }),
+    })),
     derived: Object.fromEntries(pictures.map((picture) => [picture.kind, picture.sha256])),
   },
 });
@@ -115,11 +152,19 @@ const placedEntry = (row: RecordingRow, place: { filed: Placed } | { tray: strin
           { kind: 'patient', id: place.filed.patientId },
           { kind: 'device', id: row.deviceId },
         ],
-        detail: { number: row.number, encounter: place.filed.encounterNumber, by: place.filed.by, ...(place.filed.sessionNumber ? { session: place.filed.sessionNumber } : {}) },
+        detail: {
+          number: row.number,
+          encounter: place.filed.encounterNumber,
+          by: place.filed.by,
+          ...(place.filed.sessionNumber ? { session: place.filed.sessionNumber } : {}),
+        },
       }
     : {
         kind: 'put-in-tray',
         actor: SERVICE_ACTOR,
-        subjects: [{ kind: 'recording', id: row.id }, { kind: 'device', id: row.deviceId }],
+        subjects: [
+          { kind: 'recording', id: row.id },
+          { kind: 'device', id: row.deviceId },
+        ],
         detail: { number: row.number, why: place.tray },
       };

@@ -20,5 +20,11 @@ export interface AnalysisResult {
   spectrogram: Uint8Array | null;
 }
 
-export type ToWorker = { type: 'start'; request: AnalysisRequest } | { type: 'chunk'; bytes: Uint8Array } | { type: 'end' };
-export type FromWorker = { type: 'taken' } | { type: 'result'; result: AnalysisResult } | { type: 'failed'; message: string };
+export type ToWorker =
+  | { type: 'start'; request: AnalysisRequest }
+  | { type: 'chunk'; bytes: Uint8Array }
+  | { type: 'end' };
+export type FromWorker =
+  | { type: 'taken' }
+  | { type: 'result'; result: AnalysisResult }
+  | { type: 'failed'; message: string };

@@ -6,7 +6,7 @@ import type { AnalysisRequest, AnalysisResult } from './messages';
 export interface Arrived {
   sha256: string;
   bytes: number;
-  etag: string | null;
+  etag: string;
   /** null when no thread could make sense of it. */
   analysis: AnalysisResult | null;
 }
@@ -15,7 +15,12 @@ export interface Arrived {
  * Read an object once: length and SHA-256 here, sound in a thread. The hash is taken in this thread so that it does
  * not depend on a decoder surviving what it is given.
  */
-export async function readArrived(storage: Storage, pool: AnalysisPool, key: string, request: AnalysisRequest): Promise<Arrived> {
+export async function readArrived(
+  storage: Storage,
+  pool: AnalysisPool,
+  key: string,
+  request: AnalysisRequest,
+): Promise<Arrived> {
   const object = await storage.getStream(key);
   const hash = createHash('sha256');
   let bytes = 0;
@@ -27,5 +32,5 @@ export async function readArrived(storage: Storage, pool: AnalysisPool, key: str
     }
   }
   const analysis = await pool.analyse(hashed(), request);
-  return { sha256: hash.digest('hex'), bytes, etag: object.etag ?? null, analysis };
+  return { sha256: hash.digest('hex'), bytes, etag: object.etag, analysis };
 }

@@ -8,35 +8,61 @@ import type { IngestServices, RecordingRow } from './completeRecording';
 
 const YEAR_MS = 365.25 * 86_400_000;
 
+/** Until when what is kept now is locked in storage, UTC ms. */
+export const retentionEnd = (services: Pick<IngestServices, 'env'>, now: number): number =>
+  Math.floor(now + services.env.RETENTION_YEARS * YEAR_MS);
+
 /** Where an original lies for good: its hash is part of its name, so the name says what must be in it. */
-export const originalKeyOf = (row: Pick<RecordingRow, 'id' | 'declaredSha256'>): string => `originals/${row.id}/${row.declaredSha256}`;
+export const originalKeyOf = (row: Pick<RecordingRow, 'id' | 'declaredSha256'>): string =>
+  `originals/${row.id}/${row.declaredSha256}`;
 
 /**
  * Received to sealed: the bytes that were hashed are copied to their final key, under a lock where the store has
  * one. The copy is conditional on the tag of the bytes that were read, so a device that puts other bytes through its
  * still valid address between reading and copying changes nothing; and no presigned address leads to the final key.
  *
- * @param etag the tag under which the bytes were read; null where the store gave none
+ * @param etag the tag under which the bytes were read
  */
-export async function sealRecording(services: IngestServices, row: RecordingRow, etag: string | null): Promise<void> {
+export async function sealRecording(
+  services: IngestServices,
+  row: RecordingRow,
+  etag: string,
+): Promise<void> {
   const now = services.clock.now();
   const key = originalKeyOf(row);
-  const retainUntil = services.env.RETENTION_YEARS > 0 ? Math.floor(now + services.env.RETENTION_YEARS * YEAR_MS) : null;
+  const retainUntilMs = retentionEnd(services, now);
   let lock: 'compliance' | 'none';
   try {
     const sealed = await services.storage.seal({
-      from: row.slotKey, to: key, retainUntil, contentType: row.mediaType, expectedEtag: etag, contentLength: row.declaredBytes,
+      from: row.slotKey,
+      to: key,
+      retainUntilMs,
+      contentType: row.mediaType,
+      expectedEtag: etag,
+      contentLength: row.declaredBytes,
     });
     lock = sealed.lock;
   } catch (error) {
-    if (error instanceof StorageError) throw new Refusal('storage-unavailable', undefined, {}, { cause: error, headers: { 'retry-after': '2' } });
+    if (error instanceof StorageError)
+      throw new Refusal(
+        'storage-unavailable',
+        undefined,
+        {},
+        { cause: error, headers: { 'retry-after': '2' } },
+      );
     throw error;
   }
   // Died before the next line: the sealed copy is there and the next call finds it, equal, and carries on.
   await services.write(async (tx) => {
     const [moved] = await tx
       .update(recording)
-      .set({ stage: 'sealed', sealedAt: now, originalKey: key, lockedUntil: lock === 'compliance' ? retainUntil : null, lockKind: lock })
+      .set({
+        stage: 'sealed',
+        sealedAt: now,
+        originalKey: key,
+        lockedUntil: lock === 'compliance' ? retainUntilMs : null,
+        lockKind: lock,
+      })
       .where(and(eq(recording.id, row.id), eq(recording.stage, 'received')))
       .returning({ id: recording.id });
     if (!moved) return;
@@ -44,10 +70,17 @@ export async function sealRecording(services: IngestServices, row: RecordingRow,
       {
         kind: 'sealed',
         actor: SERVICE_ACTOR,
-        subjects: [{ kind: 'recording', id: row.id }, { kind: 'device', id: row.deviceId }],
+        subjects: [
+          { kind: 'recording', id: row.id },
+          { kind: 'device', id: row.deviceId },
+        ],
         detail: {
-          number: row.number, sha256: row.declaredSha256, bytes: row.declaredBytes, key, lock,
-          ...(lock === 'compliance' && retainUntil !== null ? { lockedUntil: new Date(retainUntil).toISOString() } : {}),
+          number: row.number,
+          sha256: row.declaredSha256,
+          bytes: row.declaredBytes,
+          key,
+          lock,
+          ...(lock === 'compliance' ? { lockedUntil: new Date(retainUntilMs).toISOString() } : {}),
         },
       },
     ]);

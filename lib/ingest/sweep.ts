@@ -18,22 +18,36 @@ const LOOKED_FOR_MS = 7 * 86_400_000;
 export async function sweepRecordings(services: IngestServices): Promise<number> {
   const now = services.clock.now();
   const rows = await services.read
-    .select({ id: recording.id, stage: recording.stage, slotKey: recording.slotKey, awaitedAt: recording.awaitedAt })
+    .select({
+      id: recording.id,
+      stage: recording.stage,
+      slotKey: recording.slotKey,
+      awaitedAt: recording.awaitedAt,
+    })
     .from(recording)
     .where(
-      and(inArray(recording.stage, ['awaited', 'received', 'sealed']), isNull(recording.stopped), lt(recording.awaitedAt, now - STANDING_STILL_MS)),
+      and(
+        inArray(recording.stage, ['awaited', 'received', 'sealed']),
+        isNull(recording.stopped),
+        lt(recording.awaitedAt, now - STANDING_STILL_MS),
+      ),
     )
     .orderBy(asc(recording.awaitedAt))
     .limit(1000);
   let done = 0;
   for (const row of rows) {
     if (done >= AT_ONCE) break;
-    if (row.stage === 'awaited' && (row.awaitedAt < now - LOOKED_FOR_MS || (await services.storage.head(row.slotKey)) === null)) continue;
+    if (
+      row.stage === 'awaited' &&
+      (row.awaitedAt < now - LOOKED_FOR_MS || (await services.storage.head(row.slotKey)) === null)
+    )
+      continue;
     try {
       await carryOn(services, row.id);
       done++;
     } catch (error) {
-      if (!(error instanceof Refusal)) services.log.error({ err: error, recordingId: row.id }, 'the sweep could not carry a clip on');
+      if (!(error instanceof Refusal))
+        services.log.error({ err: error, recordingId: row.id }, 'the sweep could not carry a clip on');
     }
   }
   return done;

@@ -28,17 +28,33 @@ class Inbox {
         yield next;
         taken();
       } else if (this.#over) return;
-      else await new Promise<void>((resolve) => { this.#wake = resolve; });
+      else
+        await new Promise<void>((resolve) => {
+          this.#wake = resolve;
+        });
     }
   }
 }
 
 async function readMetadata(head: Uint8Array, mediaType: string): Promise<Record<string, unknown> | null> {
   try {
-    const { common, format } = await parseBuffer(head, { mimeType: mediaType }, { duration: false, skipCovers: true });
+    const { common, format } = await parseBuffer(
+      head,
+      { mimeType: mediaType },
+      { duration: false, skipCovers: true },
+    );
     const { tagTypes, container, codec, codecProfile, tool, creationTime } = format;
-    const tags = { title: common.title, artist: common.artist, comment: common.comment, date: common.date, encodedby: common.encodedby, encodersettings: common.encodersettings };
-    return JSON.parse(JSON.stringify({ tagTypes, container, codec, codecProfile, tool, creationTime, tags })) as Record<string, unknown>;
+    const tags = {
+      title: common.title,
+      artist: common.artist,
+      comment: common.comment,
+      date: common.date,
+      encodedby: common.encodedby,
+      encodersettings: common.encodersettings,
+    };
+    return JSON.parse(
+      JSON.stringify({ tagTypes, container, codec, codecProfile, tool, creationTime, tags }),
+    ) as Record<string, unknown>;
   } catch {
     // Tags are a courtesy; the judge reads the file itself.
     return null;
@@ -57,7 +73,11 @@ async function analyse(request: AnalysisRequest, chunks: AsyncIterable<Uint8Arra
       yield chunk;
     }
   }
-  const analysis = await analyseRecording(watched(), { declaredMediaType: request.mediaType, limits: request.limits, totalBytes: request.totalBytes });
+  const analysis = await analyseRecording(watched(), {
+    declaredMediaType: request.mediaType,
+    limits: request.limits,
+    totalBytes: request.totalBytes,
+  });
   return {
     verdict: analysis.verdict,
     findings: analysis.findings,
@@ -76,8 +96,12 @@ parentPort?.on('message', (message: ToWorker) => {
   if (message.type === 'chunk') return inbox.push(message.bytes);
   if (message.type === 'end') return inbox.end();
   inbox = new Inbox();
-  analyse(message.request, inbox.read(() => say({ type: 'taken' }))).then(
+  analyse(
+    message.request,
+    inbox.read(() => say({ type: 'taken' })),
+  ).then(
     (result) => say({ type: 'result', result }),
-    (error: unknown) => say({ type: 'failed', message: error instanceof Error ? error.message : String(error) }),
+    (error: unknown) =>
+      say({ type: 'failed', message: error instanceof Error ? error.message : String(error) }),
   );
 });

@@ -44,7 +44,7 @@ export const EnvSchema = z.object({
   MAIL_DIR: z.string().default('.data/mail'),
   MAIL_FROM: z.string().default('Bellkeep <bellkeep@harrowmere.example>'),
   /** How long an original is locked in storage, in years. Local law and policy come first. */
-  RETENTION_YEARS: z.coerce.number().int().min(0).max(100).default(8),
+  RETENTION_YEARS: z.coerce.number().int().min(1).max(100).default(8),
   /** Requests a minute that one device may make; people and addresses have limits of their own in code. */
   DEVICE_REQUESTS_PER_MINUTE: z.coerce.number().int().min(1).default(600),
   /** Proxies between people and Bellkeep whose X-Forwarded-For is believed. 0: none. */
