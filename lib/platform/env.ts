@@ -12,6 +12,14 @@ export const EnvSchema = z.object({
   /** The address people and devices use, without a trailing slash. */
   BELLKEEP_ORIGIN: httpUrl,
   BELLKEEP_HOSPITAL: z.string().min(1).max(120).default('Harrowmere General Hospital'),
+  /** The zone in which times are shown, an IANA name. */
+  BELLKEEP_TIME_ZONE: z
+    .string()
+    .default('Europe/London')
+    .refine(
+      (zone) => Intl.supportedValuesOf('timeZone').includes(zone) || zone === 'UTC',
+      'an IANA time zone such as Europe/London',
+    ),
   /** The name on signed tree heads: a host and path without scheme. */
   BELLKEEP_CUSTODY_ORIGIN: z
     .string()
