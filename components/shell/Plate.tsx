@@ -15,7 +15,7 @@ export function Plate({ person, hospital, theme, signOut }: Presence) {
   const rooms = roomsOf(person.roles);
   const current = currentRoom(usePathname(), rooms);
   return (
-    <div className="no-print sticky top-0 hidden h-dvh flex-col overflow-y-auto border-r border-line bg-well pt-6 plate:flex plate:group-has-[[data-plain-page]]/shell:hidden">
+    <header className="no-print sticky top-0 hidden h-dvh flex-col overflow-y-auto border-r border-line bg-well pt-6 plate:flex plate:group-has-[[data-plain-page]]/shell:hidden">
       <Link href="/" className="px-4 pb-6 font-plate text-21 leading-none font-semibold -outline-offset-2">
         Bellkeep
       </Link>
@@ -52,6 +52,6 @@ export function Plate({ person, hospital, theme, signOut }: Presence) {
           <SignOut action={signOut} />
         </div>
       </div>
-    </div>
+    </header>
   );
 }

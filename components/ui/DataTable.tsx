@@ -146,6 +146,7 @@ function Row({
           <Checkbox
             label={`Select ${row.label}`}
             labelHidden
+            className="-ml-2"
             checked={selected}
             disabled={row.fixed}
             onChange={() => selection.toggle(row.id)}

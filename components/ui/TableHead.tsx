@@ -27,6 +27,7 @@ export function TableHead({ columns, selection, rows, sortParam }: TableHeadProp
             <Checkbox
               label="Select all rows on this page"
               labelHidden
+              className="-my-2.5 -ml-2"
               disabled={selectable === 0}
               checked={selectable > 0 && selection.ids.length === selectable}
               mixed={selection.ids.length > 0 && selection.ids.length < selectable}
