@@ -161,27 +161,28 @@ function SiteShape({ number, state, ringed = false, selected = false }: SiteShap
         <circle
           cx="24"
           cy="24"
-          r="23"
+          r="25.5"
           fill="none"
           strokeWidth="2"
           className={selected ? 'stroke-ink' : 'stroke-brass'}
         />
       ) : null}
-      {state === 'done' ? <circle cx="24" cy="24" r="19" className="fill-spruce" /> : null}
+      {state === 'done' ? <circle cx="24" cy="24" r="21" className="fill-spruce" /> : null}
       {state === 'todo' ? (
         <circle
           cx="24"
           cy="24"
-          r="18.5"
+          r="20.5"
           strokeWidth="1.8"
           strokeDasharray="4 4"
+          vectorEffect="non-scaling-stroke"
           className="fill-sheet stroke-ink-soft"
         />
       ) : null}
       {state === 'repeat' ? (
         <>
-          <circle cx="24" cy="24" r="18" className="fill-rust-wash" />
-          <path d="M36.7 11.3A18 18 0 1 0 42 24" fill="none" strokeWidth="4" className="stroke-rust" />
+          <circle cx="24" cy="24" r="20" className="fill-rust-wash" />
+          <path d="M38.1 9.9A20 20 0 1 0 44 24" fill="none" strokeWidth="4" className="stroke-rust" />
         </>
       ) : null}
       {number === undefined ? null : (

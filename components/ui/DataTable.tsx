@@ -1,6 +1,6 @@
 'use client';
 
-import { type ReactNode, useRef } from 'react';
+import { Children, type ReactNode, useRef } from 'react';
 import { Button } from './Button';
 import { Checkbox } from './Checkbox';
 import { ColumnChooser } from './ColumnChooser';
@@ -79,7 +79,7 @@ export function DataTable(props: DataTableProps) {
           olderHref={props.olderHref}
           more={
             <>
-              {props.foot}
+              {Children.toArray(props.foot)}
               {chooser}
             </>
           }
@@ -209,7 +209,7 @@ function SelectionBar({ selection, noun, children }: SelectionBarProps) {
           {count} {count === 1 ? noun[0] : noun[1]} selected
         </b>
       </span>
-      {children}
+      {Children.toArray(children)}
       <Button variant="bar" onClick={selection.clear}>
         Clear
       </Button>

@@ -91,7 +91,7 @@ export function useField() {
 }
 
 const CONTROL =
-  'w-full rounded-plate border border-line-control bg-sheet px-[11px] py-[9px] text-ink aria-invalid:border-rust aria-invalid:border-2 disabled:opacity-55 read-only:bg-well';
+  'w-full rounded-plate border border-line-control bg-sheet px-[11px] py-[9px] text-ink aria-invalid:border-rust aria-invalid:border-2 disabled:opacity-55 [input&]:read-only:bg-well';
 
 export function TextInput({
   className,
