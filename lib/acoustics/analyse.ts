@@ -1,0 +1,179 @@
+import { ChannelAnalysis } from './channel';
+import { createDecoder } from './decode/decode';
+import type { DecodeResult } from './decode/types';
+import { cleanStretch, type JudgingFacts, judge, verdictOf } from './judge';
+import { PeaksProbe } from './pictures/peaks';
+import type {
+  AudioBlock,
+  AudioFormat,
+  Finding,
+  JudgingLimits,
+  Measures,
+  Spectrogram,
+  Verdict,
+  WaveformPeaks,
+} from './types';
+
+export interface RecordingAnalysis {
+  decode: DecodeResult;
+  measures: Measures | null;
+  facts: JudgingFacts;
+  findings: Finding[];
+  verdict: Verdict;
+  peaks: WaveformPeaks | null;
+  spectrogram: Spectrogram | null;
+}
+
+export interface AnalysisOptions {
+  declaredMediaType?: string;
+  limits: JudgingLimits;
+  totalBytes?: number;
+}
+
+/**
+ * Everything there is to say of one clip, in one pass over its bytes and in bounded memory: decode, measure, judge,
+ * draw. It does not throw on what the bytes are; it throws when the source of the bytes fails.
+ *
+ * @param bytes the file in order, in pieces of any size
+ */
+export async function analyseRecording(
+  bytes: AsyncIterable<Uint8Array> | Iterable<Uint8Array>,
+  options: AnalysisOptions,
+): Promise<RecordingAnalysis> {
+  const clip = new ClipAnalysis();
+  const decoder = createDecoder({
+    onFormat: (format) => clip.begin(format),
+    onBlock: (block) => clip.push(block),
+    ...(options.declaredMediaType === undefined ? {} : { declaredMediaType: options.declaredMediaType }),
+  });
+  for await (const piece of bytes) await decoder.push(piece);
+  const decode = await decoder.end();
+  return clip.finish(decode, options.limits);
+}
+
+/** The measuring of one clip: one analysis a channel, one waveform for all. */
+class ClipAnalysis {
+  #format: AudioFormat | null = null;
+  #channels: ChannelAnalysis[] = [];
+  #peaks: PeaksProbe | null = null;
+  #identical = true;
+
+  begin(format: AudioFormat): void {
+    this.#format = format;
+    this.#channels = Array.from({ length: format.channels }, () => new ChannelAnalysis(format));
+    this.#peaks = new PeaksProbe(format.sampleRateHz);
+  }
+
+  push(block: AudioBlock): void {
+    block.forEach((samples, c) => {
+      this.#channels[c]?.push(samples);
+    });
+    this.#peaks?.pushBlock(block);
+    if (this.#identical && block.length > 1) this.#identical = sameSamples(block[0], block[1]);
+  }
+
+  finish(decode: DecodeResult, limits: JudgingLimits): RecordingAnalysis {
+    const format = decode.format ?? this.#format;
+    const facts: JudgingFacts = {
+      failure: decode.failure,
+      reason: decode.reason,
+      oddities: format?.oddities ?? [],
+      missingFrames: decode.missingFrames,
+      typeMatches: decode.typeMatches,
+      lossy: format?.lossy ?? false,
+      overFullScale: 0,
+      distinctCodes: 0,
+      identicalChannels: false,
+      deadChannels: [],
+      clippedFrom: null,
+      clippedTo: null,
+    };
+    if (!decode.ok || !format) {
+      const findings = judge(null, facts, limits);
+      return {
+        decode,
+        measures: null,
+        facts,
+        findings,
+        verdict: verdictOf(findings),
+        peaks: null,
+        spectrogram: null,
+      };
+    }
+    const { measures, spectrogram } = this.#measure(format, decode, facts);
+    const findings = judge(measures, facts, limits);
+    measures.cleanStretch = cleanStretch(measures, findings);
+    return {
+      decode,
+      measures,
+      facts,
+      findings,
+      verdict: verdictOf(findings),
+      peaks: this.#peaks?.finish() ?? null,
+      spectrogram,
+    };
+  }
+
+  #measure(
+    format: AudioFormat,
+    decode: DecodeResult,
+    facts: JudgingFacts,
+  ): { measures: Measures; spectrogram: Spectrogram } {
+    const durationSeconds = decode.frames / format.sampleRateHz;
+    const each = this.#channels.map((channel) => channel.finish(durationSeconds));
+    // What is heard and drawn of several channels is the louder one.
+    const main = each.reduce((best, one) =>
+      (one.levels.activeLevelDbfsSine ?? -999) > (best.levels.activeLevelDbfsSine ?? -999) ? one : best,
+    );
+    facts.overFullScale = Math.max(...each.map((one) => one.rails.overFullScale));
+    facts.distinctCodes = Math.max(...each.map((one) => one.rails.distinctCodes));
+    facts.clippedFrom = main.rails.clippedFrom;
+    facts.clippedTo = main.rails.clippedTo;
+    facts.identicalChannels = each.length > 1 && this.#identical;
+    facts.deadChannels =
+      each.length > 1
+        ? each.flatMap((one, c) => (one.levels.peakDbfs === null || one.rails.distinctCodes < 4 ? [c] : []))
+        : [];
+    if (facts.deadChannels.length === each.length) facts.deadChannels = [];
+    const { clippedFraction, clippedSamples, clippedLongestRunSamples, flatTop } = main.rails;
+    const measures: Measures = {
+      sampleRateHz: format.sampleRateHz,
+      channels: format.channels,
+      bitDepth: format.bitDepth,
+      encoding: format.encoding,
+      container: format.container,
+      frames: decode.frames,
+      durationSeconds,
+      declaredFrames: decode.declaredFrames,
+      ...main.levels,
+      clippedFraction,
+      clippedSamples,
+      clippedLongestRunSamples,
+      flatTop,
+      dropouts: main.dropouts,
+      ...main.spectral,
+      ...main.activity,
+      spikes: main.spikes,
+      cleanStretch: null,
+      ...(each.length > 1
+        ? {
+            perChannel: each.map(({ levels, rails, dropouts }) => ({
+              ...levels,
+              clippedFraction: rails.clippedFraction,
+              clippedSamples: rails.clippedSamples,
+              clippedLongestRunSamples: rails.clippedLongestRunSamples,
+              flatTop: rails.flatTop,
+              dropouts,
+            })),
+          }
+        : {}),
+    };
+    return { measures, spectrogram: main.spectrogram };
+  }
+}
+
+function sameSamples(a: Float32Array | undefined, b: Float32Array | undefined): boolean {
+  if (!a || !b || a.length !== b.length) return false;
+  for (let i = 0; i < a.length; i++) if (a[i] !== b[i]) return false;
+  return true;
+}
