@@ -1,0 +1,33 @@
+import { NoAnswer, ServiceProblem } from './api';
+import type { Device } from './device';
+
+const FIRST_WAIT_MS = 250;
+const LONGEST_WAIT_MS = 30_000;
+
+/** Problems that time may heal. Everything else is the service's last word on this request. */
+const PASSING = new Set(['too-many-requests', 'storage-unavailable', 'busy-elsewhere', 'fault']);
+
+export const isPassing = (error: unknown): boolean =>
+  error instanceof NoAnswer ||
+  (error instanceof ServiceProblem && (PASSING.has(error.code) || error.status >= 500));
+
+/**
+ * Do something until it works or is refused for good: exponential backoff with full jitter, and never sooner than
+ * Retry-After says.
+ */
+export async function withRetry<T>(
+  device: Pick<Device, 'sleep' | 'random'>,
+  work: () => Promise<T>,
+  tries = 8,
+): Promise<T> {
+  for (let attempt = 0; ; attempt++) {
+    try {
+      return await work();
+    } catch (error) {
+      if (!isPassing(error) || attempt + 1 >= tries) throw error;
+      const jitter = device.random() * Math.min(LONGEST_WAIT_MS, FIRST_WAIT_MS * 2 ** attempt);
+      const asked = error instanceof ServiceProblem ? (error.retryAfterMs ?? 0) : 0;
+      await device.sleep(Math.max(jitter, asked));
+    }
+  }
+}
