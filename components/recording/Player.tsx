@@ -4,12 +4,12 @@ import { type ReactNode, useEffect, useId, useRef, useState } from 'react';
 import { Button } from '@/components/ui/Button';
 import { Chip } from '@/components/ui/Chip';
 import { Notice } from '@/components/ui/Notice';
-import type { Band, BandChoice } from './player/engine';
-import { type Heard, type PlayerSettings, usePlayer } from './player/usePlayer';
+import type { Band, BandChoice, Heard } from './player/engine';
+import { type PlayerSettings, usePlayer } from './player/usePlayer';
 import { type Stretch, stretchInWords } from './stage/view';
 import type { Playhead } from './usePlayhead';
 
-export type { Heard } from './player/usePlayer';
+export type { Heard } from './player/engine';
 
 /** Bands like the two sides of a chestpiece: common practice, no source. */
 const LOW: Band = { lowHz: 20, highHz: 200 };

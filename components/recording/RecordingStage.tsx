@@ -172,7 +172,7 @@ function LevelAxis({ gain, topHz }: { gain: number; topHz: number }) {
 }
 
 function TimeAxis({ view }: { view: Stretch }) {
-  const { values, digits } = ticksOf(view.from, view.to, 7);
+  const { values, digits } = ticksOf(view.from, view.to, 8);
   return (
     <div aria-hidden="true" className="relative h-7 overflow-hidden">
       {values.map((value, index) => {

@@ -14,7 +14,14 @@ export interface Playing {
   band: BandChoice;
   /** Factor on the samples. */
   gain: number;
-  onEnd: () => void;
+  onEnd: (heard: Heard | null) => void;
+}
+
+/** One act of listening, for the custody thread. */
+export interface Heard {
+  seconds: number;
+  band: BandChoice;
+  rate: number;
 }
 
 /** Quality factors of the two halves of a fourth-order Butterworth filter. */
@@ -44,9 +51,10 @@ export class Engine {
     chain.reduce((before, after) => before.connect(after));
     source.onended = () => {
       if (this.#source !== source) return;
+      const heard = this.#heard();
       this.#source = null;
       this.#playing = null;
-      wanted.onEnd();
+      wanted.onEnd(heard);
     };
     if (wanted.loop) {
       source.loop = true;
@@ -60,9 +68,9 @@ export class Engine {
     this.#playing = { ...wanted, startedAt: this.context.currentTime };
   }
 
-  /** @returns seconds of sound heard since it began, 0 when nothing played */
-  stop(): number {
-    const heard = this.#playing ? this.context.currentTime - this.#playing.startedAt : 0;
+  /** @returns what was heard since it began; null when nothing played */
+  stop(): Heard | null {
+    const heard = this.#heard();
     const source = this.#source;
     this.#source = null;
     this.#playing = null;
@@ -78,6 +86,12 @@ export class Engine {
     const passed = Math.max(0, this.context.currentTime - startedAt - late) * rate;
     const length = to - from;
     return loop && length > 0 ? from + (passed % length) : Math.min(to, from + passed);
+  }
+
+  #heard(): Heard | null {
+    if (!this.#playing) return null;
+    const { band, rate, startedAt } = this.#playing;
+    return { seconds: Math.max(0, this.context.currentTime - startedAt), band, rate };
   }
 
   close(): void {

@@ -3,17 +3,10 @@
 import { useCallback, useEffect, useRef, useState } from 'react';
 import type { Stretch } from '../stage/view';
 import type { Playhead } from '../usePlayhead';
-import { type BandChoice, Engine, loudest } from './engine';
+import { type BandChoice, Engine, type Heard, loudest } from './engine';
 import { loadSound, SoundError } from './loadSound';
 
 export type PlayerState = 'idle' | 'loading' | 'playing' | 'failed';
-
-/** One act of listening, for the custody thread. */
-export interface Heard {
-  seconds: number;
-  band: BandChoice;
-  rate: number;
-}
 
 export interface PlayerSettings {
   loop: boolean;
@@ -49,9 +42,9 @@ export function usePlayer(options: PlayerOptions) {
   const getLoaded = useLoading(href, loaded);
 
   const stop = useCallback(() => {
-    const seconds = loaded.current?.engine.stop() ?? 0;
+    const heard = loaded.current?.engine.stop() ?? null;
     setState('idle');
-    report(latest.current, seconds);
+    report(latest.current, heard);
   }, []);
   const play = useCallback(async () => {
     setProblem(null);
@@ -60,16 +53,15 @@ export function usePlayer(options: PlayerOptions) {
       const { engine, louderGain } = await getLoaded();
       const { settings, ...now } = latest.current;
       const stretch = stretchToPlay(now.selection, now.playhead.get(), now.durationSeconds);
-      // What was heard until now was heard in another way: told apart.
+      // What was heard until now was heard in another way, or elsewhere: told apart.
       report(latest.current, engine.stop());
-      const startedAt = performance.now();
       await engine.play({
         ...stretch,
         ...settings,
         gain: settings.louder ? louderGain : 1,
-        onEnd: () => {
+        onEnd: (heard) => {
           setState('idle');
-          report(latest.current, (performance.now() - startedAt) / 1000);
+          report(latest.current, heard);
           now.playhead.set(stretch.from);
         },
       });
@@ -98,8 +90,11 @@ function stretchToPlay(selection: Stretch | null, seconds: number, durationSecon
   return { from: seconds < durationSeconds - 0.05 ? seconds : 0, to: durationSeconds };
 }
 
-function report({ onHeard, settings }: PlayerOptions, seconds: number) {
-  if (seconds > 0.2) onHeard?.({ seconds, band: settings.band, rate: settings.rate });
+/** A press that was taken back at once is no listening. */
+const SHORTEST_HEARD_SECONDS = 0.2;
+
+function report({ onHeard }: PlayerOptions, heard: Heard | null) {
+  if (heard && heard.seconds > SHORTEST_HEARD_SECONDS) onHeard?.(heard);
 }
 
 function useLoading(href: string, loaded: { current: Loaded | null }) {

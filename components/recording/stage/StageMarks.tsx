@@ -45,7 +45,7 @@ export function StageMarks({ marks, view, onSelect }: StageMarksProps) {
     .filter((mark) => mark.to >= view.from && mark.from <= view.to)
     .sort((a, b) => a.from - b.from);
   const boxes = seen.map((mark) => {
-    const boxWidth = Math.round(mark.label.length * 6.6 + 16);
+    const boxWidth = Math.round(mark.label.length * 6.3 + 14);
     return { left: Math.max(0, Math.min(width - boxWidth, place(mark.from))), width: boxWidth };
   });
   const lanes = lanesOf(boxes, LANES);

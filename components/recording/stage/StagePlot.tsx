@@ -6,6 +6,7 @@ import type { Playhead } from '../usePlayhead';
 import { type DbScale, drawSpectrogram } from './drawSpectrogram';
 import { drawWaveform, type Surface } from './drawWaveform';
 import { paletteOf } from './palette';
+import { useHover } from './useHover';
 import { usePointerSelection } from './usePointerSelection';
 import { useStageKeys } from './useStageKeys';
 import { useSurface } from './useSurface';
@@ -47,6 +48,7 @@ export function StagePlot(props: StagePlotProps) {
   useWheel(plot, view, setView, durationSeconds);
   const pointer = usePointerSelection({ view, durationSeconds, selection, onSelect, playhead });
   const onKeyDown = useStageKeys({ view, setView, durationSeconds, selection, onSelect, playhead });
+  const hover = useHover(view, props.topHz);
   const line = usePlayheadLine({ plot, view, setView, playhead, durationSeconds, selection });
   return (
     <div
@@ -60,6 +62,11 @@ export function StagePlot(props: StagePlotProps) {
       aria-valuenow={0}
       onKeyDown={onKeyDown}
       {...pointer}
+      onPointerMove={(event) => {
+        hover.onPointerOver(event);
+        pointer.onPointerMove(event);
+      }}
+      onPointerLeave={hover.onPointerLeave}
       className="relative cursor-crosshair touch-pan-y overflow-hidden -outline-offset-2 select-none"
     >
       <SelectionBand view={view} selection={selection} />
@@ -71,6 +78,11 @@ export function StagePlot(props: StagePlotProps) {
         ref={line}
         aria-hidden="true"
         className="pointer-events-none absolute inset-y-0 left-0 w-0.5 bg-brass shadow-[0_0_0_1px_var(--color-sheet)]"
+      />
+      <span
+        ref={hover.text}
+        aria-hidden="true"
+        className="pointer-events-none absolute top-0 right-0 bg-sheet px-1.5 text-13 text-ink-soft empty:hidden"
       />
       {props.children}
     </div>
