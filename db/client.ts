@@ -4,15 +4,14 @@ import { type Client, createClient } from '@libsql/client';
 import { drizzle, type LibSQLDatabase } from 'drizzle-orm/libsql';
 import { setPragmas } from './pragmas';
 import * as schema from './schema';
-import { createWriteQueue, type Write } from './write';
+import { createWriteQueue, type WriteQueue } from './write';
 
 export type Schema = typeof schema;
 export type Reader = LibSQLDatabase<Schema>;
 
 /** One way in for reading, one queue for writing. Nothing else touches the file. */
-export interface Database {
+export interface Database extends WriteQueue {
   read: Reader;
-  write: Write;
   /** Raw client for migrations, backups and the audit; never while a write may be open. */
   client: Client;
   writer: Client;
@@ -40,7 +39,7 @@ export async function openDatabase(url: string, authToken?: string): Promise<Dat
   if (isFile) await setPragmas(client);
   return {
     read: drizzle(client, { schema }),
-    write: createWriteQueue(writer, isFile),
+    ...createWriteQueue(writer, isFile),
     client,
     writer,
     close() {

@@ -7,7 +7,7 @@ export type Tx = Parameters<Parameters<LibSQLDatabase<typeof schema>['transactio
 
 /**
  * Do `work` in one immediate transaction, alone. It commits when the promise resolves and leaves no trace when it
- * rejects. No network inside: everybody else waits.
+ * rejects. No network inside: everybody else waits. Never call it from inside `work`.
  */
 export type Write = <T>(work: (tx: Tx) => Promise<T>) => Promise<T>;
 
@@ -30,20 +30,26 @@ const isBusy = (error: unknown): boolean => /^SQLITE_(BUSY|LOCKED)/.test(databas
 
 const BUSY_TRIES = 5;
 
+export interface WriteQueue {
+  write: Write;
+  /** The writer client, alone for as long as `work` takes; each statement commits by itself. */
+  alone<T>(work: (writer: Client) => Promise<T>): Promise<T>;
+}
+
 /**
  * The one write queue of a process.
  *
  * After SQLITE_BUSY the failed statement stays open on its connection, and what is written there afterwards
  * reports success without being committed: the connection is dropped at once and its pragmas set again.
  */
-export function createWriteQueue(writer: Client, isFile: boolean): Write {
+export function createWriteQueue(writer: Client, isFile: boolean): WriteQueue {
   const database = drizzle(writer, { schema });
   let last: Promise<unknown> = Promise.resolve();
 
-  async function attempt<T>(work: (tx: Tx) => Promise<T>): Promise<T> {
+  async function attempt<T>(work: () => Promise<T>): Promise<T> {
     for (let tries = 1; ; tries++) {
       try {
-        return await database.transaction(work, { behavior: 'immediate' });
+        return await work();
       } catch (error) {
         if (!isBusy(error)) throw error;
         writer.reconnect();
@@ -53,9 +59,14 @@ export function createWriteQueue(writer: Client, isFile: boolean): Write {
     }
   }
 
-  return (work) => {
+  function inTurn<T>(work: () => Promise<T>): Promise<T> {
     const run = last.then(() => attempt(work));
     last = run.catch(() => undefined);
     return run;
+  }
+
+  return {
+    write: (work) => inTurn(() => database.transaction(work, { behavior: 'immediate' })),
+    alone: (work) => inTurn(() => work(writer)),
   };
 }

@@ -210,6 +210,8 @@ CREATE TABLE `two_factor` (
 	`backup_codes` text NOT NULL,
 	`user_id` text NOT NULL,
 	`verified` integer DEFAULT true,
+	`failed_verification_count` integer DEFAULT 0,
+	`locked_until` integer,
 	FOREIGN KEY (`user_id`) REFERENCES `user`(`id`) ON UPDATE no action ON DELETE cascade
 ) STRICT;
 --> statement-breakpoint

@@ -81,6 +81,8 @@ export const twoFactor = sqliteTable(
       .notNull()
       .references(() => user.id, { onDelete: 'cascade' }),
     verified: integer('verified', { mode: 'boolean' }).default(true),
+    failedVerificationCount: integer('failed_verification_count').default(0),
+    lockedUntil: stamp('locked_until'),
   },
   (t) => [index('two_factor_by_user').on(t.userId)],
 );

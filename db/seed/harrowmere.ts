@@ -14,26 +14,86 @@ export interface SeedPerson {
 }
 
 export const PEOPLE: SeedPerson[] = [
-  { name: 'Ines Okafor-Lindqvist', email: 'ines@harrowmere.example', jobTitle: 'Biomedical engineering', roles: ['biomed'], wards: [] },
-  { name: 'Dr Solveig Adeyemi', email: 'solveig@harrowmere.example', jobTitle: 'Respiratory medicine', roles: ['clinician'], wards: ['Alder', 'Birch'] },
-  { name: 'Dr Pascal Ngata', email: 'pascal@harrowmere.example', jobTitle: 'Respiratory medicine', roles: ['clinician'], wards: ['Alder', 'Cedar'] },
-  { name: 'Sister Imelda Croft', email: 'imelda@harrowmere.example', jobTitle: 'Emergency nursing', roles: ['clinician'], wards: ['Emergency department', 'Rowan'] },
-  { name: 'Tomasz Abara', email: 'tomasz@harrowmere.example', jobTitle: 'Information technology', roles: ['itadmin'], wards: [] },
-  { name: 'Marguerite Osei', email: 'marguerite@harrowmere.example', jobTitle: 'Clinical governance', roles: ['auditor'], wards: [] },
+  {
+    name: 'Ines Okafor-Lindqvist',
+    email: 'ines@harrowmere.example',
+    jobTitle: 'Biomedical engineering',
+    roles: ['biomed'],
+    wards: [],
+  },
+  {
+    name: 'Dr Solveig Adeyemi',
+    email: 'solveig@harrowmere.example',
+    jobTitle: 'Respiratory medicine',
+    roles: ['clinician'],
+    wards: ['Alder', 'Birch'],
+  },
+  {
+    name: 'Dr Pascal Ngata',
+    email: 'pascal@harrowmere.example',
+    jobTitle: 'Respiratory medicine',
+    roles: ['clinician'],
+    wards: ['Alder', 'Cedar'],
+  },
+  {
+    name: 'Sister Imelda Croft',
+    email: 'imelda@harrowmere.example',
+    jobTitle: 'Emergency nursing',
+    roles: ['clinician'],
+    wards: ['Emergency department', 'Rowan'],
+  },
+  {
+    name: 'Tomasz Abara',
+    email: 'tomasz@harrowmere.example',
+    jobTitle: 'Information technology',
+    roles: ['itadmin'],
+    wards: [],
+  },
+  {
+    name: 'Marguerite Osei',
+    email: 'marguerite@harrowmere.example',
+    jobTitle: 'Clinical governance',
+    roles: ['auditor'],
+    wards: [],
+  },
 ];
 
 export const MODELS: ModelDescription[] = [
   {
-    maker: 'Tarn & Wick', name: 'Tarn & Wick TW-2', sampleRatesHz: [4000], bitDepths: [16], mediaTypes: ['audio/wav'], allowLossy: false,
-    longestClipSeconds: 120, fullScaleNote: 'Clips hard at full scale; gain in seven steps.', checkIntervalDays: 180, signsRequests: true,
+    maker: 'Tarn & Wick',
+    name: 'Tarn & Wick TW-2',
+    sampleRatesHz: [4000],
+    bitDepths: [16],
+    mediaTypes: ['audio/wav'],
+    allowLossy: false,
+    longestClipSeconds: 120,
+    fullScaleNote: 'Clips hard at full scale; gain in seven steps.',
+    checkIntervalDays: 180,
+    signsRequests: true,
   },
   {
-    maker: 'Ossel', name: 'Ossel Clarity 4', sampleRatesHz: [8000, 44_100], bitDepths: [16, 24], mediaTypes: ['audio/wav', 'audio/flac'], allowLossy: false,
-    longestClipSeconds: 300, fullScaleNote: 'Limits 3 dB below full scale before its converter.', checkIntervalDays: 90, signsRequests: true,
+    maker: 'Ossel',
+    name: 'Ossel Clarity 4',
+    sampleRatesHz: [8000, 44_100],
+    bitDepths: [16, 24],
+    mediaTypes: ['audio/wav', 'audio/flac'],
+    allowLossy: false,
+    longestClipSeconds: 300,
+    fullScaleNote: 'Limits 3 dB below full scale before its converter.',
+    checkIntervalDays: 90,
+    signsRequests: true,
   },
   {
-    maker: 'Marrow', name: 'Marrow Field 1', sampleRatesHz: [4000, 8000], bitDepths: [16], mediaTypes: ['audio/wav'], allowLossy: false,
-    longestClipSeconds: 60, fullScaleNote: null, checkIntervalDays: 365, signsRequests: false,
+    maker: 'Marrow',
+    name: 'Marrow Field 1',
+    sampleRatesHz: [4000, 8000],
+    bitDepths: [16],
+    mediaTypes: ['audio/wav'],
+    allowLossy: false,
+    longestClipSeconds: 60,
+    fullScaleNote: null,
+    checkIntervalDays: 365,
+    signsRequests: false,
   },
 ];
 
@@ -52,12 +112,72 @@ export interface SeedDevice {
 }
 
 const GIVEN = [
-  'Aurelio', 'Benedikta', 'Casimir', 'Delphine', 'Emeka', 'Freya', 'Gustavo', 'Hanneke', 'Ibrahim', 'Jocasta', 'Kwabena', 'Liesel', 'Mirembe', 'Niamh', 'Oluwaseun', 'Petronella',
-  'Quentin', 'Rosalind', 'Siobhan', 'Tadeusz', 'Ursula', 'Valentin', 'Wilhelmina', 'Xanthe', 'Yusuf', 'Zofia', 'Anselm', 'Birgit', 'Cormac', 'Dorothea', 'Eilidh', 'Florian',
+  'Aurelio',
+  'Benedikta',
+  'Casimir',
+  'Delphine',
+  'Emeka',
+  'Freya',
+  'Gustavo',
+  'Hanneke',
+  'Ibrahim',
+  'Jocasta',
+  'Kwabena',
+  'Liesel',
+  'Mirembe',
+  'Niamh',
+  'Oluwaseun',
+  'Petronella',
+  'Quentin',
+  'Rosalind',
+  'Siobhan',
+  'Tadeusz',
+  'Ursula',
+  'Valentin',
+  'Wilhelmina',
+  'Xanthe',
+  'Yusuf',
+  'Zofia',
+  'Anselm',
+  'Birgit',
+  'Cormac',
+  'Dorothea',
+  'Eilidh',
+  'Florian',
 ] as const;
 const FAMILY = [
-  'Mbeki-Tran', 'Ashgrove', 'Bellamy-Ruiz', 'Castellane', 'Drummond', 'Eriksen', 'Fairweather', 'Gorecki', 'Hollis', 'Ivarsson', 'Jankowska', 'Kettleby', 'Lindgren', 'Montague', 'Nwosu',
-  'O’Dwyer', 'Pemberton', 'Quayle', 'Rasmussen', 'Sorrento', 'Thackeray', 'Underhill', 'Vasquez', 'Whitlock', 'Xu', 'Yardley', 'Zeller', 'Abernathy', 'Brandt', 'Callender', 'Dunmore', 'Featherstonehaugh-Cholmondeley',
+  'Mbeki-Tran',
+  'Ashgrove',
+  'Bellamy-Ruiz',
+  'Castellane',
+  'Drummond',
+  'Eriksen',
+  'Fairweather',
+  'Gorecki',
+  'Hollis',
+  'Ivarsson',
+  'Jankowska',
+  'Kettleby',
+  'Lindgren',
+  'Montague',
+  'Nwosu',
+  'O’Dwyer',
+  'Pemberton',
+  'Quayle',
+  'Rasmussen',
+  'Sorrento',
+  'Thackeray',
+  'Underhill',
+  'Vasquez',
+  'Whitlock',
+  'Xu',
+  'Yardley',
+  'Zeller',
+  'Abernathy',
+  'Brandt',
+  'Callender',
+  'Dunmore',
+  'Featherstonehaugh-Cholmondeley',
 ] as const;
 
 export { FAMILY, GIVEN };
@@ -65,7 +185,10 @@ export { FAMILY, GIVEN };
 const hexDigits = '0123456789ABCDEF';
 
 /** Sixty devices of three models: two drifting, one gone quiet, one in repair, two quarantined, five still waiting. */
-export function seedDevices(random: { whole(low: number, high: number): number; pick<T>(from: readonly T[]): T }): SeedDevice[] {
+export function seedDevices(random: {
+  whole(low: number, high: number): number;
+  pick<T>(from: readonly T[]): T;
+}): SeedDevice[] {
   const wards: WardName[] = ['Alder', 'Birch', 'Cedar', 'Rowan', 'Emergency department'];
   return Array.from({ length: 60 }, (_, i) => {
     const kind = i % 3;
@@ -83,8 +206,16 @@ export function seedDevices(random: { whole(low: number, high: number): number; 
       ward: waiting ? 'Stores' : (wards[i % wards.length] ?? 'Alder'),
       firmware: kind === 0 ? (i % 2 ? '2.4.1' : '2.4.0') : kind === 1 ? '4.1.7' : '1.0.9',
       enrolledDaysAgo: waiting ? null : kind === 2 ? random.whole(1, 8) : random.whole(5, 84),
-      state: waiting ? 'waiting' : i === 13 || i === 28 ? 'quarantined' : i === 21 ? 'in-repair' : 'in-service',
-      ...(i === 13 ? { stateReason: 'Noise floor rose 14 dB in three weeks; to be checked at the bench' } : {}),
+      state: waiting
+        ? 'waiting'
+        : i === 13 || i === 28
+          ? 'quarantined'
+          : i === 21
+            ? 'in-repair'
+            : 'in-service',
+      ...(i === 13
+        ? { stateReason: 'Noise floor rose 14 dB in three weeks; to be checked at the bench' }
+        : {}),
       ...(i === 28 ? { stateReason: 'Diaphragm rim cracked, reported by ward' } : {}),
       ...(i === 21 ? { stateReason: 'Battery swelling; sent to the maker' } : {}),
       drift: i === 13 || i === 33 ? 'noisy' : i === 6 ? 'deaf' : 'none',

@@ -11,7 +11,8 @@ export function recordPeerAddresses(): void {
     const { request } = message as { request: IncomingMessage };
     const before = request.headers['x-forwarded-for'];
     const peer = request.socket.remoteAddress ?? 'unknown';
-    request.headers['x-forwarded-for'] = before === undefined ? peer : `${[before].flat().join(', ')}, ${peer}`;
+    request.headers['x-forwarded-for'] =
+      before === undefined ? peer : `${[before].flat().join(', ')}, ${peer}`;
   });
 }
 
@@ -20,6 +21,9 @@ export function recordPeerAddresses(): void {
  * proxy is trusted. What stands before it is the caller's own word.
  */
 export function clientAddress(services: Pick<Services, 'env'>, request: Request): string {
-  const entries = (request.headers.get('x-forwarded-for') ?? '').split(',').map((part) => part.trim()).filter(Boolean);
+  const entries = (request.headers.get('x-forwarded-for') ?? '')
+    .split(',')
+    .map((part) => part.trim())
+    .filter(Boolean);
   return entries.at(-1 - services.env.TRUSTED_PROXIES) ?? entries[0] ?? 'unknown';
 }

@@ -7,8 +7,8 @@ import type { AuthenticatedDevice } from '@/lib/keys/device';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
 import { readJson } from './body';
-import { problemResponse } from './problem';
 import { clientAddress } from './clientAddress';
+import { problemResponse } from './problem';
 import { getServices } from './services';
 
 interface Context<Body, Device> {
@@ -23,7 +23,9 @@ type RouteContext = { params: Promise<Record<string, string>> };
 const LARGEST_BODY_BYTES = 16_384;
 const WRONG_CALLS_PER_MINUTE = 60;
 
-const limiters = globalThis as { bellkeepDeviceLimits?: { calls: RateLimiterMemory; wrong: RateLimiterMemory } };
+const limiters = globalThis as {
+  bellkeepDeviceLimits?: { calls: RateLimiterMemory; wrong: RateLimiterMemory };
+};
 function limits(services: Services) {
   limiters.bellkeepDeviceLimits ??= {
     calls: new RateLimiterMemory({ points: services.env.DEVICE_REQUESTS_PER_MINUTE, duration: 60 }),
@@ -38,13 +40,21 @@ async function spend(limiter: RateLimiterMemory, key: string): Promise<void> {
   } catch (left) {
     if (!(left instanceof RateLimiterRes)) throw left;
     const seconds = String(Math.max(1, Math.ceil(left.msBeforeNext / 1000)));
-    throw new Refusal('too-many-requests', undefined, {}, { headers: { 'retry-after': seconds, ratelimit: `"device";r=0;t=${seconds}` } });
+    throw new Refusal(
+      'too-many-requests',
+      undefined,
+      {},
+      { headers: { 'retry-after': seconds, ratelimit: `"device";r=0;t=${seconds}` } },
+    );
   }
 }
 
 const CHALLENGED = new Set(['token-invalid', 'proof-invalid']);
 
-async function answer(request: Request, work: (services: Services, requestId: string) => Promise<Response>): Promise<Response> {
+async function answer(
+  request: Request,
+  work: (services: Services, requestId: string) => Promise<Response>,
+): Promise<Response> {
   const requestId = randomUUID();
   const services = await getServices();
   const started = performance.now();
@@ -54,12 +64,24 @@ async function answer(request: Request, work: (services: Services, requestId: st
     response.headers.set('x-request-id', requestId);
     response.headers.set('cache-control', 'no-store');
     response.headers.set('dpop-nonce', currentNonce(services));
-    services.log.info({ requestId, method: request.method, path, status: response.status, ms: Math.round(performance.now() - started) }, 'device call');
+    services.log.info(
+      {
+        requestId,
+        method: request.method,
+        path,
+        status: response.status,
+        ms: Math.round(performance.now() - started),
+      },
+      'device call',
+    );
     return response;
   } catch (error) {
     const refusal = error instanceof Refusal ? error : new Refusal('fault', undefined, {}, { cause: error });
     const level = refusal.code === 'fault' ? 'error' : 'info';
-    services.log[level]({ requestId, method: request.method, path, problem: refusal.code, err: refusal.cause }, 'device call refused');
+    services.log[level](
+      { requestId, method: request.method, path, problem: refusal.code, err: refusal.cause },
+      'device call refused',
+    );
     return problemResponse(refusal.code, {
       detail: refusal.detail,
       extra: refusal.extra,
@@ -87,10 +109,15 @@ export function deviceRoute<S extends z.ZodType>(
       const { calls, wrong } = limits(services);
       let device: AuthenticatedDevice;
       try {
-        device = await authenticateDevice(services, request, services.env.BELLKEEP_ORIGIN + new URL(request.url).pathname);
+        device = await authenticateDevice(
+          services,
+          request,
+          services.env.BELLKEEP_ORIGIN + new URL(request.url).pathname,
+        );
       } catch (error) {
         // A device that needs a nonce is no guesser; everything else that fails here is counted by address.
-        if (error instanceof Refusal && error.code !== 'use-dpop-nonce') await spend(wrong, clientAddress(services, request));
+        if (error instanceof Refusal && error.code !== 'use-dpop-nonce')
+          await spend(wrong, clientAddress(services, request));
         throw error;
       }
       await spend(calls, device.device.id);

@@ -1,5 +1,5 @@
 import { insertFiling, placementOf } from '@/lib/filing/placeRecording';
-import { createAnalysisPool, type AnalysisPool } from '@/lib/ingest/analysisPool';
+import { type AnalysisPool, createAnalysisPool } from '@/lib/ingest/analysisPool';
 import type { IngestServices, PlaceRecording } from '@/lib/ingest/completeRecording';
 import type { Services } from '@/lib/platform/services';
 

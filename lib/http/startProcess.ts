@@ -1,6 +1,7 @@
 import { applyMigrations } from '@/db/migrate';
 import { sweepRecordings } from '@/lib/ingest/sweep';
 import { currentSigningKey } from '@/lib/keys/signingKeys';
+import { Message } from '@/lib/mail/port';
 import { startOutbox } from '@/lib/platform/outbox';
 import { recordPeerAddresses } from './clientAddress';
 import { ingestServices } from './passage';
@@ -14,7 +15,7 @@ export async function startProcess(): Promise<void> {
   const services = await getServices();
   await applyMigrations(services.database);
   await currentSigningKey(services, 'device-token');
-  startOutbox(services);
+  startOutbox(services, { mail: (payload) => services.mail.send(Message.parse(payload)) });
 
   let sweeping = false;
   const sweep = setInterval(async () => {

@@ -1,4 +1,5 @@
 import type { Database } from '@/db/client';
+import type { Mail } from '@/lib/mail/port';
 import type { Storage } from '@/lib/storage/port';
 import type { Clock } from './clock';
 import type { Env } from './env';
@@ -9,6 +10,7 @@ import type { SecretBox } from './secretBox';
 export interface Services extends Pick<Database, 'read' | 'write'> {
   database: Database;
   storage: Storage;
+  mail: Mail;
   clock: Clock;
   log: Log;
   env: Env;
