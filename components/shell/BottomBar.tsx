@@ -49,7 +49,7 @@ export function BottomBar(props: Presence) {
           <PersonLines person={props.person} hospital={props.hospital} />
           <FindButton onOpen={() => setOpen(false)} />
           <ThemeSwitch theme={props.theme} />
-          <div className="flex gap-6">
+          <div className="flex items-center gap-6 [&_button]:min-h-11">
             <Link href="/account" className="link min-h-11 content-center">
               Account
             </Link>

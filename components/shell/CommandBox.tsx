@@ -180,7 +180,7 @@ export function FindButton({ onOpen }: { onOpen?: () => void }) {
       className="flex min-h-9 w-full items-center justify-between gap-2 rounded-plate border border-line-control px-2.5 text-13 text-ink-soft hover:text-ink"
     >
       Find
-      <kbd className="text-13">{apple ? '⌘ K' : 'Ctrl K'}</kbd>
+      <kbd className="text-13 pointer-coarse:hidden">{apple ? '⌘ K' : 'Ctrl K'}</kbd>
     </button>
   );
 }

@@ -54,39 +54,46 @@ export function ConfirmDialog({ open, onOpenChange, title, children, ...rest }: 
       <form id={formId} onSubmit={form.submit} className="grid gap-4">
         <div className="grid gap-2">{children}</div>
         {form.failure ? <Notice tone="alarm">{form.failure}</Notice> : null}
-        {typed ? (
-          <Field
-            label={
-              typed.label ?? (
-                <>
-                  Type <span className="mono">{typed.text}</span> to go on
-                </>
-              )
-            }
-          >
-            <TextInput
-              mono
-              autoComplete="off"
-              spellCheck={false}
-              value={form.typedValue}
-              onChange={(event) => form.setTypedValue(event.target.value)}
-            />
-          </Field>
-        ) : null}
-        {reason ? (
-          <Field
-            label={reason.label}
-            help={reason.help ?? 'It is kept with this change and shown to the auditor.'}
-            required
-          >
-            <Textarea
-              value={form.reasonValue}
-              onChange={(event) => form.setReasonValue(event.target.value)}
-            />
-          </Field>
-        ) : null}
+        <Proof typed={typed} reason={reason} form={form} />
       </form>
     </Dialog>
+  );
+}
+
+type ProofProps = Pick<ConfirmDialogProps, 'typed' | 'reason'> & { form: ReturnType<typeof useConfirmation> };
+
+function Proof({ typed, reason, form }: ProofProps) {
+  return (
+    <>
+      {typed ? (
+        <Field
+          label={
+            typed.label ?? (
+              <>
+                Type <span className="mono">{typed.text}</span> to go on
+              </>
+            )
+          }
+        >
+          <TextInput
+            mono
+            autoComplete="off"
+            spellCheck={false}
+            value={form.typedValue}
+            onChange={(event) => form.setTypedValue(event.target.value)}
+          />
+        </Field>
+      ) : null}
+      {reason ? (
+        <Field
+          label={reason.label}
+          help={reason.help ?? 'It is kept with this change and shown to the auditor.'}
+          required
+        >
+          <Textarea value={form.reasonValue} onChange={(event) => form.setReasonValue(event.target.value)} />
+        </Field>
+      ) : null}
+    </>
   );
 }
 

@@ -22,7 +22,8 @@ const numbersOf = (at: number, zone: string) => {
     formats.set(zone, format);
   }
   const parts = Object.fromEntries(format.formatToParts(at).map(({ type, value }) => [type, value]));
-  const offset = (parts.timeZoneName ?? 'GMT').replace('GMT', '');
+  // Some versions of ICU say GMT, others GMT+00:00.
+  const offset = (parts.timeZoneName ?? 'GMT').replace('GMT', '').replace('+00:00', '');
   return {
     year: Number(parts.year),
     day: Number(parts.day),

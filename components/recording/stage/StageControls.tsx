@@ -2,7 +2,7 @@
 
 import { cx } from '@/components/ui/cx';
 import type { DbScale } from './drawSpectrogram';
-import { fitView, type Stretch, zoomAbout } from './view';
+import { fitView, type Stretch, stretchInWords, zoomAbout } from './view';
 
 interface StageControlsProps {
   view: Stretch;
@@ -24,73 +24,22 @@ const dB = (value: number) => `${Math.round(value)}`.replace('-', '−');
 
 /** The line under the time axis: zoom and move, how high, how tall, and what the colours stand for. */
 export function StageControls(props: StageControlsProps) {
-  const { view, setView, durationSeconds, topHz, topChoices, setTopHz, gain, setGain, scale, gradient } =
-    props;
-  const middle = (view.from + view.to) / 2;
-  const length = view.to - view.from;
-  const whole = length >= durationSeconds - 1e-9;
+  const { topHz, topChoices, setTopHz, gain, setGain, scale, gradient } = props;
   return (
     <div className="no-print flex flex-wrap items-center gap-x-5 gap-y-1 border-t border-line px-2.5 py-1 text-13 text-ink-soft">
-      <fieldset className="flex items-center">
-        <legend className="sr-only">Zoom</legend>
-        <Small
-          label="Zoom out"
-          onClick={() => setView(zoomAbout(view, middle, 2, durationSeconds))}
-          disabled={whole}
-        >
-          −
-        </Small>
-        <Small label="Zoom in" onClick={() => setView(zoomAbout(view, middle, 0.5, durationSeconds))}>
-          +
-        </Small>
-        <Small onClick={() => setView({ from: 0, to: durationSeconds })} disabled={whole}>
-          Whole
-        </Small>
-      </fieldset>
-      {whole ? null : (
-        <input
-          type="range"
-          aria-label="Part in view"
-          aria-valuetext={`${view.from.toFixed(2)} to ${view.to.toFixed(2)} s`}
-          min={0}
-          max={durationSeconds - length}
-          step="any"
-          value={view.from}
-          onChange={({ target }) => {
-            const from = Number(target.value);
-            setView(fitView({ from, to: from + length }, durationSeconds));
-          }}
-          className="min-w-24 flex-1"
-        />
-      )}
-      <label className="flex items-center gap-1.5">
-        up to
-        <select
-          value={topHz}
-          onChange={({ target }) => setTopHz(Number(target.value))}
-          className="min-h-7 bg-sheet text-ink"
-        >
-          {topChoices.map((choice) => (
-            <option key={choice} value={choice}>
-              {hertz(choice)}
-            </option>
-          ))}
-        </select>
-      </label>
-      <label className="flex items-center gap-1.5">
-        waveform
-        <select
-          value={gain}
-          onChange={({ target }) => setGain(Number(target.value))}
-          className="min-h-7 bg-sheet text-ink"
-        >
-          {GAINS.map((choice) => (
-            <option key={choice} value={choice}>
-              {choice === 1 ? 'true height' : `${choice} times taller`}
-            </option>
-          ))}
-        </select>
-      </label>
+      <Zoom {...props} />
+      <Choice
+        label="up to"
+        value={topHz}
+        onChange={setTopHz}
+        options={topChoices.map((choice) => [choice, hertz(choice)])}
+      />
+      <Choice
+        label="waveform"
+        value={gain}
+        onChange={setGain}
+        options={GAINS.map((choice) => [choice, choice === 1 ? 'true height' : `${choice} times taller`])}
+      />
       {scale ? (
         <span className="ml-auto flex items-center gap-1.5 whitespace-nowrap">
           {dB(scale.lowDb)}
@@ -103,6 +52,75 @@ export function StageControls(props: StageControlsProps) {
         </span>
       ) : null}
     </div>
+  );
+}
+
+function Zoom({
+  view,
+  setView,
+  durationSeconds,
+}: Pick<StageControlsProps, 'view' | 'setView' | 'durationSeconds'>) {
+  const middle = (view.from + view.to) / 2;
+  const length = view.to - view.from;
+  const whole = length >= durationSeconds - 1e-9;
+  const zoom = (factor: number) => setView(zoomAbout(view, middle, factor, durationSeconds));
+  return (
+    <>
+      <fieldset className="flex items-center">
+        <legend className="sr-only">Zoom</legend>
+        <Small label="Zoom out" onClick={() => zoom(2)} disabled={whole}>
+          −
+        </Small>
+        <Small label="Zoom in" onClick={() => zoom(0.5)}>
+          +
+        </Small>
+        <Small onClick={() => setView({ from: 0, to: durationSeconds })} disabled={whole}>
+          Whole
+        </Small>
+      </fieldset>
+      {whole ? null : (
+        <input
+          type="range"
+          aria-label="Part in view"
+          aria-valuetext={stretchInWords(view)}
+          min={0}
+          max={durationSeconds - length}
+          step="any"
+          value={view.from}
+          onChange={({ target }) => {
+            const from = Number(target.value);
+            setView(fitView({ from, to: from + length }, durationSeconds));
+          }}
+          className="min-w-24 flex-1"
+        />
+      )}
+    </>
+  );
+}
+
+interface ChoiceProps {
+  label: string;
+  value: number;
+  onChange: (value: number) => void;
+  options: readonly (readonly [number, string])[];
+}
+
+function Choice({ label, value, onChange, options }: ChoiceProps) {
+  return (
+    <label className="flex items-center gap-1.5">
+      {label}
+      <select
+        value={value}
+        onChange={({ target }) => onChange(Number(target.value))}
+        className="min-h-7 bg-sheet text-ink"
+      >
+        {options.map(([choice, words]) => (
+          <option key={choice} value={choice}>
+            {words}
+          </option>
+        ))}
+      </select>
+    </label>
   );
 }
 

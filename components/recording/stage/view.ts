@@ -51,7 +51,7 @@ export function ticksOf(from: number, to: number, wanted: number): { values: num
     [1, 2, 5, 10].map((n) => n * power).find((candidate) => candidate >= raw * 0.999) ?? 10 * power;
   const digits = Math.max(0, -Math.floor(Math.log10(step) + 1e-9));
   const values: number[] = [];
-  for (let n = Math.ceil(from / step - 1e-9); n * step <= to + step * 1e-9; n++) values.push(n * step);
+  for (let n = Math.ceil(from / step - 1e-9) + 0; n * step <= to + step * 1e-9; n++) values.push(n * step);
   return { values, digits };
 }
 
