@@ -31,6 +31,12 @@ export async function loadLiving(tx: Tx, id: string, version: number, now: numbe
   return { found, assetTag };
 }
 
+interface Asked {
+  label: string;
+  assetTag: string;
+  askedAt: number;
+}
+
 /**
  * Rotate one credential: the device is told with its next answer to renew. The old one keeps working until the new
  * one is first used, at most 24 hours after it was renewed, so nothing stops.
@@ -41,8 +47,8 @@ export async function askRenewal(
   services: Pick<Services, 'write' | 'clock'>,
   by: Authorized<'credential.write'>,
   wanted: { id: string; version: number },
-  inSameTransaction?: (tx: Tx) => Promise<void>,
-): Promise<{ label: string; assetTag: string; askedAt: number }> {
+  remember?: (tx: Tx, answer: Asked) => Promise<void>,
+): Promise<Asked> {
   const now = services.clock.now();
   return await services.write(async (tx) => {
     const { found, assetTag } = await loadLiving(tx, wanted.id, wanted.version, now);
@@ -66,7 +72,8 @@ export async function askRenewal(
         detail: { label: found.label },
       },
     ]);
-    await inSameTransaction?.(tx);
-    return { label: found.label, assetTag, askedAt: now };
+    const answer = { label: found.label, assetTag, askedAt: now };
+    await remember?.(tx, answer);
+    return answer;
   });
 }

@@ -27,15 +27,13 @@ export async function heartbeat(
       })
       .where(eq(device.id, caller.device.id));
     if (firmware === caller.device.firmware || firmware === null) return;
-    await tx
-      .insert(firmwareChange)
-      .values({
-        id: newId(),
-        deviceId: caller.device.id,
-        from: caller.device.firmware,
-        to: firmware,
-        at: now,
-      });
+    await tx.insert(firmwareChange).values({
+      id: newId(),
+      deviceId: caller.device.id,
+      from: caller.device.firmware,
+      to: firmware,
+      at: now,
+    });
     await appendEntries(tx, now, [
       {
         kind: 'device-firmware-changed',

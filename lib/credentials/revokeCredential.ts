@@ -6,6 +6,11 @@ import { type Authorized, personActor } from '@/lib/platform/authority';
 import type { Services } from '@/lib/platform/services';
 import { loadLiving } from './askRenewal';
 
+interface Revoked {
+  labels: string[];
+  assetTag: string;
+}
+
 /**
  * Revoke a credential and every living one of its family: whoever holds it could otherwise renew into a fresh one.
  * The device must be enrolled again at the bench.
@@ -16,8 +21,8 @@ export async function revokeCredential(
   services: Pick<Services, 'write' | 'clock'>,
   by: Authorized<'credential.write'>,
   wanted: { id: string; version: number; reason: string },
-  inSameTransaction?: (tx: Tx) => Promise<void>,
-): Promise<{ labels: string[]; assetTag: string }> {
+  remember?: (tx: Tx, answer: Revoked) => Promise<void>,
+): Promise<Revoked> {
   const now = services.clock.now();
   return await services.write(async (tx) => {
     const { found, assetTag } = await loadLiving(tx, wanted.id, wanted.version, now);
@@ -44,7 +49,8 @@ export async function revokeCredential(
         detail: { label: row.label, why: wanted.reason },
       })),
     );
-    await inSameTransaction?.(tx);
-    return { labels: ended.map((row) => row.label), assetTag };
+    const answer = { labels: ended.map((row) => row.label), assetTag };
+    await remember?.(tx, answer);
+    return answer;
   });
 }

@@ -20,7 +20,8 @@ type Outcome =
   | { kind: 'enrolled' | 'repeated'; device: DeviceRow; credential: CredentialRow }
   | { kind: 'refused'; why: string };
 
-const sameHash = (a: string, b: string) => a.length === b.length && timingSafeEqual(Buffer.from(a), Buffer.from(b));
+const sameHash = (a: string, b: string) =>
+  a.length === b.length && timingSafeEqual(Buffer.from(a), Buffer.from(b));
 
 /**
  * Take a device's public key in exchange for its one-time code, and give it its first credential.
@@ -30,7 +31,10 @@ const sameHash = (a: string, b: string) => a.length === b.length && timingSafeEq
  *
  * @throws Refusal `enrolment-refused`
  */
-export async function enrolDevice(services: Needs, request: EnrolRequest): Promise<{ answer: CredentialAnswer; repeated: boolean }> {
+export async function enrolDevice(
+  services: Needs,
+  request: EnrolRequest,
+): Promise<{ answer: CredentialAnswer; repeated: boolean }> {
   const thumbprint = await verifyEnrolmentProof(request.proof, {
     publicKey: request.publicKey,
     origin: services.env.BELLKEEP_ORIGIN,
@@ -46,7 +50,12 @@ export async function enrolDevice(services: Needs, request: EnrolRequest): Promi
     throw new Refusal('enrolment-refused');
   }
   return {
-    answer: await credentialAnswer(services, outcome.credential, await keyOf(services, outcome.credential, key), outcome.device),
+    answer: await credentialAnswer(
+      services,
+      outcome.credential,
+      await keyOf(services, outcome.credential, key),
+      outcome.device,
+    ),
     repeated: outcome.kind === 'repeated',
   };
 }
@@ -58,7 +67,13 @@ async function keyOf(services: Needs, row: CredentialRow, current: SigningKeyRow
   return found;
 }
 
-async function tryCode(tx: Tx, services: Needs, request: EnrolRequest, thumbprint: string | null, key: SigningKeyRow): Promise<Outcome> {
+async function tryCode(
+  tx: Tx,
+  services: Needs,
+  request: EnrolRequest,
+  thumbprint: string | null,
+  key: SigningKeyRow,
+): Promise<Outcome> {
   const now = services.clock.now();
   const rows = await tx
     .select({ code: enrolmentCode, device, signs: deviceModel.signsRequests })
@@ -74,16 +89,31 @@ async function tryCode(tx: Tx, services: Needs, request: EnrolRequest, thumbprin
   if (hit?.code.usedAt != null) {
     // The answer may have been lost: the same code by the same key gets the same credential, while it is still the
     // device's last word.
-    if (thumbprint === null || hit.device.keyThumbprint !== thumbprint || hit.code.credentialId === null || hit.code.expiresAt <= now) {
+    if (
+      thumbprint === null ||
+      hit.device.keyThumbprint !== thumbprint ||
+      hit.code.credentialId === null ||
+      hit.code.expiresAt <= now
+    ) {
       return { kind: 'refused', why: 'code used before' };
     }
-    const [given] = await tx.select().from(credential).where(eq(credential.id, hit.code.credentialId)).limit(1);
-    if (!given || given.state === 'revoked' || given.state === 'retired') return { kind: 'refused', why: 'credential ended' };
+    const [given] = await tx
+      .select()
+      .from(credential)
+      .where(eq(credential.id, hit.code.credentialId))
+      .limit(1);
+    if (!given || given.state === 'revoked' || given.state === 'retired')
+      return { kind: 'refused', why: 'credential ended' };
     return { kind: 'repeated', device: hit.device, credential: given };
   }
 
   if (!hit || thumbprint === null || hit.code.expiresAt <= now || hit.code.triesLeft <= 0) {
-    await countTry(tx, now, rows.filter((row) => row.code.usedAt === null), hit ? 'proof or code not valid' : 'wrong code');
+    await countTry(
+      tx,
+      now,
+      rows.filter((row) => row.code.usedAt === null),
+      hit ? 'proof or code not valid' : 'wrong code',
+    );
     return { kind: 'refused', why: hit ? 'proof, time or tries' : 'no such code' };
   }
   if (!['waiting', 'in-service', 'in-repair', 'quarantined'].includes(hit.device.state)) {
@@ -93,10 +123,18 @@ async function tryCode(tx: Tx, services: Needs, request: EnrolRequest, thumbprin
   return { kind: 'enrolled', ...enrolled };
 }
 
-async function countTry(tx: Tx, now: number, open: { code: typeof enrolmentCode.$inferSelect; device: DeviceRow }[], why: string) {
+async function countTry(
+  tx: Tx,
+  now: number,
+  open: { code: typeof enrolmentCode.$inferSelect; device: DeviceRow }[],
+  why: string,
+) {
   for (const { code, device: tried } of open) {
     if (code.triesLeft <= 0) continue;
-    await tx.update(enrolmentCode).set({ triesLeft: code.triesLeft - 1 }).where(eq(enrolmentCode.id, code.id));
+    await tx
+      .update(enrolmentCode)
+      .set({ triesLeft: code.triesLeft - 1 })
+      .where(eq(enrolmentCode.id, code.id));
     await appendEntries(tx, now, [
       {
         kind: 'enrolment-code-refused',
@@ -120,9 +158,19 @@ async function enrolNow(
   const ended = await tx
     .update(credential)
     .set({ state: 'revoked', revokedAt: now, endReason: 'enrolled again' })
-    .where(and(eq(credential.deviceId, hit.device.id), inArray(credential.state, ['issued', 'in-use', 'superseded'])))
+    .where(
+      and(
+        eq(credential.deviceId, hit.device.id),
+        inArray(credential.state, ['issued', 'in-use', 'superseded']),
+      ),
+    )
     .returning({ id: credential.id });
-  const given = await insertCredential(tx, { deviceId: hit.device.id, kid: key.kid, boundThumbprint: hit.signs ? thumbprint : null, nowMs: now });
+  const given = await insertCredential(tx, {
+    deviceId: hit.device.id,
+    kid: key.kid,
+    boundThumbprint: hit.signs ? thumbprint : null,
+    nowMs: now,
+  });
   const change = {
     keyThumbprint: thumbprint,
     publicJwk: request.publicKey as Record<string, unknown>,
@@ -133,23 +181,47 @@ async function enrolNow(
     version: hit.device.version + 1,
   };
   await tx.update(device).set(change).where(eq(device.id, hit.device.id));
-  await tx.update(enrolmentCode).set({ usedAt: now, credentialId: given.id }).where(eq(enrolmentCode.id, hit.code.id));
-  const subjects = [{ kind: 'device' as const, id: hit.device.id }, { kind: 'credential' as const, id: given.id }];
+  await tx
+    .update(enrolmentCode)
+    .set({ usedAt: now, credentialId: given.id })
+    .where(eq(enrolmentCode.id, hit.code.id));
+  const subjects = [
+    { kind: 'device' as const, id: hit.device.id },
+    { kind: 'credential' as const, id: given.id },
+  ];
   await appendEntries(tx, now, [
     ...ended.map((old) => ({
-      kind: 'credential-revoked' as const, actor: deviceActor(hit.device),
-      subjects: [{ kind: 'device' as const, id: hit.device.id }, { kind: 'credential' as const, id: old.id }],
+      kind: 'credential-revoked' as const,
+      actor: deviceActor(hit.device),
+      subjects: [
+        { kind: 'device' as const, id: hit.device.id },
+        { kind: 'credential' as const, id: old.id },
+      ],
       detail: { why: 'enrolled again' },
     })),
     {
-      kind: 'device-enrolled', actor: deviceActor(hit.device), subjects,
-      detail: { serialNumber: hit.device.serialNumber, thumbprint, keyType: request.publicKey.crv, ...(request.firmware ? { firmware: request.firmware } : {}) },
+      kind: 'device-enrolled',
+      actor: deviceActor(hit.device),
+      subjects,
+      detail: {
+        serialNumber: hit.device.serialNumber,
+        thumbprint,
+        keyType: request.publicKey.crv,
+        ...(request.firmware ? { firmware: request.firmware } : {}),
+      },
       before: { state: hit.device.state, thumbprint: hit.device.keyThumbprint },
       after: { state: change.state, thumbprint },
     },
     {
-      kind: 'credential-issued', actor: SERVICE_ACTOR, subjects,
-      detail: { label: given.label, kid: given.kid, bound: given.boundThumbprint !== null, expiresAt: new Date(given.expiresAt).toISOString() },
+      kind: 'credential-issued',
+      actor: SERVICE_ACTOR,
+      subjects,
+      detail: {
+        label: given.label,
+        kid: given.kid,
+        bound: given.boundThumbprint !== null,
+        expiresAt: new Date(given.expiresAt).toISOString(),
+      },
     },
   ]);
   return { device: { ...hit.device, ...change }, credential: given };

@@ -13,7 +13,9 @@ export const CODE_TRIES = 5;
 
 /** The hash a code is kept by: HMAC-SHA-256 under the service's secret, so that a copied database opens nothing. */
 export const codeHash = (services: Pick<Services, 'env'>, code: string): string =>
-  createHmac('sha256', Buffer.from(services.env.BELLKEEP_SECRET_KEY, 'base64')).update(`enrolment ${code}`).digest('hex');
+  createHmac('sha256', Buffer.from(services.env.BELLKEEP_SECRET_KEY, 'base64'))
+    .update(`enrolment ${code}`)
+    .digest('hex');
 
 /**
  * Make a one-time enrolment code for a device. An earlier open code of the same device is withdrawn.
@@ -37,7 +39,13 @@ export async function issueEnrolmentCode(
     await tx
       .update(enrolmentCode)
       .set({ withdrawnAt: now })
-      .where(and(eq(enrolmentCode.deviceId, deviceId), isNull(enrolmentCode.usedAt), isNull(enrolmentCode.withdrawnAt)));
+      .where(
+        and(
+          eq(enrolmentCode.deviceId, deviceId),
+          isNull(enrolmentCode.usedAt),
+          isNull(enrolmentCode.withdrawnAt),
+        ),
+      );
     await tx.insert(enrolmentCode).values({
       id: newId(),
       deviceId,
@@ -55,6 +63,11 @@ export async function issueEnrolmentCode(
         detail: { expiresAt: new Date(now + CODE_LIFETIME_MS).toISOString(), tries: CODE_TRIES },
       },
     ]);
-    return { code, expiresAt: now + CODE_LIFETIME_MS, assetTag: found.assetTag, serialNumber: found.serialNumber };
+    return {
+      code,
+      expiresAt: now + CODE_LIFETIME_MS,
+      assetTag: found.assetTag,
+      serialNumber: found.serialNumber,
+    };
   });
 }

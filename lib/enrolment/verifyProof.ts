@@ -14,15 +14,25 @@ export async function verifyEnrolmentProof(
   const algorithm = expected.publicKey.kty === 'OKP' ? 'EdDSA' : 'ES256';
   try {
     const key = await importJWK(expected.publicKey, algorithm);
-    const { payload, protectedHeader } = await compactVerify(proof, key, { algorithms: [algorithm, ...(algorithm === 'EdDSA' ? ['Ed25519'] : [])] });
+    const { payload, protectedHeader } = await compactVerify(proof, key, {
+      algorithms: [algorithm, ...(algorithm === 'EdDSA' ? ['Ed25519'] : [])],
+    });
     if (protectedHeader.typ !== ENROLMENT_PROOF_TYPE) return null;
     const claims = JSON.parse(new TextDecoder().decode(payload)) as Record<string, unknown>;
     const right =
-      claims.aud === expected.origin && claims.sub === expected.serialNumber &&
-      typeof claims.code === 'string' && claims.code.toUpperCase().replace(/[\s-]/g, '') === expected.code;
+      claims.aud === expected.origin &&
+      claims.sub === expected.serialNumber &&
+      typeof claims.code === 'string' &&
+      claims.code.toUpperCase().replace(/[\s-]/g, '') === expected.code;
     return right ? await calculateJwkThumbprint(expected.publicKey, 'sha256') : null;
   } catch (error) {
-    if (error instanceof errors.JOSEError || error instanceof TypeError || error instanceof SyntaxError || error instanceof DOMException) return null;
+    if (
+      error instanceof errors.JOSEError ||
+      error instanceof TypeError ||
+      error instanceof SyntaxError ||
+      error instanceof DOMException
+    )
+      return null;
     throw error;
   }
 }

@@ -1,5 +1,5 @@
 import { and, desc, eq, gte, isNull, lte, or } from 'drizzle-orm';
-import { encounter, filing, listeningSession, patient, recording } from '@/db/schema';
+import { encounter, filing, listeningSession, patient, type recording } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { newId } from '@/lib/platform/ids';
 
@@ -18,9 +18,17 @@ export interface Placement {
   sessionNumber: string | null;
 }
 /** Why nothing tied the clip to an encounter: shown in the tray. */
-export type TrayReason = 'no-session' | 'identifier-unknown' | 'identifier-ambiguous' | 'identifier-against-session' | 'encounter-over';
+export type TrayReason =
+  | 'no-session'
+  | 'identifier-unknown'
+  | 'identifier-ambiguous'
+  | 'identifier-against-session'
+  | 'encounter-over';
 
-export type RecordingToPlace = Pick<typeof recording.$inferSelect, 'id' | 'deviceId' | 'recordedAt' | 'scannedIdentifier'>;
+export type RecordingToPlace = Pick<
+  typeof recording.$inferSelect,
+  'id' | 'deviceId' | 'recordedAt' | 'scannedIdentifier'
+>;
 
 /**
  * Where a measured clip belongs: the listening session that was open on its device when it was recorded, or the
@@ -29,7 +37,10 @@ export type RecordingToPlace = Pick<typeof recording.$inferSelect, 'id' | 'devic
  */
 export async function placementOf(tx: Tx, clip: RecordingToPlace): Promise<Placement | TrayReason> {
   const session = await sessionAt(tx, clip);
-  const scanned = clip.scannedIdentifier === null ? null : await encounterByIdentifier(tx, clip.scannedIdentifier, clip.recordedAt);
+  const scanned =
+    clip.scannedIdentifier === null
+      ? null
+      : await encounterByIdentifier(tx, clip.scannedIdentifier, clip.recordedAt);
   if (typeof scanned === 'string') return scanned;
   if (scanned && session && scanned.patientId !== session.patientId) return 'identifier-against-session';
   if (session) return session;
@@ -52,12 +63,20 @@ async function sessionAt(tx: Tx, clip: RecordingToPlace): Promise<Placement | nu
     .limit(1);
   if (!row) return null;
   return {
-    encounterId: row.encounter.id, encounterNumber: row.encounter.number, patientId: row.encounter.patientId,
-    by: 'session', sessionId: row.session.id, sessionNumber: row.session.number,
+    encounterId: row.encounter.id,
+    encounterNumber: row.encounter.number,
+    patientId: row.encounter.patientId,
+    by: 'session',
+    sessionId: row.session.id,
+    sessionNumber: row.session.number,
   };
 }
 
-async function encounterByIdentifier(tx: Tx, identifier: string, recordedAt: number): Promise<Placement | TrayReason> {
+async function encounterByIdentifier(
+  tx: Tx,
+  identifier: string,
+  recordedAt: number,
+): Promise<Placement | TrayReason> {
   const rows = await tx
     .select({ encounter, recordNumber: patient.recordNumber })
     .from(encounter)
@@ -67,19 +86,41 @@ async function encounterByIdentifier(tx: Tx, identifier: string, recordedAt: num
     .limit(50);
   if (rows.length === 0) return 'identifier-unknown';
   const current = rows.filter(
-    ({ encounter: e }) => e.status !== 'cancelled' && e.startedAt <= recordedAt && (e.endedAt === null || e.endedAt >= recordedAt),
+    ({ encounter: e }) =>
+      e.status !== 'cancelled' &&
+      e.startedAt <= recordedAt &&
+      (e.endedAt === null || e.endedAt >= recordedAt),
   );
   if (current.length === 0) return 'encounter-over';
   if (current.length > 1) return 'identifier-ambiguous';
   const found = current[0]?.encounter;
   if (!found) return 'identifier-unknown';
-  return { encounterId: found.id, encounterNumber: found.number, patientId: found.patientId, by: 'identifier', sessionId: null, sessionNumber: null };
+  return {
+    encounterId: found.id,
+    encounterNumber: found.number,
+    patientId: found.patientId,
+    by: 'identifier',
+    sessionId: null,
+    sessionNumber: null,
+  };
 }
 
 /** Write the filing of a freshly measured clip; the caller writes stage and custody entry in the same transaction. */
-export async function insertFiling(tx: Tx, recordingId: string, place: Placement, nowMs: number): Promise<void> {
+export async function insertFiling(
+  tx: Tx,
+  recordingId: string,
+  place: Placement,
+  nowMs: number,
+): Promise<void> {
   await tx.insert(filing).values({
-    id: newId(), recordingId, encounterId: place.encounterId, patientId: place.patientId, by: place.by,
-    sessionId: place.sessionId, personId: null, reason: null, filedAt: nowMs,
+    id: newId(),
+    recordingId,
+    encounterId: place.encounterId,
+    patientId: place.patientId,
+    by: place.by,
+    sessionId: place.sessionId,
+    personId: null,
+    reason: null,
+    filedAt: nowMs,
   });
 }

@@ -29,6 +29,12 @@ const FOLLOWS: Record<State, readonly State[]> = {
 
 export const mayFollow = (from: State): readonly State[] => FOLLOWS[from];
 
+interface Changed {
+  assetTag: string;
+  state: State;
+  version: number;
+}
+
 /**
  * Take a device out of service, put it back, or retire it. Out of service its clips stay valid but are not taken,
  * and its listening session ends; retired, its credentials end too.
@@ -40,8 +46,8 @@ export async function changeState(
   by: Authorized<'fleet.write'>,
   deviceId: string,
   change: StateChange,
-  inSameTransaction?: (tx: Tx) => Promise<void>,
-): Promise<{ assetTag: string; state: State; version: number }> {
+  remember?: (tx: Tx, answer: Changed) => Promise<void>,
+): Promise<Changed> {
   const now = services.clock.now();
   const actor = personActor(by, 'fleet.write');
   return await services.write(async (tx) => {
@@ -83,8 +89,9 @@ export async function changeState(
     if (change.to !== 'in-service') entries.push(...(await endSessions(tx, deviceId, actor, now)));
     if (change.to === 'retired') entries.push(...(await endCredentials(tx, deviceId, actor, now)));
     await appendEntries(tx, now, entries);
-    await inSameTransaction?.(tx);
-    return { assetTag: found.assetTag, state: change.to, version };
+    const answer = { assetTag: found.assetTag, state: change.to, version };
+    await remember?.(tx, answer);
+    return answer;
   });
 }
 

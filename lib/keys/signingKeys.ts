@@ -1,5 +1,12 @@
 import { and, eq, gt, isNull, or } from 'drizzle-orm';
-import { type CryptoKey, calculateJwkThumbprint, exportJWK, generateKeyPair, importJWK, type JWK } from 'jose';
+import {
+  type CryptoKey,
+  calculateJwkThumbprint,
+  exportJWK,
+  generateKeyPair,
+  importJWK,
+  type JWK,
+} from 'jose';
 import { signingKey } from '@/db/schema';
 import { appendEntries } from '@/lib/custody/append';
 import { SERVICE_ACTOR } from '@/lib/custody/entry';
@@ -30,7 +37,10 @@ async function makeRow(services: Needs, use: SigningUse): Promise<SigningKeyRow>
     algorithm: 'EdDSA',
     use,
     publicJwk: JSON.stringify({ ...publicJwk, kid, alg: 'EdDSA', use: 'sig' }),
-    sealedPrivateJwk: services.secrets.seal(JSON.stringify(await exportJWK(pair.privateKey)), boxContext(kid)),
+    sealedPrivateJwk: services.secrets.seal(
+      JSON.stringify(await exportJWK(pair.privateKey)),
+      boxContext(kid),
+    ),
     createdAt: services.clock.now(),
     supersededAt: null,
     retiredAt: null,
@@ -63,7 +73,10 @@ export async function currentSigningKey(services: Needs, use: SigningUse): Promi
 }
 
 /** The private half, opened. */
-export async function privateKeyOf(services: Pick<Services, 'secrets'>, row: SigningKeyRow): Promise<CryptoKey> {
+export async function privateKeyOf(
+  services: Pick<Services, 'secrets'>,
+  row: SigningKeyRow,
+): Promise<CryptoKey> {
   const jwk = JSON.parse(services.secrets.open(row.sealedPrivateJwk, boxContext(row.kid))) as JWK;
   return (await importJWK(jwk, row.algorithm)) as CryptoKey;
 }
@@ -95,5 +108,8 @@ export async function verifyingKey(
     .limit(1);
   if (!row || row.compromisedAt !== null) return null;
   if (row.retiredAt !== null && row.retiredAt <= services.clock.now()) return null;
-  return { key: (await importJWK(JSON.parse(row.publicJwk) as JWK, row.algorithm)) as CryptoKey, algorithm: row.algorithm };
+  return {
+    key: (await importJWK(JSON.parse(row.publicJwk) as JWK, row.algorithm)) as CryptoKey,
+    algorithm: row.algorithm,
+  };
 }

@@ -14,7 +14,11 @@ export const TOKEN_AUDIENCE_PATH = '/api/device/v1';
  * The token of a credential. It is made from the row alone and Ed25519 is deterministic (RFC 8032), so a repeated
  * request gets the same bytes although no token is stored.
  */
-export async function tokenOf(services: Pick<Services, 'secrets' | 'env'>, row: CredentialRow, key: SigningKeyRow): Promise<string> {
+export async function tokenOf(
+  services: Pick<Services, 'secrets' | 'env'>,
+  row: CredentialRow,
+  key: SigningKeyRow,
+): Promise<string> {
   const origin = services.env.BELLKEEP_ORIGIN;
   return await new SignJWT({
     client_id: row.deviceId,
@@ -44,7 +48,10 @@ const refused = (cause: unknown) => new Refusal('token-invalid', undefined, {}, 
  *
  * @throws Refusal `token-invalid`
  */
-export async function verifyToken(services: Pick<Services, 'read' | 'clock' | 'env'>, token: string): Promise<TokenClaims> {
+export async function verifyToken(
+  services: Pick<Services, 'read' | 'clock' | 'env'>,
+  token: string,
+): Promise<TokenClaims> {
   const origin = services.env.BELLKEEP_ORIGIN;
   try {
     if (token.length > 4096) throw new errors.JWTInvalid('too long');
@@ -61,14 +68,16 @@ export async function verifyToken(services: Pick<Services, 'read' | 'clock' | 'e
       crit: {},
     });
     const thumbprint = (payload.cnf as { jkt?: unknown } | undefined)?.jkt;
-    if (payload.cnf !== undefined && typeof thumbprint !== 'string') throw new errors.JWTInvalid('cnf without jkt');
+    if (payload.cnf !== undefined && typeof thumbprint !== 'string')
+      throw new errors.JWTInvalid('cnf without jkt');
     return {
       deviceId: String(payload.sub),
       credentialId: String(payload.jti),
       thumbprint: typeof thumbprint === 'string' ? thumbprint : null,
     };
   } catch (cause) {
-    if (cause instanceof errors.JOSEError || cause instanceof TypeError || cause instanceof SyntaxError) throw refused(cause);
+    if (cause instanceof errors.JOSEError || cause instanceof TypeError || cause instanceof SyntaxError)
+      throw refused(cause);
     throw cause;
   }
 }

@@ -17,17 +17,32 @@ const SENDING = new Set(['in-service']);
  *
  * @throws Refusal `device-not-in-service`, `media-type-refused`, `recording-too-large`
  */
-export async function admitSlot(services: Pick<Services, 'write' | 'clock'>, caller: AuthenticatedDevice, request: SlotRequest): Promise<void> {
+export async function admitSlot(
+  services: Pick<Services, 'write' | 'clock'>,
+  caller: AuthenticatedDevice,
+  request: SlotRequest,
+): Promise<void> {
   const { device, model } = caller;
   const highestRate = Math.max(8000, ...model.sampleRatesHz);
   const largest = model.longestClipSeconds * highestRate * BYTES_PER_FRAME + HEADER_ALLOWANCE_BYTES;
   let refusal: Refusal | null = null;
   if (!SENDING.has(device.state)) {
-    refusal = new Refusal('device-not-in-service', `${device.assetTag} is ${device.state.replace('-', ' ')}. Its clips stay valid; take it to biomedical engineering.`);
+    refusal = new Refusal(
+      'device-not-in-service',
+      `${device.assetTag} is ${device.state.replace('-', ' ')}. Its clips stay valid; take it to biomedical engineering.`,
+    );
   } else if (!model.mediaTypes.includes(request.mediaType)) {
-    refusal = new Refusal('media-type-refused', `${model.name} sends ${model.mediaTypes.join(', ')}, not ${request.mediaType}. Nothing was stored.`, { allowed: model.mediaTypes });
+    refusal = new Refusal(
+      'media-type-refused',
+      `${model.name} sends ${model.mediaTypes.join(', ')}, not ${request.mediaType}. Nothing was stored.`,
+      { allowed: model.mediaTypes },
+    );
   } else if (request.bytes > largest) {
-    refusal = new Refusal('recording-too-large', `${request.bytes} bytes are more than a clip of ${model.longestClipSeconds} s can have. Nothing was stored.`, { largestBytes: largest });
+    refusal = new Refusal(
+      'recording-too-large',
+      `${request.bytes} bytes are more than a clip of ${model.longestClipSeconds} s can have. Nothing was stored.`,
+      { largestBytes: largest },
+    );
   }
   if (!refusal) return;
   const why = refusal.code;
@@ -37,7 +52,12 @@ export async function admitSlot(services: Pick<Services, 'write' | 'clock'>, cal
         kind: 'slot-refused',
         actor: deviceActor(device),
         subjects: [{ kind: 'device', id: device.id }],
-        detail: { why, deviceRecordingNumber: request.recordingNumber, mediaType: request.mediaType, bytes: request.bytes },
+        detail: {
+          why,
+          deviceRecordingNumber: request.recordingNumber,
+          mediaType: request.mediaType,
+          bytes: request.bytes,
+        },
       },
     ]),
   );

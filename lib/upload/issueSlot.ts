@@ -35,7 +35,11 @@ function requestHash(request: SlotRequest): string {
  *
  * @throws Refusal `device-not-in-service`, `media-type-refused`, `recording-too-large`, `recording-conflict`
  */
-export async function issueSlot(services: Needs, caller: AuthenticatedDevice, request: SlotRequest): Promise<SlotAnswer> {
+export async function issueSlot(
+  services: Needs,
+  caller: AuthenticatedDevice,
+  request: SlotRequest,
+): Promise<SlotAnswer> {
   const hash = requestHash(request);
   const known = await findByDeviceNumber(services, caller.device.id, request.recordingNumber);
   if (known) return await repeatSlot(services, caller, known, request, hash);
@@ -77,11 +81,19 @@ export async function issueSlot(services: Needs, caller: AuthenticatedDevice, re
         {
           kind: 'slot-issued',
           actor: deviceActor(caller.device),
-          subjects: [{ kind: 'recording', id }, { kind: 'device', id: caller.device.id }],
+          subjects: [
+            { kind: 'recording', id },
+            { kind: 'device', id: caller.device.id },
+          ],
           detail: {
-            number: row.number, deviceRecordingNumber: row.deviceRecordingNumber, sha256: row.declaredSha256,
-            bytes: row.declaredBytes, mediaType: row.mediaType, seconds: SLOT_LIFETIME_SECONDS,
-            credential: caller.credential.label, clockOffsetMs,
+            number: row.number,
+            deviceRecordingNumber: row.deviceRecordingNumber,
+            sha256: row.declaredSha256,
+            bytes: row.declaredBytes,
+            mediaType: row.mediaType,
+            seconds: SLOT_LIFETIME_SECONDS,
+            credential: caller.credential.label,
+            clockOffsetMs,
             ...(row.site ? { site: row.site } : {}),
           },
         },
@@ -98,7 +110,11 @@ export async function issueSlot(services: Needs, caller: AuthenticatedDevice, re
   return await answerFor(services, caller, row, false);
 }
 
-async function findByDeviceNumber(services: Needs, deviceId: string, number: string): Promise<RecordingRow | null> {
+async function findByDeviceNumber(
+  services: Needs,
+  deviceId: string,
+  number: string,
+): Promise<RecordingRow | null> {
   const [row] = await services.read
     .select()
     .from(recording)
@@ -107,7 +123,13 @@ async function findByDeviceNumber(services: Needs, deviceId: string, number: str
   return row ?? null;
 }
 
-async function repeatSlot(services: Needs, caller: AuthenticatedDevice, row: RecordingRow, request: SlotRequest, hash: string): Promise<SlotAnswer> {
+async function repeatSlot(
+  services: Needs,
+  caller: AuthenticatedDevice,
+  row: RecordingRow,
+  request: SlotRequest,
+  hash: string,
+): Promise<SlotAnswer> {
   const now = services.clock.now();
   if (row.requestHash !== hash) {
     await services.write((tx) =>
@@ -115,8 +137,15 @@ async function repeatSlot(services: Needs, caller: AuthenticatedDevice, row: Rec
         {
           kind: 'slot-refused',
           actor: deviceActor(caller.device),
-          subjects: [{ kind: 'recording', id: row.id }, { kind: 'device', id: caller.device.id }],
-          detail: { why: 'recording-conflict', deviceRecordingNumber: request.recordingNumber, sha256: request.sha256 },
+          subjects: [
+            { kind: 'recording', id: row.id },
+            { kind: 'device', id: caller.device.id },
+          ],
+          detail: {
+            why: 'recording-conflict',
+            deviceRecordingNumber: request.recordingNumber,
+            sha256: request.sha256,
+          },
         },
       ]),
     );
@@ -134,9 +163,17 @@ async function repeatSlot(services: Needs, caller: AuthenticatedDevice, row: Rec
   return await answerFor(services, caller, row, true);
 }
 
-type SlotFacts = Pick<RecordingRow, 'number' | 'stage' | 'slotKey' | 'declaredBytes' | 'declaredSha256' | 'mediaType'>;
+type SlotFacts = Pick<
+  RecordingRow,
+  'number' | 'stage' | 'slotKey' | 'declaredBytes' | 'declaredSha256' | 'mediaType'
+>;
 
-async function answerFor(services: Needs, caller: AuthenticatedDevice, row: SlotFacts, repeated: boolean): Promise<SlotAnswer> {
+async function answerFor(
+  services: Needs,
+  caller: AuthenticatedDevice,
+  row: SlotFacts,
+  repeated: boolean,
+): Promise<SlotAnswer> {
   const now = services.clock.now();
   const upload =
     row.stage === 'awaited'
@@ -151,7 +188,12 @@ async function answerFor(services: Needs, caller: AuthenticatedDevice, row: Slot
   return {
     recording: row.number,
     repeated,
-    upload: upload && { method: 'PUT', url: upload.url, headers: upload.headers, expiresAt: now + SLOT_LIFETIME_SECONDS * 1000 },
+    upload: upload && {
+      method: 'PUT',
+      url: upload.url,
+      headers: upload.headers,
+      expiresAt: now + SLOT_LIFETIME_SECONDS * 1000,
+    },
     complete: `${services.env.BELLKEEP_ORIGIN}/api/device/v1/recordings/${row.number}/complete`,
     renew: shouldRenew(caller.credential, now),
   };

@@ -5,7 +5,8 @@ import { PROBLEMS, type ProblemCode, type ProblemKind } from '@/lib/contract/pro
 
 type Props = { params: Promise<{ type: string }> };
 
-const find = (type: string): ProblemKind | null => (Object.hasOwn(PROBLEMS, type) ? PROBLEMS[type as ProblemCode] : null);
+const find = (type: string): ProblemKind | null =>
+  Object.hasOwn(PROBLEMS, type) ? PROBLEMS[type as ProblemCode] : null;
 
 export async function generateMetadata({ params }: Props): Promise<Metadata> {
   const { type } = await params;

@@ -9,7 +9,9 @@ export const POST = personRoute(
   'POST /api/credentials/[id]/revoke',
   { body: Body },
   async ({ person, body, params, services, idempotency }) =>
-    idempotency.answer(200, (remember) =>
-      revokeCredential(services, person, { id: params.id ?? '', ...body }, remember),
+    Response.json(
+      await idempotency.once((remember) =>
+        revokeCredential(services, person, { id: params.id ?? '', ...body }, remember),
+      ),
     ),
 );

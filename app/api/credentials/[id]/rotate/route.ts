@@ -9,7 +9,9 @@ export const POST = personRoute(
   'POST /api/credentials/[id]/rotate',
   { body: Body },
   async ({ person, body, params, services, idempotency }) =>
-    idempotency.answer(200, (remember) =>
-      askRenewal(services, person, { id: params.id ?? '', version: body.version }, remember),
+    Response.json(
+      await idempotency.once((remember) =>
+        askRenewal(services, person, { id: params.id ?? '', version: body.version }, remember),
+      ),
     ),
 );

@@ -1,0 +1,106 @@
+import type { Permission } from './permissions';
+
+interface Access {
+  /** A signed-in person with this permission. */
+  permission?: Permission;
+  /** Anybody. */
+  public?: true;
+  /** A device with its credential. */
+  device?: true;
+  /** Reachable without the second factor that one's role demands, because it is where one sets it up. */
+  beforeSecondFactor?: true;
+}
+
+/** Every page and route of the house and who may reach it. What is not in here does not compile, and a test compares. */
+export const ROUTES = {
+  'PAGE /': { public: true },
+  'PAGE /sign-in': { public: true },
+  'PAGE /forgot': { public: true },
+  'PAGE /reset/[token]': { public: true },
+  'PAGE /invite/[token]': { public: true },
+  'PAGE /problems/[type]': { public: true },
+  'PAGE /account': { permission: 'self', beforeSecondFactor: true },
+  'PAGE /bench': { permission: 'fleet.read' },
+  'PAGE /bench/add': { permission: 'fleet.write' },
+  'PAGE /bench/models': { permission: 'model.read' },
+  'PAGE /devices/[id]': { permission: 'device.read' },
+  'PAGE /devices/[id]/sheet': { permission: 'fleet.write' },
+  'PAGE /bedside': { permission: 'bedside.read' },
+  'PAGE /bedside/recordings': { permission: 'bedside.read' },
+  'PAGE /bedside/tray': { permission: 'bedside.read' },
+  'PAGE /bedside/sessions/new': { permission: 'session.write' },
+  'PAGE /bedside/sessions/[id]': { permission: 'bedside.read' },
+  'PAGE /encounters/[id]': { permission: 'bedside.read' },
+  'PAGE /recordings/[id]': { permission: 'recording.read' },
+  'PAGE /keyroom': { permission: 'credential.read' },
+  'PAGE /keyroom/people': { permission: 'people.read' },
+  'PAGE /keyroom/people/[id]': { permission: 'people.read' },
+  'PAGE /ledger': { permission: 'thread.read' },
+  'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
+  'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },
+
+  'GET /.well-known/jwks.json': { public: true },
+  'GET /api/health': { public: true },
+  'GET /api/auth/[...all]': { public: true },
+  'POST /api/auth/[...all]': { public: true },
+  'POST /api/invitations/[token]/accept': { public: true },
+
+  'POST /api/device/v1/enrol': { public: true },
+  'POST /api/device/v1/token': { device: true },
+  'POST /api/device/v1/heartbeat': { device: true },
+  'POST /api/device/v1/recordings': { device: true },
+  'POST /api/device/v1/recordings/[id]/complete': { device: true },
+
+  'GET /api/events': { permission: 'self' },
+  'GET /api/search': { permission: 'self' },
+
+  'GET /api/devices': { permission: 'fleet.read' },
+  'POST /api/devices': { permission: 'fleet.write' },
+  'GET /api/devices/csv': { permission: 'fleet.read' },
+  'GET /api/devices/pick': { permission: 'session.write' },
+  'POST /api/devices/[id]/state': { permission: 'fleet.write' },
+  'POST /api/devices/[id]/code': { permission: 'fleet.write' },
+  'POST /api/models': { permission: 'model.write' },
+
+  'GET /api/encounters': { permission: 'bedside.read' },
+  'POST /api/patients/reason': { permission: 'bedside.read' },
+  'POST /api/sessions': { permission: 'session.write' },
+  'GET /api/sessions/[id]': { permission: 'bedside.read' },
+  'POST /api/sessions/[id]/close': { permission: 'session.write' },
+  'GET /api/tray': { permission: 'bedside.read' },
+  'GET /api/recordings': { permission: 'bedside.read' },
+  'GET /api/recordings/[id]': { permission: 'recording.read' },
+  'POST /api/recordings/[id]/file': { permission: 'filing.write' },
+  'POST /api/recordings/[id]/move': { permission: 'filing.write' },
+  'POST /api/recordings/[id]/keep': { permission: 'recording.keep' },
+  'GET /api/recordings/[id]/original': { permission: 'recording.read' },
+  'GET /api/recordings/[id]/sound': { permission: 'recording.read' },
+  'GET /api/recordings/[id]/peaks': { permission: 'recording.read' },
+  'GET /api/recordings/[id]/spectrogram': { permission: 'recording.read' },
+
+  'GET /api/credentials': { permission: 'credential.read' },
+  'POST /api/credentials/[id]/rotate': { permission: 'credential.write' },
+  'POST /api/credentials/[id]/revoke': { permission: 'credential.write' },
+
+  'GET /api/people': { permission: 'people.read' },
+  'POST /api/people/[id]/roles': { permission: 'people.write' },
+  'POST /api/people/[id]/wards': { permission: 'people.write' },
+  'POST /api/people/[id]/end-sessions': { permission: 'people.write' },
+  'POST /api/people/[id]/leave': { permission: 'people.write' },
+  'POST /api/invitations': { permission: 'people.write' },
+  'POST /api/invitations/[token]/withdraw': { permission: 'people.write' },
+} as const satisfies Record<string, Access>;
+
+export type RouteKey = keyof typeof ROUTES;
+
+/** The permission that a route or page asks for; `never` for public and device ones. */
+export type PermissionOf<K extends RouteKey> = (typeof ROUTES)[K] extends {
+  permission: infer P extends Permission;
+}
+  ? P
+  : never;
+
+/** Keys of routes that people reach. */
+export type PersonRouteKey = { [K in RouteKey]: PermissionOf<K> extends never ? never : K }[RouteKey];
+
+export const accessOf = (key: RouteKey): Access => ROUTES[key];
