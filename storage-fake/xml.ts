@@ -1,6 +1,9 @@
 import { S3Error } from './errors';
 
-/** A document to be written: text, a list of the same element, or further elements. Undefined is left out. */
+/**
+ * A document to be written: text, a list of the same element, or further elements. Undefined is left out; the member
+ * `@` holds attributes as they are to stand in the tag.
+ */
 export type XmlValue = string | number | boolean | undefined | XmlValue[] | { [name: string]: XmlValue };
 
 const NAMESPACE = 'http://s3.amazonaws.com/doc/2006-03-01/';
@@ -15,13 +18,10 @@ const escapeText = (text: string): string =>
 function element(name: string, value: XmlValue): string {
   if (value === undefined) return '';
   if (Array.isArray(value)) return value.map((one) => element(name, one)).join('');
-  const content =
-    typeof value === 'object'
-      ? Object.entries(value)
-          .map(([inner, one]) => element(inner, one))
-          .join('')
-      : escapeText(String(value));
-  return `<${name}>${content}</${name}>`;
+  if (typeof value !== 'object') return `<${name}>${escapeText(String(value))}</${name}>`;
+  const { '@': attributes, ...elements } = value;
+  const content = Object.entries(elements).map(([inner, one]) => element(inner, one));
+  return `<${name}${attributes === undefined ? '' : ` ${attributes}`}>${content.join('')}</${name}>`;
 }
 
 /** @param namespaced error documents carry no namespace, all others do */

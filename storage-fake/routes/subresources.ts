@@ -4,7 +4,7 @@ import { httpDate } from '../describe';
 import { noSuchKey, type S3Code, S3Error } from '../errors';
 import type { BucketExchange, KeyExchange } from '../exchange';
 import type { ObjectRecord } from '../objects';
-import { childrenOf, parseXml, textOfChild, type XmlValue } from '../xml';
+import { childrenOf, parseXml, textOfChild, type XmlElement, type XmlValue } from '../xml';
 import { receiveDocument, receiveOptionalDocument } from './receiveBlob';
 
 // The small things that clients ask about a bucket or an object on their way to something else.
@@ -52,20 +52,37 @@ export async function getBucketConfiguration(exchange: BucketExchange): Promise<
   return false;
 }
 
+function assertThere({ bucket, key }: BucketExchange & { key?: string }): void {
+  if (key !== undefined && bucket.index.get(key) === undefined) throw noSuchKey(key);
+}
+
+const USER_TYPE = 'xmlns:xsi="http://www.w3.org/2001/XMLSchema-instance" xsi:type="CanonicalUser"';
+
 /** The owner may do everything and nobody else anything. */
-export async function getAcl(exchange: BucketExchange): Promise<void> {
+export async function getAcl(exchange: BucketExchange & { key?: string }): Promise<void> {
+  assertThere(exchange);
   await answerXml(exchange, 'AccessControlPolicy', {
     Owner: OWNER,
-    AccessControlList: { Grant: { Grantee: OWNER, Permission: 'FULL_CONTROL' } },
+    AccessControlList: { Grant: { Grantee: { '@': USER_TYPE, ...OWNER }, Permission: 'FULL_CONTROL' } },
   });
 }
 
-export async function putAcl(exchange: BucketExchange): Promise<void> {
-  await receiveOptionalDocument(exchange);
-  if ((exchange.request.header('x-amz-acl') ?? 'other') !== 'private') {
-    throw new S3Error('AccessControlListNotSupported', 'The bucket does not allow ACLs');
-  }
+/** Takes a list that changes nothing, as some clients send after a copy; any other is refused. */
+export async function putAcl(exchange: BucketExchange & { key?: string }): Promise<void> {
+  assertThere(exchange);
+  const text = await receiveOptionalDocument(exchange);
+  const canned = exchange.request.header('x-amz-acl');
+  const onlyOwner =
+    canned === undefined ? text !== '' && grantsOnlyOwner(parseXml(text)) : canned === 'private';
+  if (!onlyOwner) throw new S3Error('AccessControlListNotSupported', 'The bucket does not allow ACLs');
   await answerEmpty(exchange, 200);
+}
+
+function grantsOnlyOwner(policy: XmlElement): boolean {
+  const grants = childrenOf(policy, 'AccessControlList').flatMap((list) => childrenOf(list, 'Grant'));
+  return grants.every((grant) =>
+    childrenOf(grant, 'Grantee').every((who) => textOfChild(who, 'ID') === OWNER.ID),
+  );
 }
 
 export async function getTags(exchange: KeyExchange): Promise<void> {
