@@ -40,7 +40,12 @@ export async function getJson<T>(url: string): Promise<T> {
  *
  * @throws ProblemError
  */
-export async function sendJson<T>(url: string, body: unknown, key: string, method: 'POST' | 'PUT' | 'PATCH' | 'DELETE' = 'POST'): Promise<T> {
+export async function sendJson<T>(
+  url: string,
+  body: unknown,
+  key: string,
+  method: 'POST' | 'PUT' | 'PATCH' | 'DELETE' = 'POST',
+): Promise<T> {
   const response = await fetch(url, {
     method,
     headers: { 'content-type': 'application/json', accept: 'application/json', 'idempotency-key': key },
@@ -53,7 +58,12 @@ export async function sendJson<T>(url: string, body: unknown, key: string, metho
 /**
  * What a route answers, kept fresh: the server's first drawing as `first`, asked again when a live event matches.
  */
-export function useData<T>(url: string, first: T | undefined, live?: (event: LiveEvent) => boolean, options?: SWRConfiguration<T>) {
+export function useData<T>(
+  url: string,
+  first: T | undefined,
+  live?: (event: LiveEvent) => boolean,
+  options?: SWRConfiguration<T>,
+) {
   const answer = useSWR<T, Error>(url, getJson<T>, {
     fallbackData: first,
     keepPreviousData: true,

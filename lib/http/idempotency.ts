@@ -54,15 +54,13 @@ export function idempotencyOf(
       if (before) return before.answer;
       try {
         return await work(async (tx, answer) => {
-          await tx
-            .insert(idempotencyKey)
-            .values({
-              key,
-              requestHash,
-              status: 200,
-              body: JSON.stringify(answer ?? null),
-              createdAt: services.clock.now(),
-            });
+          await tx.insert(idempotencyKey).values({
+            key,
+            requestHash,
+            status: 200,
+            body: JSON.stringify(answer ?? null),
+            createdAt: services.clock.now(),
+          });
         });
       } catch (error) {
         // Two equal requests at once: the other one did it, and ours was rolled back.

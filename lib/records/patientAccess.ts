@@ -75,16 +75,14 @@ export async function giveReason(
           .where(eq(encounter.number, identifier))
           .limit(1);
     if (!byEncounter) throw new Refusal('not-found');
-    await tx
-      .insert(accessReason)
-      .values({
-        id: newId(),
-        personId: by.id,
-        patientId: byEncounter.id,
-        reason: wanted.reason,
-        givenAt: now,
-        expiresAt: now + REASON_LASTS_MS,
-      });
+    await tx.insert(accessReason).values({
+      id: newId(),
+      personId: by.id,
+      patientId: byEncounter.id,
+      reason: wanted.reason,
+      givenAt: now,
+      expiresAt: now + REASON_LASTS_MS,
+    });
     await appendEntries(tx, now, [
       {
         kind: 'access-outside-wards',

@@ -1,0 +1,16 @@
+import { connection } from 'next/server';
+import type { ReactNode } from 'react';
+import { getServices } from '@/lib/http/services';
+
+/** Pages outside the rooms: sign-in, invitation, reset, problem types. */
+export default async function PublicLayout({ children }: { children: ReactNode }) {
+  await connection();
+  const { env } = await getServices();
+  return (
+    <main id="main" className="mx-auto grid min-h-dvh w-full max-w-[560px] content-center gap-2 px-4 py-12">
+      <p className="mb-6 font-plate text-28 leading-none font-semibold">Bellkeep</p>
+      <div>{children}</div>
+      <p className="mt-10 border-t border-line pt-3 text-13 text-ink-soft">{env.BELLKEEP_HOSPITAL}</p>
+    </main>
+  );
+}
