@@ -17,6 +17,7 @@ export const user = sqliteTable('user', {
   jobTitle: text('job_title'),
   /** Set when a person left: may not sign in, and stays named in everything they did. */
   leftAt: at('left_at'),
+  lastSignedInAt: at('last_signed_in_at'),
 });
 
 export const session = sqliteTable(
@@ -93,6 +94,41 @@ export const rateLimit = sqliteTable('rate_limit', {
   count: integer('count').notNull(),
   lastRequest: integer('last_request').notNull(),
 });
+
+/** Wrong passwords and what one has to wait for them. The key is an HMAC: nobody's mistyped address is kept. */
+export const signInTry = sqliteTable(
+  'sign_in_try',
+  {
+    key: text('key').primaryKey(),
+    wrong: integer('wrong').notNull(),
+    lastAt: at('last_at').notNull(),
+    waitUntil: at('wait_until').notNull(),
+  },
+  (t) => [index('sign_in_try_by_time').on(t.lastAt)],
+);
+
+/** What works once: second-factor codes that were entered (RFC 6238, 5.2). The key is an HMAC. */
+export const usedCode = sqliteTable(
+  'used_code',
+  { key: text('key').primaryKey(), expiresAt: at('expires_at').notNull() },
+  (t) => [index('used_code_by_end').on(t.expiresAt)],
+);
+
+/** A way to a new password that was sent by mail. */
+export const passwordReset = sqliteTable(
+  'password_reset',
+  {
+    /** SHA-256 of the token in the mail, hex. */
+    tokenHash: text('token_hash').primaryKey(),
+    personId: text('person_id')
+      .notNull()
+      .references(() => user.id),
+    createdAt: at('created_at').notNull(),
+    expiresAt: at('expires_at').notNull(),
+    usedAt: at('used_at'),
+  },
+  (t) => [index('password_reset_by_person').on(t.personId)],
+);
 
 /** Roles are ours: a person may hold several. */
 export const personRole = sqliteTable(
