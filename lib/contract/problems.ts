@@ -52,6 +52,12 @@ export const PROBLEMS = {
     keeps: 'Nothing was changed.',
     next: 'Sign in and try again.',
   },
+  'sign-in-refused': {
+    status: 401,
+    title: 'Not signed in',
+    keeps: 'Nothing was changed.',
+    next: 'Check e-mail and password. If you forgot the password, have a new one set.',
+  },
   'second-factor-required': {
     status: 403,
     title: 'A second factor is required',

@@ -50,6 +50,7 @@ export const ENTRY_KINDS = [
   'sign-in-refused',
   'sessions-ended',
   'second-factor-set',
+  'second-factor-removed',
   'password-reset',
   'policy-changed',
 ] as const;

@@ -1,6 +1,6 @@
 import { insertFiling, placementOf } from '@/lib/filing/placeRecording';
 import { type AnalysisPool, createAnalysisPool } from '@/lib/ingest/analysisPool';
-import type { IngestServices, PlaceRecording } from '@/lib/ingest/completeRecording';
+import type { IngestServices, PlaceRecording } from '@/lib/ingest/types';
 import type { Services } from '@/lib/platform/services';
 
 /** Where ingestion and filing meet: ingestion asks in its own transaction where the clip belongs. */

@@ -1,31 +1,25 @@
 import { betterAuth } from 'better-auth';
 import { drizzleAdapter } from 'better-auth/adapters/drizzle';
-import { APIError, createAuthMiddleware } from 'better-auth/api';
 import { twoFactor } from 'better-auth/plugins';
 import { eq } from 'drizzle-orm';
 import { drizzle } from 'drizzle-orm/libsql';
 import { queuedClient } from '@/db/queuedClient';
 import * as schema from '@/db/schema';
-import { appendEntries } from '@/lib/custody/append';
-import { SERVICE_ACTOR } from '@/lib/custody/entry';
-import { enqueueMail } from '@/lib/mail/enqueue';
 import type { Services } from '@/lib/platform/services';
-import { hashPassword, PASSWORD_LENGTH, passwordProblem, verifyPassword } from './password';
-import { countWrongTry, forgetTries, secondsToWait } from './signInLimits';
+import { hashPassword, PASSWORD_LENGTH, verifyPassword } from './password';
 
-type Needs = Pick<Services, 'database' | 'read' | 'write' | 'clock' | 'env' | 'log'>;
+type Needs = Pick<Services, 'database' | 'read' | 'env' | 'log'>;
 
 /** The field in which our own routes tell Better Auth where a request came from. */
 export const PEER_FIELD = 'x-bellkeep-peer';
 
-const SESSION_SECONDS = 12 * 3600;
-const RESET_SECONDS = 3600;
-
-const addressOf = (headers: Headers | undefined): string => headers?.get(PEER_FIELD) ?? 'unknown';
+/** A session lasts one shift, whatever is done in it, and ends when nothing was done in it for a while. */
+export const SESSION_SECONDS = 12 * 3600;
+export const IDLE_MS = 2 * 3_600_000;
 
 /**
- * Sign-in by Better Auth: passwords, sessions in the database, second factor, password reset by mail. People come by
- * invitation only, so nobody can sign up.
+ * Sign-in by Better Auth: it checks passwords and second factors and keeps sessions in the database. People come by
+ * invitation only; new passwords, roles and everything that is an entry of the custody log are our own verbs.
  */
 export function createAuth(services: Needs) {
   const { env } = services;
@@ -43,41 +37,17 @@ export function createAuth(services: Needs) {
       disableSignUp: true,
       minPasswordLength: PASSWORD_LENGTH.least,
       maxPasswordLength: PASSWORD_LENGTH.most,
+      // Called for unknown accounts too, so that both take the same time.
       password: { hash: hashPassword, verify: ({ hash, password }) => verifyPassword(hash, password) },
-      resetPasswordTokenExpiresIn: RESET_SECONDS,
-      revokeSessionsOnPasswordReset: true,
-      sendResetPassword: async ({ user, token }) => {
-        await services.write((tx) =>
-          enqueueMail(tx, services.clock.now(), {
-            to: user.email,
-            subject: 'Set a new password for Bellkeep',
-            text: `Somebody, probably you, asked to set a new password for ${user.email}.\n\nOpen this within an hour:\n${env.BELLKEEP_ORIGIN}/reset/${token}\n\nIf it was not you, leave it: nothing changes without this address.`,
-          }),
-        );
-      },
-      onPasswordReset: async ({ user }) => {
-        await services.write((tx) =>
-          appendEntries(tx, services.clock.now(), [
-            {
-              kind: 'password-reset',
-              actor: { kind: 'person', id: user.id, label: user.name },
-              subjects: [{ kind: 'person', id: user.id }],
-            },
-          ]),
-        );
-      },
     },
-    session: { expiresIn: SESSION_SECONDS, updateAge: 15 * 60, cookieCache: { enabled: false } },
+    session: { expiresIn: SESSION_SECONDS, disableSessionRefresh: true, cookieCache: { enabled: false } },
     rateLimit: {
       enabled: true,
       storage: 'database',
       window: 60,
-      max: 120,
-      customRules: {
-        '/sign-in/email': { window: 60, max: 60 },
-        '/request-password-reset': { window: 300, max: 5 },
-        '/two-factor/*': { window: 60, max: 20 },
-      },
+      max: 300,
+      // By address: a whole hospital may stand behind one. Accounts have limits of their own (signInLimits.ts).
+      customRules: { '/sign-in/email': { window: 60, max: 120 }, '/two-factor/*': { window: 60, max: 120 } },
     },
     advanced: {
       cookiePrefix: 'bellkeep',
@@ -105,72 +75,10 @@ export function createAuth(services: Needs) {
         },
       },
     },
-    hooks: {
-      before: createAuthMiddleware(async (context) => {
-        const body = (context.body ?? {}) as { email?: unknown; newPassword?: unknown };
-        if (context.path === '/sign-in/email' && typeof body.email === 'string') {
-          const wait = await secondsToWait(body.email.toLowerCase(), addressOf(context.headers));
-          if (wait > 0)
-            throw new APIError(
-              'TOO_MANY_REQUESTS',
-              { message: `Too many wrong tries. Try again in ${Math.ceil(wait / 60)} min.` },
-              { 'retry-after': String(wait) },
-            );
-        }
-        if (typeof body.newPassword === 'string') {
-          const problem = passwordProblem(body.newPassword, [env.BELLKEEP_HOSPITAL]);
-          if (problem) throw new APIError('BAD_REQUEST', { message: problem });
-        }
-      }),
-      after: createAuthMiddleware(async (context) => {
-        const address = addressOf(context.headers);
-        const email = (context.body as { email?: unknown } | undefined)?.email;
-        if (
-          context.path === '/sign-in/email' &&
-          context.context.returned instanceof APIError &&
-          typeof email === 'string'
-        ) {
-          await countWrongTry(email.toLowerCase(), address);
-          await noteRefused(services, email.toLowerCase());
-          return;
-        }
-        const fresh = context.context.newSession;
-        if (!fresh) return;
-        await forgetTries(fresh.user.email.toLowerCase(), address);
-        // Better Auth also makes a new session after a change of password or factor: those are entries of their own.
-        if (/^\/(sign-in|two-factor\/verify)/.test(context.path)) await noteSignedIn(services, fresh.user);
-      }),
-    },
   });
 }
 
 export type Auth = ReturnType<typeof createAuth>;
-
-const noteSignedIn = (services: Needs, user: { id: string; name: string }) =>
-  services.write((tx) =>
-    appendEntries(tx, services.clock.now(), [
-      {
-        kind: 'signed-in',
-        actor: { kind: 'person', id: user.id, label: user.name },
-        subjects: [{ kind: 'person', id: user.id }],
-      },
-    ]),
-  );
-
-/** Only tries for accounts that exist are entries: an address that somebody mistyped is nobody's business. */
-async function noteRefused(services: Needs, email: string): Promise<void> {
-  const [person] = await services.read
-    .select({ id: schema.user.id })
-    .from(schema.user)
-    .where(eq(schema.user.email, email))
-    .limit(1);
-  if (!person) return;
-  await services.write((tx) =>
-    appendEntries(tx, services.clock.now(), [
-      { kind: 'sign-in-refused', actor: SERVICE_ACTOR, subjects: [{ kind: 'person', id: person.id }] },
-    ]),
-  );
-}
 
 const shared = globalThis as { bellkeepAuth?: WeakMap<object, Auth> };
 

@@ -4,10 +4,10 @@ import { appendEntries } from '@/lib/custody/append';
 import { deviceActor } from '@/lib/keys/device';
 import { Refusal } from '@/lib/platform/errors';
 import { StorageError } from '@/lib/storage/port';
-import type { IngestServices, RecordingRow } from './completeRecording';
 import type { AnalysisRequest } from './messages';
 import { type Arrived, readArrived } from './readArrived';
 import { retentionEnd } from './sealRecording';
+import type { IngestServices, RecordingRow } from './types';
 
 /**
  * Awaited to received: read what was put, check that it is what was announced, and write so.

@@ -1,6 +1,5 @@
 import { and, eq, sql } from 'drizzle-orm';
 import { custodySubject, deviceModel, encounter, filing, recording } from '@/db/schema';
-import type { Tx } from '@/db/write';
 import { findingSentence } from '@/lib/acoustics/sentences';
 import type { Finding } from '@/lib/acoustics/types';
 import type { CompleteAnswer } from '@/lib/contract/device';
@@ -8,33 +7,12 @@ import type { AuthenticatedDevice, DeviceModelRow } from '@/lib/keys/device';
 import { shouldRenew } from '@/lib/keys/issueCredential';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
-import type { AnalysisPool } from './analysisPool';
 import { arrive } from './arrive';
 import { limitsFor } from './limits';
 import { measureRecording } from './measureRecording';
 import { readArrived } from './readArrived';
 import { sealRecording } from './sealRecording';
-
-export type RecordingRow = typeof recording.$inferSelect;
-
-export interface Placed {
-  encounterId: string;
-  encounterNumber: string;
-  patientId: string;
-  by: 'session' | 'identifier';
-  sessionNumber: string | null;
-}
-/** Where the clip belongs, asked inside the transaction that writes its measures; writes the filing itself. */
-export type PlaceRecording = (
-  tx: Tx,
-  clip: Pick<RecordingRow, 'id' | 'deviceId' | 'recordedAt' | 'scannedIdentifier'>,
-  nowMs: number,
-) => Promise<{ filed: Placed } | { tray: string }>;
-
-export type IngestServices = Pick<Services, 'read' | 'write' | 'clock' | 'storage' | 'env' | 'log'> & {
-  analysis: AnalysisPool;
-  place: PlaceRecording;
-};
+import type { IngestServices, RecordingRow } from './types';
 
 /** Calls in this process that work on the same clip share one run; other processes are held apart by the stage. */
 const running = new Map<string, Promise<void>>();

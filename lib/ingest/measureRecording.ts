@@ -5,8 +5,8 @@ import { appendEntries } from '@/lib/custody/append';
 import { type NewEntry, SERVICE_ACTOR } from '@/lib/custody/entry';
 import { Refusal } from '@/lib/platform/errors';
 import { StorageError } from '@/lib/storage/port';
-import type { IngestServices, Placed, RecordingRow } from './completeRecording';
 import type { AnalysisResult } from './messages';
+import type { IngestServices, Placed, RecordingRow } from './types';
 
 /** What a clip is called that broke every decoder it was given to. */
 const BEYOND_READING: AnalysisResult = {

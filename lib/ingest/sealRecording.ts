@@ -4,7 +4,7 @@ import { appendEntries } from '@/lib/custody/append';
 import { SERVICE_ACTOR } from '@/lib/custody/entry';
 import { Refusal } from '@/lib/platform/errors';
 import { StorageError } from '@/lib/storage/port';
-import type { IngestServices, RecordingRow } from './completeRecording';
+import type { IngestServices, RecordingRow } from './types';
 
 const YEAR_MS = 365.25 * 86_400_000;
 

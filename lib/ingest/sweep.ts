@@ -1,7 +1,8 @@
 import { and, asc, inArray, isNull, lt } from 'drizzle-orm';
 import { recording } from '@/db/schema';
 import { Refusal } from '@/lib/platform/errors';
-import { carryOn, type IngestServices } from './completeRecording';
+import { carryOn } from './completeRecording';
+import type { IngestServices } from './types';
 
 /** How long a clip may stand still before the sweep takes it up: longer than a device waits before it repeats. */
 const STANDING_STILL_MS = 90_000;

@@ -48,7 +48,7 @@ try {
   const storage = household.start('the storage fake', storageFakeArgs(settings, FOLDER));
   const [built] = await Promise.all([
     ensureBuilt(),
-    untilAnswers(`${settings.S3_ENDPOINT}/-/health`, storage).then(() =>
+    untilAnswers(`${settings.S3_ENDPOINT}`, storage).then(() =>
       run(['--import', 'tsx', 'db/seed/run.ts'], env),
     ),
   ]);

@@ -168,7 +168,7 @@ async function main(): Promise<number> {
     };
     const storage = household.start('the storage fake', storageFakeArgs(settings, folder));
     const code = await prepare(settings, read.modelRateHz);
-    await untilAnswers(`${settings.S3_ENDPOINT}/-/health`, storage);
+    await untilAnswers(`${settings.S3_ENDPOINT}`, storage);
     const web = household.start('the web server', webArgs(ports.webPort), {
       env: { ...settings, NODE_ENV: 'production' },
     });

@@ -47,7 +47,7 @@ export class Household {
   }
 }
 
-/** Wait until an address answers with success. @throws Error when the process ended or the time is over */
+/** Wait until an address answers, whatever it says, but with a fault of its own. @throws Error when the process ended or the time is over */
 export async function untilAnswers(url, entry, milliseconds = 60_000) {
   const until = Date.now() + milliseconds;
   let ended = null;
@@ -57,7 +57,7 @@ export async function untilAnswers(url, entry, milliseconds = 60_000) {
   for (;;) {
     if (ended) throw new Error(`${entry.name} ended at once:\n${entry.said}`);
     try {
-      if ((await fetch(url)).ok) return;
+      if ((await fetch(url)).status < 500) return;
     } catch {
       // Not up yet.
     }
