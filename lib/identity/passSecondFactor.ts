@@ -36,7 +36,8 @@ export async function passSecondFactor(
   code: string,
 ): Promise<SignInStep> {
   const personId = await challenged(services, peer);
-  if (!personId) throw new Refusal('sign-in-refused', 'Too much time went by. Start again with your password.');
+  if (!personId)
+    throw new Refusal('sign-in-refused', 'Too much time went by. Start again with your password.');
   if (factor === 'authenticator' && !(await claimCode(services, personId, code)))
     throw new Refusal('sign-in-refused', 'This code was used already. Wait for the next one.');
   const path = factor === 'authenticator' ? '/two-factor/verify-totp' : '/two-factor/verify-backup-code';

@@ -59,7 +59,11 @@ export async function signIn(services: Needs, peer: Peer, wanted: SignIn): Promi
  * end in one durable write, so that they take the same time.
  */
 async function noteRefused(services: Needs, email: string): Promise<void> {
-  const [person] = await services.read.select({ id: user.id }).from(user).where(eq(user.email, email)).limit(1);
+  const [person] = await services.read
+    .select({ id: user.id })
+    .from(user)
+    .where(eq(user.email, email))
+    .limit(1);
   const now = services.clock.now();
   await services.write(async (tx) => {
     if (person) {
