@@ -17,6 +17,7 @@ export interface Handling {
   behaviour: Behaviour;
   faults: Faults;
   faultsOverHttp: boolean;
+  domains: readonly string[];
   nowMs: () => number;
 }
 
@@ -45,7 +46,7 @@ export async function handle(
       sendContinue();
       return await answerFaultAdmin(handling.faults, message, response);
     }
-    const request = new S3Request(message);
+    const request = new S3Request(message, handling.domains);
     const faults = handling.faults.meet({
       method: request.method,
       key: request.key,

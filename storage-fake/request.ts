@@ -31,7 +31,8 @@ export class S3Request implements WireRequest {
   readonly virtualHost: boolean;
   private readonly hoisted = new Map<string, string>();
 
-  constructor(message: IncomingMessage) {
+  /** @param domains hosts below which a bucket's name may stand in the Host header */
+  constructor(message: IncomingMessage, domains: readonly string[]) {
     this.method = message.method ?? 'GET';
     const target = (message.url ?? '/').replace(/^https?:\/\/[^/]*/i, '');
     const at = target.indexOf('?');
@@ -42,7 +43,7 @@ export class S3Request implements WireRequest {
       headers.push([(message.rawHeaders[i] as string).toLowerCase(), message.rawHeaders[i + 1] as string]);
     }
     this.headers = headers;
-    const host = bucketOfHost(message.headers.host ?? '');
+    const host = bucketOfHost(message.headers.host ?? '', domains);
     this.virtualHost = host !== undefined;
     const path = this.rawPath.replace(/^\//, '');
     const slash = path.indexOf('/');
@@ -87,8 +88,10 @@ export class S3Request implements WireRequest {
   }
 }
 
-function bucketOfHost(host: string): string | undefined {
-  return /^([a-z0-9][a-z0-9.-]{2,62})\.localhost(?::\d+)?$/i.exec(host)?.[1]?.toLowerCase();
+function bucketOfHost(host: string, domains: readonly string[]): string | undefined {
+  const name = host.toLowerCase().replace(/:\d+$/, '');
+  const domain = domains.find((one) => name.endsWith(`.${one}`));
+  return domain === undefined ? undefined : name.slice(0, -domain.length - 1);
 }
 
 function keyOf(raw: string): string | undefined {

@@ -22,6 +22,8 @@ export interface StorageFakeOptions {
   port?: number;
   host?: string;
   region?: string;
+  /** Names below which a bucket may stand in the Host header; `localhost` by default. */
+  domains?: readonly string[];
   /** UTC milliseconds. */
   nowMs?: () => number;
   ignoreSignedChecksum?: boolean;
@@ -66,6 +68,7 @@ export async function startStorageFake(options: StorageFakeOptions): Promise<Sto
     behaviour,
     faults,
     faultsOverHttp: options.faultsOverHttp ?? false,
+    domains: options.domains ?? ['localhost'],
     nowMs,
   };
   const running = new Set<Promise<void>>();
@@ -104,7 +107,7 @@ function listen(server: Server, port: number, host: string): Promise<void> {
 }
 
 const USAGE = `storage-fake --port N --dir D --access-key K --secret-key S --bucket B [--bucket B2 ...]
-  [--host 127.0.0.1] [--region us-east-1] [--faults] [--allow-origin O ...]
+  [--host 127.0.0.1] [--region us-east-1] [--domain D ...] [--faults] [--allow-origin O ...]
   [--ignore-signed-checksum] [--refuse-streamed-trailers] [--no-object-lock]`;
 
 async function main(): Promise<void> {
@@ -117,6 +120,7 @@ async function main(): Promise<void> {
       bucket: { type: 'string', multiple: true },
       host: { type: 'string' },
       region: { type: 'string' },
+      domain: { type: 'string', multiple: true },
       faults: { type: 'boolean' },
       'allow-origin': { type: 'string', multiple: true },
       'ignore-signed-checksum': { type: 'boolean' },
@@ -136,6 +140,7 @@ async function main(): Promise<void> {
     port,
     ...(values.host ? { host: values.host } : {}),
     ...(values.region ? { region: values.region } : {}),
+    ...(values.domain ? { domains: values.domain } : {}),
     ...(values['allow-origin'] ? { allowedOrigins: values['allow-origin'] } : {}),
     faultsOverHttp: values.faults ?? false,
     ignoreSignedChecksum: values['ignore-signed-checksum'] ?? false,
