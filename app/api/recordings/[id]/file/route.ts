@@ -1,0 +1,18 @@
+import { Filing, fileFromTray } from '@/lib/filing/fileRecording';
+import { personRoute } from '@/lib/http/person';
+import { reachEncounter, reachRecording } from '@/lib/http/reach';
+
+/** File a stray clip to an encounter, with two identifiers read. */
+export const POST = personRoute(
+  'POST /api/recordings/[id]/file',
+  { body: Filing },
+  async ({ person, body, params, services, idempotency }) => {
+    const clip = await reachRecording(services, person, params.id ?? '');
+    await reachEncounter(services, person, body.encounterId);
+    return Response.json(
+      await idempotency.once((remember) =>
+        fileFromTray(services, person, clip.recording.number, body, remember),
+      ),
+    );
+  },
+);
