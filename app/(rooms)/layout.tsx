@@ -4,23 +4,6 @@ import type { ReactNode } from 'react';
 import { Shell } from '@/components/shell/Shell';
 import { THEME_COOKIE, themeOf } from '@/components/shell/theme';
 import { readVisitor } from '@/lib/http/page';
-import { authOf } from '@/lib/identity/auth';
-
-/** End this session: a form that works without scripts too. */
-async function signOut(): Promise<void> {
-  'use server';
-  const { services } = await readVisitor();
-  const { headers: answered } = await authOf(services).api.signOut({
-    headers: await headers(),
-    returnHeaders: true,
-  });
-  const jar = await cookies();
-  for (const line of answered.getSetCookie()) {
-    const name = line.slice(0, line.indexOf('='));
-    jar.delete(name);
-  }
-  redirect('/sign-in');
-}
 
 /** The signed-in shell around every room. */
 export default async function RoomsLayout({ children }: { children: ReactNode }) {
@@ -35,7 +18,7 @@ export default async function RoomsLayout({ children }: { children: ReactNode })
       theme={themeOf((await cookies()).get(THEME_COOKIE)?.value)}
       now={services.clock.now()}
       zone={env.BELLKEEP_TIME_ZONE}
-      signOut={signOut}
+      signOut="/api/account/sign-out"
     >
       {children}
     </Shell>

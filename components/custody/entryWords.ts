@@ -73,6 +73,7 @@ const TITLES: Record<string, string> = {
   'sign-in-refused': 'Sign-in refused',
   'sessions-ended': 'Sessions ended',
   'second-factor-set': 'Second factor set',
+  'second-factor-removed': 'Second factor removed',
   'password-reset': 'Password reset',
   'policy-changed': 'Policy changed',
 };

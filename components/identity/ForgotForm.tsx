@@ -14,7 +14,7 @@ export function ForgotForm() {
   async function submit(event: FormEvent<HTMLFormElement>) {
     event.preventDefault();
     setBusy(true);
-    const answer = await authCall('/request-password-reset', {
+    const answer = await authCall('/auth/forgot', {
       email: String(new FormData(event.currentTarget).get('email') ?? '').trim(),
     });
     setBusy(false);

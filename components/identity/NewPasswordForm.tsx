@@ -15,16 +15,18 @@ export function NewPasswordForm({ token }: { token: string }) {
   const [busy, setBusy] = useState(false);
   const [done, setDone] = useState(false);
   const [failure, setFailure] = useState<string | null>(null);
+  const [gone, setGone] = useState(false);
   async function submit(event: FormEvent<HTMLFormElement>) {
     event.preventDefault();
     setBusy(true);
-    const answer = await authCall('/reset-password', {
+    const answer = await authCall('/auth/reset', {
       token,
       newPassword: String(new FormData(event.currentTarget).get('password') ?? ''),
     });
     setBusy(false);
     setDone(answer.ok);
     setFailure(answer.ok ? null : answer.message);
+    setGone(!answer.ok && answer.status === 404);
   }
   if (done)
     return (
@@ -36,8 +38,7 @@ export function NewPasswordForm({ token }: { token: string }) {
     <form onSubmit={submit} className="grid gap-4">
       {failure ? (
         <Notice tone="alarm" title="Not set">
-          {failure} The address in the mail works once, for an hour.{' '}
-          <Link href="/forgot">Ask for another</Link>.
+          {failure} {gone ? <Link href="/forgot">Ask for another</Link> : null}
         </Notice>
       ) : null}
       <Field label="New password" help={PASSWORD_HELP} required>

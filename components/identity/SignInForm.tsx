@@ -23,13 +23,13 @@ export function SignInForm({ next }: { next: string }) {
     setFailure(null);
     const answer =
       step === 'password'
-        ? await authCall('/sign-in/email', {
+        ? await authCall('/auth/sign-in', {
             email: value('email'),
             password: String(form.get('password') ?? ''),
           })
         : step === 'code'
-          ? await authCall('/two-factor/verify-totp', { code: value('code').replace(/\s/g, '') })
-          : await authCall('/two-factor/verify-backup-code', { code: value('recovery') });
+          ? await authCall('/auth/authenticator', { code: value('code') })
+          : await authCall('/auth/recovery-code', { code: value('recovery') });
     if (!answer.ok) {
       setBusy(false);
       setFailure(
@@ -37,9 +37,10 @@ export function SignInForm({ next }: { next: string }) {
           ? 'E-mail and password do not belong together.'
           : answer.message,
       );
+      if (/^(Start again|Too much time|Too many wrong codes)/.test(answer.message)) setStep('password');
       return;
     }
-    if (step === 'password' && answer.data.twoFactorRedirect === true) {
+    if (answer.data.next === 'second-factor') {
       setBusy(false);
       setStep('code');
       return;

@@ -14,6 +14,8 @@ export interface Idempotency {
    * Do a write once. `work` gets a function that it calls inside its transaction with the answer it will give.
    */
   once<T>(work: (remember: (tx: Tx, answer: T) => Promise<void>) => Promise<T>): Promise<T>;
+  /** Whether the answer was one given before. */
+  replayed(): boolean;
 }
 
 const KEY = /^[\w.:-]{8,128}$/;
@@ -27,7 +29,7 @@ export function idempotencyOf(
   params: Record<string, string>,
 ): Idempotency {
   const header = request.headers.get('idempotency-key');
-  if (header === null) return { once: (work) => work(async () => undefined) };
+  if (header === null) return { once: (work) => work(async () => undefined), replayed: () => false };
   if (!KEY.test(header))
     throw new Refusal('body-invalid', 'Idempotency-Key takes 8 to 128 letters, digits and . : _ -', {
       errors: [{ path: 'idempotency-key', message: 'malformed' }],
@@ -37,6 +39,7 @@ export function idempotencyOf(
     .update(JSON.stringify([params, body ?? null]))
     .digest('hex');
 
+  let replayed = false;
   async function stored<T>(): Promise<{ answer: T } | null> {
     const [row] = await services.read
       .select()
@@ -45,10 +48,12 @@ export function idempotencyOf(
       .limit(1);
     if (!row) return null;
     if (row.requestHash !== requestHash) throw new Refusal('idempotency-conflict');
+    replayed = true;
     return { answer: JSON.parse(row.body) as T };
   }
 
   return {
+    replayed: () => replayed,
     async once<T>(work: (remember: (tx: Tx, answer: T) => Promise<void>) => Promise<T>): Promise<T> {
       const before = await stored<T>();
       if (before) return before.answer;

@@ -1,16 +1,17 @@
 import { headers } from 'next/headers';
 import { notFound, redirect } from 'next/navigation';
+import { cache } from 'react';
 import { may, type Permission } from '@/lib/identity/permissions';
 import { readPerson, type SignedIn } from '@/lib/identity/readPerson';
 import type { Authorized } from '@/lib/platform/authority';
 import type { Services } from '@/lib/platform/services';
 import { getServices } from './services';
 
-/** Who looks at a page, or null. */
-export async function readVisitor(): Promise<{ person: SignedIn | null; services: Services }> {
+/** Who looks at a page, or null. Read once for a page and the layout around it. */
+export const readVisitor = cache(async (): Promise<{ person: SignedIn | null; services: Services }> => {
   const services = await getServices();
   return { person: await readPerson(services, await headers()), services };
-}
+});
 
 /**
  * Authority for a page. Signed out: to the sign-in page and back here. Not permitted: the same "not found" as for what

@@ -1,12 +1,13 @@
-import { eq } from 'drizzle-orm';
+import { eq, ne } from 'drizzle-orm';
 import { z } from 'zod';
-import { twoFactor, user } from '@/db/schema';
+import { session, twoFactor, user } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
 import { enqueueMail } from '@/lib/mail/enqueue';
 import { type Authorized, personActor } from '@/lib/platform/authority';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
+import { checkOwnPassword } from './changePassword';
 import { findPerson } from './findPerson';
 import { noticeLetter } from './letters';
 import { deleteSessions } from './sessions';
@@ -51,5 +52,40 @@ export async function removeSecondFactor(
     await enqueueMail(tx, now, noticeLetter(services, person.email, 'second-factor-removed'));
     await remember?.(tx, answer);
     return answer;
+  });
+}
+
+/**
+ * Take away one's own second factor, to set up another or to do without where the role allows it. Sessions elsewhere
+ * end.
+ *
+ * @throws Refusal `body-invalid` for a wrong password, `not-possible` where there is none
+ */
+export async function removeOwnSecondFactor(
+  services: Pick<Services, 'read' | 'write' | 'clock' | 'env'>,
+  by: Authorized<'self'>,
+  password: string,
+): Promise<void> {
+  await checkOwnPassword(services, by, password, 'password');
+  const now = services.clock.now();
+  await services.write(async (tx) => {
+    const gone = await tx
+      .delete(twoFactor)
+      .where(eq(twoFactor.userId, by.id))
+      .returning({ id: twoFactor.id });
+    if (gone.length === 0) throw new Refusal('not-possible', 'There is no second factor.');
+    await tx
+      .update(user)
+      .set({ twoFactorEnabled: false, updatedAt: new Date(now) })
+      .where(eq(user.id, by.id));
+    await deleteSessions(tx, by.id, ne(session.id, by.sessionId));
+    await appendEntries(tx, now, [
+      {
+        kind: 'second-factor-removed',
+        actor: personActor(by, 'self'),
+        subjects: [{ kind: 'person', id: by.id }],
+      },
+    ]);
+    await enqueueMail(tx, now, noticeLetter(services, by.email, 'second-factor-removed'));
   });
 }

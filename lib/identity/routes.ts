@@ -35,15 +35,19 @@ export const ROUTES = {
   'PAGE /keyroom': { permission: 'credential.read' },
   'PAGE /keyroom/people': { permission: 'people.read' },
   'PAGE /keyroom/people/[id]': { permission: 'people.read' },
+  'PAGE /keyroom/people/invitations': { permission: 'people.read' },
   'PAGE /ledger': { permission: 'thread.read' },
   'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
   'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },
 
   'GET /.well-known/jwks.json': { public: true },
   'GET /api/health': { public: true },
-  'GET /api/auth/[...all]': { public: true },
-  'POST /api/auth/[...all]': { public: true },
-  'POST /api/invitations/[token]/accept': { public: true },
+  'POST /api/auth/sign-in': { public: true },
+  'POST /api/auth/authenticator': { public: true },
+  'POST /api/auth/recovery-code': { public: true },
+  'POST /api/auth/forgot': { public: true },
+  'POST /api/auth/reset': { public: true },
+  'POST /api/invitations/accept': { public: true },
 
   'POST /api/device/v1/enrol': { public: true },
   'POST /api/device/v1/token': { device: true },
@@ -82,13 +86,27 @@ export const ROUTES = {
   'POST /api/credentials/[id]/rotate': { permission: 'credential.write' },
   'POST /api/credentials/[id]/revoke': { permission: 'credential.write' },
 
+  'GET /api/me': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/sign-out': { permission: 'self', beforeSecondFactor: true },
+  'GET /api/account/sessions': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/sessions/end': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/password': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/second-factor': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/second-factor/confirm': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/second-factor/remove': { permission: 'self' },
+  'POST /api/account/recovery-codes': { permission: 'self' },
+
   'GET /api/people': { permission: 'people.read' },
+  'GET /api/people/[id]': { permission: 'people.read' },
   'POST /api/people/[id]/roles': { permission: 'people.write' },
   'POST /api/people/[id]/wards': { permission: 'people.write' },
   'POST /api/people/[id]/end-sessions': { permission: 'people.write' },
+  'POST /api/people/[id]/remove-second-factor': { permission: 'people.write' },
   'POST /api/people/[id]/leave': { permission: 'people.write' },
+  'GET /api/invitations': { permission: 'people.read' },
   'POST /api/invitations': { permission: 'people.write' },
-  'POST /api/invitations/[token]/withdraw': { permission: 'people.write' },
+  'POST /api/invitations/[id]/send-again': { permission: 'people.write' },
+  'POST /api/invitations/[id]/withdraw': { permission: 'people.write' },
 } as const satisfies Record<string, Access>;
 
 export type RouteKey = keyof typeof ROUTES;
@@ -102,5 +120,10 @@ export type PermissionOf<K extends RouteKey> = (typeof ROUTES)[K] extends {
 
 /** Keys of routes that people reach. */
 export type PersonRouteKey = { [K in RouteKey]: PermissionOf<K> extends never ? never : K }[RouteKey];
+
+/** Keys of routes that anybody reaches. */
+export type PublicRouteKey = {
+  [K in RouteKey]: (typeof ROUTES)[K] extends { public: true } ? K : never;
+}[RouteKey];
 
 export const accessOf = (key: RouteKey): Access => ROUTES[key];

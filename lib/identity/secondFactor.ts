@@ -1,4 +1,4 @@
-import { and, eq, ne } from 'drizzle-orm';
+import { eq, ne } from 'drizzle-orm';
 import { z } from 'zod';
 import { session, twoFactor, user } from '@/db/schema';
 import { appendEntries } from '@/lib/custody/append';
@@ -10,6 +10,7 @@ import { callAuth, type Peer } from './callAuth';
 import { checkOwnPassword } from './changePassword';
 import { noticeLetter } from './letters';
 import { claimCode } from './passSecondFactor';
+import { deleteSessions } from './sessions';
 import { waitRefusal } from './signIn';
 
 export const WithPassword = z.strictObject({ password: z.string().min(1).max(1024) });
@@ -75,15 +76,11 @@ export async function confirmSecondFactor(
   if (answer.status === 429) throw waitRefusal(answer.retryAfterSeconds ?? 60);
   if (answer.status === 401 || answer.status === 400) throw wrongCode('That code is not right.');
   if (answer.status !== 200) throw new Error(`the first code answered ${answer.status}`);
+  // The factor counts from Better Auth's own write on. Dying here leaves it on and without its entry; the person has no
+  // cookie then, signs in with it, and nothing was weakened.
   const now = services.clock.now();
   await services.write(async (tx) => {
-    const [kept] = await tx
-      .select({ id: session.id })
-      .from(session)
-      .where(and(eq(session.userId, by.id), ne(session.id, by.sessionId)))
-      .orderBy(session.createdAt)
-      .limit(1);
-    void kept;
+    await deleteSessions(tx, by.id, ne(session.token, sessionToken(answer.cookies)));
     await appendEntries(tx, now, [
       {
         kind: 'second-factor-set',
@@ -96,5 +93,43 @@ export async function confirmSecondFactor(
   return { cookies: answer.cookies };
 }
 
+/** The token of the session that these Set-Cookie lines begin. */
+function sessionToken(cookies: string[]): string {
+  for (const line of cookies) {
+    const [, value] = /\.session_token=([^;]+)/.exec(line) ?? [];
+    if (value) return decodeURIComponent(value).split('.')[0] ?? '';
+  }
+  return '';
+}
+
 const wrongCode = (sentence: string) =>
   new Refusal('body-invalid', sentence, { errors: [{ path: 'code', message: sentence }] });
+
+/**
+ * Ten new recovery codes; those before stop working.
+ *
+ * @throws Refusal `body-invalid` for a wrong password, `not-possible` without a second factor
+ */
+export async function newRecoveryCodes(
+  services: Needs,
+  by: Authorized<'self'>,
+  peer: Peer,
+  password: string,
+): Promise<{ recoveryCodes: string[] }> {
+  await checkOwnPassword(services, by, password, 'password');
+  const answer = await callAuth(services, peer, '/two-factor/generate-backup-codes', { password });
+  if (answer.status === 429) throw waitRefusal(answer.retryAfterSeconds ?? 60);
+  if (answer.status === 400) throw new Refusal('not-possible', 'There is no second factor yet.');
+  if (answer.status !== 200) throw new Error(`new recovery codes answered ${answer.status}`);
+  await services.write((tx) =>
+    appendEntries(tx, services.clock.now(), [
+      {
+        kind: 'second-factor-set',
+        actor: personActor(by, 'self'),
+        subjects: [{ kind: 'person', id: by.id }],
+        detail: { recoveryCodes: 'new' },
+      },
+    ]),
+  );
+  return { recoveryCodes: (answer.body.backupCodes as unknown[]).map(String) };
+}
