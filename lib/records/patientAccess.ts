@@ -1,4 +1,4 @@
-import { and, eq, gt, inArray, sql } from 'drizzle-orm';
+import { and, desc, eq, gt, inArray, sql } from 'drizzle-orm';
 import { accessReason, encounter, patient } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
@@ -47,6 +47,12 @@ export async function maySeePatient(
   return reason !== undefined;
 }
 
+interface GaveReason {
+  patientId: string;
+  /** The encounter that was named, or the patient's latest. */
+  encounterId: string | null;
+}
+
 /**
  * Open a patient outside one's wards for twelve hours by giving the reason; the auditor sees it. The patient is named
  * by the exact record number or encounter number, so that nobody leafs through the hospital.
@@ -57,8 +63,8 @@ export async function giveReason(
   services: Pick<Services, 'write' | 'clock'>,
   by: Authorized<'bedside.read'>,
   wanted: { identifier: string; reason: string },
-  remember?: (tx: Tx, answer: { patientId: string }) => Promise<void>,
-): Promise<{ patientId: string }> {
+  remember?: (tx: Tx, answer: GaveReason) => Promise<void>,
+): Promise<GaveReason> {
   const now = services.clock.now();
   return await services.write(async (tx) => {
     const identifier = wanted.identifier.trim().toUpperCase();
@@ -94,7 +100,15 @@ export async function giveReason(
         detail: { reason: wanted.reason },
       },
     ]);
-    const answer = { patientId: byEncounter.id };
+    const [latest] = await tx
+      .select({ id: encounter.id })
+      .from(encounter)
+      .where(
+        and(eq(encounter.patientId, byEncounter.id), byRecord ? undefined : eq(encounter.number, identifier)),
+      )
+      .orderBy(desc(encounter.startedAt))
+      .limit(1);
+    const answer = { patientId: byEncounter.id, encounterId: latest?.id ?? null };
     await remember?.(tx, answer);
     return answer;
   });
