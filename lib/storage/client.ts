@@ -13,6 +13,8 @@ export interface StorageConfig {
   publicEndpoint?: string;
   /** Told after each request; carries no address and no secret. */
   onRequest?: (request: StorageRequest) => void;
+  /** UTC milliseconds, by which a retention is still to come or already over. */
+  nowMs?: () => number;
   /** How patient to be; the defaults suit a route that somebody waits for. */
   patience?: { connectMilliseconds?: number; idleMilliseconds?: number; attempts?: number };
 }
@@ -34,6 +36,7 @@ export interface Connection {
   /** For presigning only: it makes no requests. */
   publicClient: S3Client;
   bucket: string;
+  nowMs: () => number;
   /** Run one operation: measured, and with every failure as a StorageError. */
   run<T>(operation: string, key: string, work: () => Promise<T>): Promise<T>;
 }
@@ -62,6 +65,7 @@ export function connect(config: StorageConfig): Connection {
     client,
     publicClient: config.publicEndpoint === undefined ? client : clientAt(config.publicEndpoint),
     bucket: config.bucket,
+    nowMs: config.nowMs ?? Date.now,
     async run(operation, key, work) {
       const began = performance.now();
       const report = (outcome: string): void =>

@@ -34,7 +34,10 @@ export interface Put {
   contentType: string;
   /** Write only where there is nothing yet. */
   ifAbsent?: boolean;
-  /** UTC milliseconds until which nobody may remove or replace it. Passed over by a store without object lock. */
+  /**
+   * UTC milliseconds until which nobody may remove or replace it. Passed over where it is over already or the store
+   * has no object lock.
+   */
   retainUntilMs?: number;
   legalHold?: boolean;
   /** Printable ASCII. */
@@ -64,6 +67,7 @@ export type Lock = 'compliance' | 'none';
 export interface Seal {
   from: string;
   to: string;
+  /** A time that is over already asks for no lock. */
   retainUntilMs: number;
   contentType: string;
   /** Of the object at `from`, as `head` or `getStream` gave it: other bytes are not sealed. */
@@ -103,7 +107,8 @@ export interface Storage {
   /**
    * Bytes `from` to `to`, both inclusive, zero-based.
    *
-   * The stream fails with `bad-response` where it ends before `contentLength` bytes.
+   * The stream fails with `bad-response` where it ends before `contentLength` bytes, and with `timeout` where nothing
+   * passes for fifteen seconds, be it that the reader does not take it.
    */
   getStream(key: string, range?: { from?: number; to?: number }): Promise<Opened>;
   /** The whole object; `bad-response` where it is longer than `maxBytes`. */

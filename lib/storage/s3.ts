@@ -21,7 +21,7 @@ export function createS3Storage(config: StorageConfig): Storage {
     head: (key) => run('head', key, () => head(connection, key)),
     seal: (request) => run('seal', request.to, () => seal(connection, request)),
     list: (prefix, options) => run('list', prefix, () => list(connection, prefix, options)),
-    remove: (key) => run('remove', key, () => remove(connection, key, Date.now())),
+    remove: (key) => run('remove', key, () => remove(connection, key)),
     setRetention: (key, untilMs) => run('setRetention', key, () => setRetention(connection, key, untilMs)),
     check: (prefix) => run('check', prefix, () => checkStorage(storage, connection, prefix)),
   };

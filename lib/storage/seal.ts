@@ -47,55 +47,68 @@ async function standing(connection: Connection, request: Seal): Promise<Sealed |
     found.contentLength === request.contentLength &&
     (found.etag === request.expectedEtag || found.sealedFrom === request.expectedEtag);
   if (!same) throw new StorageError('exists', 'seal', request.to);
-  const locked = (found.retainUntilMs ?? 0) >= floorToSecond(request.retainUntilMs);
-  const lock = locked ? 'compliance' : await setRetention(connection, request.to, request.retainUntilMs);
-  return { outcome: 'already', lock, etag: found.etag };
+  return {
+    outcome: 'already',
+    lock: await ensureLock(connection, request, found.retainUntilMs ?? 0),
+    etag: found.etag,
+  };
+}
+
+async function ensureLock(connection: Connection, request: Seal, untilMs: number): Promise<Lock> {
+  if (untilMs > 0 && untilMs >= floorToSecond(request.retainUntilMs)) return 'compliance';
+  if (request.retainUntilMs <= connection.nowMs()) return 'none';
+  return setRetention(connection, request.to, request.retainUntilMs);
 }
 
 /** Stores keep the date in seconds or milliseconds. */
 const floorToSecond = (ms: number): number => Math.floor(ms / 1000) * 1000;
 
 /**
- * Copy, leaving away what the store does not know: first the condition on the target, then the lock. Without the
+ * Copy, leaving away what the store does not know: first the lock, then the condition on the target. Without the
  * condition the look at the target before is what protects it, and two runs copy the same bytes.
  */
-async function copy({ client, bucket }: Connection, request: Seal): Promise<Lock> {
-  const send = (condition: boolean, locked: boolean) =>
-    client.send(
-      new CopyObjectCommand({
-        Bucket: bucket,
-        Key: request.to,
-        CopySource: `${bucket}/${request.from.split('/').map(encodeURIComponent).join('/')}`,
-        CopySourceIfMatch: `"${request.expectedEtag}"`,
-        IfNoneMatch: condition ? '*' : undefined,
-        MetadataDirective: 'REPLACE',
-        ContentType: request.contentType,
-        Metadata: { 'sealed-from': request.expectedEtag },
-        ChecksumAlgorithm: 'SHA256',
-        ...(locked && {
-          ObjectLockMode: 'COMPLIANCE',
-          ObjectLockRetainUntilDate: new Date(request.retainUntilMs),
-        }),
+async function copy(connection: Connection, request: Seal): Promise<Lock> {
+  const retains = request.retainUntilMs > connection.nowMs();
+  const ways = [
+    { condition: true, locked: true },
+    { condition: true, locked: false },
+    { condition: false, locked: true },
+    { condition: false, locked: false },
+  ].filter(({ locked }) => retains || !locked);
+  for (const [i, way] of ways.entries()) {
+    try {
+      await sendCopy(connection, request, way);
+      return way.locked ? 'compliance' : 'none';
+    } catch (error) {
+      if (i === ways.length - 1 || !saysUnknown(error)) throw error;
+    }
+  }
+  throw new StorageError('bad-response', 'seal', request.to);
+}
+
+const saysUnknown = (error: unknown): boolean =>
+  saysNoObjectLock(error) || toStorageError(error, 'seal', '').status === 501;
+
+async function sendCopy(
+  { client, bucket }: Connection,
+  request: Seal,
+  { condition, locked }: { condition: boolean; locked: boolean },
+): Promise<void> {
+  await client.send(
+    new CopyObjectCommand({
+      Bucket: bucket,
+      Key: request.to,
+      CopySource: `${bucket}/${request.from.split('/').map(encodeURIComponent).join('/')}`,
+      CopySourceIfMatch: `"${request.expectedEtag}"`,
+      IfNoneMatch: condition ? '*' : undefined,
+      MetadataDirective: 'REPLACE',
+      ContentType: request.contentType,
+      Metadata: { 'sealed-from': request.expectedEtag },
+      ChecksumAlgorithm: 'SHA256',
+      ...(locked && {
+        ObjectLockMode: 'COMPLIANCE' as const,
+        ObjectLockRetainUntilDate: new Date(request.retainUntilMs),
       }),
-    );
-  try {
-    await send(true, true);
-    return 'compliance';
-  } catch (error) {
-    if (!saysNoObjectLock(error)) throw error;
-  }
-  try {
-    await send(true, false);
-    return 'none';
-  } catch (error) {
-    if (toStorageError(error, 'seal', request.to).status !== 501) throw error;
-  }
-  try {
-    await send(false, true);
-    return 'compliance';
-  } catch (error) {
-    if (!saysNoObjectLock(error)) throw error;
-  }
-  await send(false, false);
-  return 'none';
+    }),
+  );
 }

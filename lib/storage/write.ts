@@ -9,7 +9,8 @@ export async function put(
   connection: Connection,
   request: Put,
 ): Promise<{ outcome: 'stored' | 'exists'; lock: Lock }> {
-  const wantsLock = request.retainUntilMs !== undefined || request.legalHold === true;
+  const retains = (request.retainUntilMs ?? 0) > connection.nowMs();
+  const wantsLock = retains || request.legalHold === true;
   try {
     return await send(connection, request, wantsLock);
   } catch (error) {
@@ -26,7 +27,7 @@ async function send(
   const { client, bucket } = connection;
   const { key, body, retainUntilMs, legalHold } = request;
   const sha256 = createHash('sha256').update(body).digest();
-  const lock: Lock = locked && retainUntilMs !== undefined ? 'compliance' : 'none';
+  const lock: Lock = locked && (retainUntilMs ?? 0) > connection.nowMs() ? 'compliance' : 'none';
   try {
     await client.send(
       new PutObjectCommand({
@@ -69,7 +70,7 @@ async function isThere(
 }
 
 /** @throws StorageError `locked` also where the store only says that it is denied */
-export async function remove(connection: Connection, key: string, nowMs: number): Promise<void> {
+export async function remove(connection: Connection, key: string): Promise<void> {
   const { client, bucket } = connection;
   try {
     await client.send(new DeleteObjectCommand({ Bucket: bucket, Key: key }));
@@ -78,7 +79,7 @@ export async function remove(connection: Connection, key: string, nowMs: number)
     if (failure.code === 'not-found') return;
     if (failure.code === 'denied') {
       const found = await head(connection, key).catch(() => null);
-      if (found?.legalHold || (found?.retainUntilMs ?? 0) > nowMs)
+      if (found?.legalHold || (found?.retainUntilMs ?? 0) > connection.nowMs())
         throw new StorageError('locked', 'remove', key, failure);
     }
     throw error;

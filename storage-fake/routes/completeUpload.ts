@@ -92,35 +92,37 @@ function chosenParts(upload: Upload, root: XmlElement): UploadPart[] {
       'The XML you provided was not well-formed or did not validate against our published schema',
     );
   }
-  let before = 0;
-  return listed.map((element, position) => {
-    const number = Number(textOfChild(element, 'PartNumber'));
-    if (!(number > before))
-      throw new S3Error('InvalidPartOrder', 'The list of parts was not in ascending order.');
-    before = number;
-    const part = upload.parts.get(number);
-    const etag = (textOfChild(element, 'ETag') ?? '').replaceAll('"', '');
-    if (part === undefined || part.etag !== etag) {
-      throw new S3Error('InvalidPart', 'One or more of the specified parts could not be found.', {
-        PartNumber: String(number),
-      });
-    }
-    for (const name of CHECKSUM_NAMES) {
+  const numbers = listed.map((element) => Number(textOfChild(element, 'PartNumber')));
+  if (!numbers.every((number, i) => number > (numbers[i - 1] ?? 0))) {
+    throw new S3Error('InvalidPartOrder', 'The list of parts was not in ascending order.');
+  }
+  const parts = listed.map((element, i) => namedPart(upload, element, numbers[i] as number));
+  const small = parts.slice(0, -1).find((part) => part.sizeBytes < PART_BYTES_MIN);
+  if (small !== undefined) {
+    throw new S3Error('EntityTooSmall', 'Your proposed upload is smaller than the minimum allowed size', {
+      ProposedSize: String(small.sizeBytes),
+      MinSizeAllowed: String(PART_BYTES_MIN),
+    });
+  }
+  return parts;
+}
+
+/** The part that the list names, if it is still the one that the client saw stored. */
+function namedPart(upload: Upload, element: XmlElement, number: number): UploadPart {
+  const part = upload.parts.get(number);
+  const etag = (textOfChild(element, 'ETag') ?? '').replaceAll('"', '');
+  const same =
+    part?.etag === etag &&
+    CHECKSUM_NAMES.every((name) => {
       const value = textOfChild(element, checksumElement(name));
-      if (value !== undefined && part.checksums[name] !== undefined && part.checksums[name] !== value) {
-        throw new S3Error('InvalidPart', 'A part has another checksum than the list says.', {
-          PartNumber: String(number),
-        });
-      }
-    }
-    if (position < listed.length - 1 && part.sizeBytes < PART_BYTES_MIN) {
-      throw new S3Error('EntityTooSmall', 'Your proposed upload is smaller than the minimum allowed size', {
-        ProposedSize: String(part.sizeBytes),
-        MinSizeAllowed: String(PART_BYTES_MIN),
-      });
-    }
-    return part;
-  });
+      return value === undefined || part.checksums[name] === undefined || part.checksums[name] === value;
+    });
+  if (part === undefined || !same) {
+    throw new S3Error('InvalidPart', 'One or more of the specified parts could not be found.', {
+      PartNumber: String(number),
+    });
+  }
+  return part;
 }
 
 /** MD5 over the MD5s of the parts, and their number: common practice of S3, not a documented promise. */
