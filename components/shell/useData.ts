@@ -59,7 +59,7 @@ export async function sendJson<T>(
  * What a route answers, kept fresh: the server's first drawing as `first`, asked again when a live event matches.
  */
 export function useData<T>(
-  url: string,
+  url: string | null,
   first: T | undefined,
   live?: (event: LiveEvent) => boolean,
   options?: SWRConfiguration<T>,
