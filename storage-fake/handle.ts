@@ -53,7 +53,7 @@ export async function handle(
       parameters: new Set(request.query.keys()),
     });
     const delay = faults.get('delay');
-    if (delay !== undefined) await sleep(delay.milliseconds ?? 1000);
+    if (delay !== undefined) await sleepWhileAsked(response, delay.milliseconds ?? 1000);
     if (faults.get('slow-down')) throw new S3Error('SlowDown', 'Please reduce your request rate.');
     if (faults.get('internal-error')) throw internal();
     const binding = authenticate(request, handling.credentials, handling.nowMs());
@@ -73,6 +73,15 @@ export async function handle(
   } catch (error) {
     await refuse(error, message, response, requestId, continued);
   }
+}
+
+/** Wait, but no longer than somebody waits for the answer. */
+async function sleepWhileAsked(response: ServerResponse, milliseconds: number): Promise<void> {
+  const gone = new AbortController();
+  const leave = (): void => gone.abort();
+  response.once('close', leave);
+  await sleep(milliseconds, undefined, { signal: gone.signal }).catch(() => undefined);
+  response.off('close', leave);
 }
 
 const internal = () => new S3Error('InternalError', 'We encountered an internal error. Please try again.');

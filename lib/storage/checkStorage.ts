@@ -1,12 +1,12 @@
 import { randomUUID } from 'node:crypto';
 import { GetObjectLockConfigurationCommand } from '@aws-sdk/client-s3';
 import type { Connection } from './client';
-import { saysNoObjectLock, toStorageError } from './errors';
+import { toStorageError } from './errors';
 import type { CheckReport, CheckStep, Storage } from './port';
 
 /**
- * Do for real, with a small object under `prefix`, what Bellkeep needs of a store. Later steps are tried even where
- * an earlier one failed, and the object is removed in any case.
+ * Do for real, with a small object under `prefix`, what Bellkeep needs of a store. Where nothing can be written the
+ * other steps are not tried; otherwise each is, and the object is removed in any case.
  */
 export async function checkStorage(
   storage: Storage,
@@ -17,6 +17,10 @@ export async function checkStorage(
   const body = Buffer.from(`storage check ${key}\n`);
   const steps: CheckStep[] = [];
   const step = async (name: string, work: () => Promise<string>): Promise<void> => {
+    if (steps[0]?.ok === false) {
+      steps.push({ name, ok: false, detail: 'not tried' });
+      return;
+    }
     try {
       steps.push({ name, ok: true, detail: await work() });
     } catch (error) {
@@ -49,8 +53,8 @@ export async function checkStorage(
     if ((await storage.head(key)) !== null) throw new Unexpected('the object is still there');
     return 'the object is gone';
   });
-  const objectLock = await hasObjectLock(connection);
-  return { ok: steps.every(({ ok }) => ok), steps, objectLock };
+  const written = steps[0]?.ok === true;
+  return { ok: steps.every(({ ok }) => ok), steps, objectLock: written && (await hasObjectLock(connection)) };
 }
 
 class Unexpected extends Error {}
@@ -59,8 +63,8 @@ async function hasObjectLock({ client, bucket }: Connection): Promise<boolean> {
   try {
     const answer = await client.send(new GetObjectLockConfigurationCommand({ Bucket: bucket }));
     return answer.ObjectLockConfiguration?.ObjectLockEnabled === 'Enabled';
-  } catch (error) {
-    if (saysNoObjectLock(error)) return false;
+  } catch {
+    // Whether the store has none or will not say: it is not relied on.
     return false;
   }
 }
