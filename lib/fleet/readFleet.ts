@@ -35,6 +35,7 @@ export type FleetFilter = z.infer<typeof FleetFilter>;
 
 export interface FleetLine {
   id: string;
+  version: number;
   assetTag: string;
   serialNumber: string;
   udi: string | null;
@@ -141,6 +142,7 @@ export async function readFleet(
     next: rows.length > filter.limit && last ? JSON.stringify([last.value, last.device.id]) : null,
     rows: page.map(({ device: d, model, signs, ward: wardName }) => ({
       id: d.id,
+      version: d.version,
       assetTag: d.assetTag,
       serialNumber: d.serialNumber,
       udi: d.udi,
