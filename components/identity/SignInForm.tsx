@@ -37,7 +37,7 @@ export function SignInForm({ next }: { next: string }) {
           ? 'E-mail and password do not belong together.'
           : answer.message,
       );
-      if (/^(Start again|Too much time|Too many wrong codes)/.test(answer.message)) setStep('password');
+      if (answer.members.startAgain === true) setStep('password');
       return;
     }
     if (answer.data.next === 'second-factor') {

@@ -3,7 +3,7 @@
 /** What sign-in answers, in words where it refuses. */
 export type AuthAnswer =
   | { ok: true; data: Record<string, unknown> }
-  | { ok: false; status: number; message: string };
+  | { ok: false; status: number; message: string; members: Record<string, unknown> };
 
 /** Call one of the addresses that anybody may call: sign-in, new password, invitation. */
 export async function authCall(path: string, body: Record<string, unknown>): Promise<AuthAnswer> {
@@ -21,8 +21,14 @@ export async function authCall(path: string, body: Record<string, unknown>): Pro
       ok: false,
       status: response.status,
       message: words.find((one): one is string => typeof one === 'string') ?? '',
+      members: data,
     };
   } catch {
-    return { ok: false, status: 0, message: 'The server did not answer. Try again in a moment.' };
+    return {
+      ok: false,
+      status: 0,
+      message: 'The server did not answer. Try again in a moment.',
+      members: {},
+    };
   }
 }

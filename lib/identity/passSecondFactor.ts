@@ -36,8 +36,7 @@ export async function passSecondFactor(
   code: string,
 ): Promise<SignInStep> {
   const personId = await challenged(services, peer);
-  if (!personId)
-    throw new Refusal('sign-in-refused', 'Too much time went by. Start again with your password.');
+  if (!personId) throw startAgain('Too much time went by. Start again with your password.');
   if (factor === 'authenticator' && !(await claimCode(services, personId, code)))
     throw new Refusal('sign-in-refused', 'This code was used already. Wait for the next one.');
   const path = factor === 'authenticator' ? '/two-factor/verify-totp' : '/two-factor/verify-backup-code';
@@ -59,9 +58,11 @@ export async function passSecondFactor(
   );
   if (answer.status === 429) throw waitRefusal(answer.retryAfterSeconds ?? 900);
   if (answer.body.code === 'TOO_MANY_ATTEMPTS_REQUEST_NEW_CODE')
-    throw new Refusal('sign-in-refused', 'Too many wrong codes. Start again with your password.');
+    throw startAgain('Too many wrong codes. Start again with your password.');
   throw new Refusal('sign-in-refused', 'That code is not right.');
 }
+
+const startAgain = (sentence: string) => new Refusal('sign-in-refused', sentence, { startAgain: true });
 
 /** Whose second step this is. The cookie's signature is checked with the code itself. */
 async function challenged(services: Needs, peer: Peer): Promise<string | null> {

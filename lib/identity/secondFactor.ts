@@ -17,6 +17,19 @@ export const WithPassword = z.strictObject({ password: z.string().min(1).max(102
 
 type Needs = Pick<Services, 'database' | 'read' | 'write' | 'clock' | 'env' | 'log'>;
 
+/** Whether a second factor is asked for when this person signs in. */
+export async function hasSecondFactor(
+  services: Pick<Services, 'read'>,
+  person: Pick<Authorized<'self'>, 'id'>,
+): Promise<boolean> {
+  const [row] = await services.read
+    .select({ on: user.twoFactorEnabled })
+    .from(user)
+    .where(eq(user.id, person.id))
+    .limit(1);
+  return row?.on === true;
+}
+
 export interface SecondFactorPlan {
   /** `otpauth://totp/…` (key URI format of authenticators; common practice, no standard). Shown once. */
   uri: string;
@@ -35,12 +48,7 @@ export async function beginSecondFactor(
   password: string,
 ): Promise<SecondFactorPlan> {
   await checkOwnPassword(services, by, password, 'password');
-  const [row] = await services.read
-    .select({ on: user.twoFactorEnabled })
-    .from(user)
-    .where(eq(user.id, by.id))
-    .limit(1);
-  if (row?.on === true)
+  if (await hasSecondFactor(services, by))
     throw new Refusal('not-possible', 'There is an authenticator already. Remove it to set up another.');
   const answer = await callAuth(services, peer, '/two-factor/enable', { password });
   if (answer.status === 429) throw waitRefusal(answer.retryAfterSeconds ?? 60);
