@@ -110,7 +110,8 @@ export class ActivityProbe {
   #bursts(): Span[] {
     const low = this.#low.values.view();
     const broad = this.#broad.values.view();
-    if (low.length < 100) return [];
+    // A clip of a few beats does not tell a burst from a beat.
+    if (low.length * FRAME_SECONDS < 5) return [];
     const median = percentile(low, 0.5);
     const threshold = Math.max(10 * median, isPeriodic(low) ? 2.5 * percentile(low, 0.97) : 0, 0.002);
     const bursts: Span[] = [];
