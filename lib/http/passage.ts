@@ -18,3 +18,9 @@ export function ingestServices(services: Services): IngestServices {
   shared.bellkeepAnalysis ??= createAnalysisPool();
   return { ...services, analysis: shared.bellkeepAnalysis, place: placeRecording };
 }
+
+/** End the analysing threads: for commands that stop. */
+export async function closeAnalysis(): Promise<void> {
+  await shared.bellkeepAnalysis?.close();
+  delete shared.bellkeepAnalysis;
+}
