@@ -8,7 +8,7 @@ export default async function PublicLayout({ children }: { children: ReactNode }
   const { env } = await getServices();
   return (
     <main id="main" className="mx-auto grid min-h-dvh w-full max-w-[560px] content-center gap-2 px-4 py-12">
-      <p className="mb-6 font-plate text-28 leading-none font-semibold">Bellkeep</p>
+      <p className="mb-4 font-plate text-21 leading-none font-semibold text-ink-soft">Bellkeep</p>
       <div>{children}</div>
       <p className="mt-10 border-t border-line pt-3 text-13 text-ink-soft">{env.BELLKEEP_HOSPITAL}</p>
     </main>

@@ -111,6 +111,11 @@ export function actorWords(actor: EntryLike['actor']): string {
   return actor.role ? `${actor.label}, ${ROLE_WORDS[actor.role] ?? actor.role}` : actor.label;
 }
 
+const plainList = (value: unknown): string =>
+  Array.isArray(value) && value.length > 0 ? value.map(text).join(', ') : 'none';
+const roleList = (value: unknown): string =>
+  Array.isArray(value) ? value.map((role) => ROLE_WORDS[text(role)] ?? text(role)).join(', ') : '';
+
 type Sentence = (d: Record<string, unknown>, entry: EntryLike) => string;
 
 const clockWords = (offset: unknown): string | false => {
@@ -192,6 +197,25 @@ const SENTENCES: Record<string, Sentence> = {
   'credential-retired': (d) => join(text(d.label), text(d.why)),
   'credential-revoked': (d, e) =>
     join(text(d.label), `by ${actorWords(e.actor)}`, d.why ? `reason: “${text(d.why)}”` : false),
+  'person-invited': (d, e) =>
+    join(
+      `${text(d.name)} as ${roleList(d.roles)} by ${actorWords(e.actor)}`,
+      d.again === true && 'sent again',
+    ),
+  'invitation-withdrawn': (d, e) => `${text(d.name)} by ${actorWords(e.actor)}`,
+  'person-joined': (_d, e) => `${e.actor.label} as ${roleList(e.after?.roles)}`,
+  'role-given': (d, e) => `${roleList([d.role])} to ${text(d.name)} by ${actorWords(e.actor)}`,
+  'role-taken': (d, e) => `${roleList([d.role])} from ${text(d.name)} by ${actorWords(e.actor)}`,
+  'wards-changed': (_d, e) =>
+    `${plainList(e.before?.wards)} to ${plainList(e.after?.wards)} by ${actorWords(e.actor)}`,
+  'person-left': (d, e) =>
+    `${text(d.name)}, said by ${actorWords(e.actor)}. Reason given: “${text(d.reason)}”`,
+  'signed-in': (d, e) => join(e.actor.label, d.secondFactor ? `with ${text(d.secondFactor)}` : false),
+  'sign-in-refused': (d) => (d.factor ? `Wrong ${text(d.factor)}` : 'Wrong password'),
+  'sessions-ended': (d, e) => `${text(d.count)} by ${actorWords(e.actor)}`,
+  'second-factor-removed': (d, e) =>
+    join(`By ${actorWords(e.actor)}`, d.reason ? `reason: “${text(d.reason)}”` : false),
+  'password-reset': (d, e) => `${e.actor.label}, ${text(d.how)}`,
   'credential-misused': (d, e) => `By ${e.actor.label} or whoever holds its key: ${text(d.why)}`,
 };
 

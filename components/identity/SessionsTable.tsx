@@ -4,7 +4,7 @@ import type { ReactNode } from 'react';
 import { DataTable } from '@/components/ui/DataTable';
 import { Time } from '@/components/ui/Time';
 import { type ColumnOf, tableOf } from '@/components/ui/tableRows';
-import { programWords } from './roleWords';
+import { addressWords, programWords } from './roleWords';
 
 export interface SessionLine {
   id: string;
@@ -22,7 +22,11 @@ const COLUMNS: readonly ColumnOf<SessionLine>[] = [
     cell: (line) => programWords(line.program),
     title: (line) => line.program ?? undefined,
   },
-  { id: 'address', header: 'Address', cell: (line) => <span className="mono">{line.address ?? '—'}</span> },
+  {
+    id: 'address',
+    header: 'Address',
+    cell: (line) => <span className="mono">{addressWords(line.address)}</span>,
+  },
   { id: 'started', header: 'Signed in', cell: (line) => <Time at={line.startedAt} ago /> },
   { id: 'used', header: 'Last used', cell: (line) => <Time at={line.lastUsedAt} ago /> },
 ];

@@ -36,3 +36,13 @@ export function programWords(userAgent: string | null): string {
   if (browser && system) return `${browser} on ${system}`;
   return browser ?? system ?? 'Unknown program';
 }
+
+/** An address as it is written: IPv6 in its short form (RFC 5952), and of that only the network is kept. */
+export function addressWords(address: string | null): string {
+  if (!address?.includes(':')) return address ?? 'unknown';
+  try {
+    return new URL(`http://[${address}]`).hostname.slice(1, -1);
+  } catch {
+    return address;
+  }
+}

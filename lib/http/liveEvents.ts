@@ -5,6 +5,8 @@ import type { Services } from '@/lib/platform/services';
 
 const POLL_MS = 700;
 const BEAT_MS = 20_000;
+/** A stream begins anew after this, so that a session that has ended does not go on listening. */
+const LONGEST_MS = 15 * 60_000;
 const AT_ONCE = 200;
 const STREAMS_A_PERSON = 8;
 
@@ -40,6 +42,20 @@ function audible(person: Person, entry: ThreadEntry): { kind: string; id: string
   });
 }
 
+/** Entries after which a person's sessions may have ended, or may do something else. */
+const CHANGES_AUTHORITY = new Set<string>([
+  'role-given',
+  'role-taken',
+  'person-left',
+  'sessions-ended',
+  'password-reset',
+  'second-factor-set',
+  'second-factor-removed',
+]);
+
+const speaksOf = (person: Person, { entry }: ThreadEntry): boolean =>
+  entry.subjects.some(({ kind, id }) => kind === 'person' && id === person.id);
+
 /**
  * Server-sent events that follow the custody log: what changed, so that pages ask again. The log is in the database, so
  * it does not matter which process the change happened in.
@@ -66,6 +82,8 @@ export async function eventStream(
         try {
           for (const entry of await entriesFrom(services, next, AT_ONCE)) {
             next = entry.sequence + 1;
+            // What one may hear was read when the stream began: it begins anew, or not at all.
+            if (CHANGES_AUTHORITY.has(entry.kind) && speaksOf(person, entry)) return end();
             const subjects = audible(person, entry);
             if (subjects.length > 0)
               say(
@@ -79,12 +97,14 @@ export async function eventStream(
         }
       }, POLL_MS);
       const beat = setInterval(() => say(': still here\n\n'), BEAT_MS);
+      const longest = setTimeout(() => end(), LONGEST_MS);
       let over = false;
       end = () => {
         if (over) return;
         over = true;
         clearInterval(poll);
         clearInterval(beat);
+        clearTimeout(longest);
         state.open.delete(end);
         state.byPerson.set(person.id, Math.max(0, (state.byPerson.get(person.id) ?? 1) - 1));
         try {

@@ -21,8 +21,8 @@ import { problemResponse } from './problem';
 import { getServices } from './services';
 
 type Params = Record<string, string>;
-/** What Next hands to a route beside the request; a catch-all segment is an array. */
-type RouteContext = { params: Promise<Record<string, string | string[] | undefined>> };
+/** What Next hands to a route beside the request: nothing where the address has no parameters, an array for a catch-all. */
+type RouteContext = { params: Promise<Record<string, string | string[] | undefined> | undefined> };
 
 interface Common<Body, Query> {
   body: Body;
@@ -122,7 +122,7 @@ function authorize<K extends PersonRouteKey>(person: SignedIn | null, key: K): A
 
 async function paramsOf(route: RouteContext): Promise<Params> {
   const params: Params = {};
-  for (const [name, value] of Object.entries(await route.params))
+  for (const [name, value] of Object.entries((await route.params) ?? {}))
     if (value !== undefined) params[name] = [value].flat().join('/');
   return params;
 }

@@ -1,4 +1,5 @@
 import { applyMigrations } from '@/db/migrate';
+import { forgetExpired } from '@/lib/identity/forgetExpired';
 import { sweepRecordings } from '@/lib/ingest/sweep';
 import { currentSigningKey } from '@/lib/keys/signingKeys';
 import { Message } from '@/lib/mail/port';
@@ -8,6 +9,7 @@ import { ingestServices } from './passage';
 import { getServices } from './services';
 
 const SWEEP_EVERY_MS = 30_000;
+const TIDY_EVERY_MS = 3_600_000;
 
 /** What one web process does beside answering. All of it may run in several processes at once. */
 export async function startProcess(): Promise<void> {
@@ -31,5 +33,10 @@ export async function startProcess(): Promise<void> {
     }
   }, SWEEP_EVERY_MS);
   sweep.unref();
+  const tidy = () =>
+    forgetExpired(services).catch((error: unknown) =>
+      services.log.error({ err: error }, 'what has ended could not be removed'),
+    );
+  setInterval(tidy, TIDY_EVERY_MS).unref();
   services.log.info({ origin: services.env.BELLKEEP_ORIGIN }, 'Bellkeep is up');
 }

@@ -21,17 +21,17 @@ const words = (most: number) =>
     .string()
     .trim()
     .max(most)
-    .regex(/^[^\p{C}]*$/u, 'no control characters');
+    .regex(/^[^\p{C}]*$/u, 'It holds characters that cannot be seen.');
 
 export const Invitation = z.strictObject({
-  email: z.string().trim().toLowerCase().max(254).pipe(z.email('an e-mail address')),
-  name: words(120).min(1, 'a name'),
+  email: z.string().trim().toLowerCase().max(254).pipe(z.email('This is no e-mail address.')),
+  name: words(120).min(1, 'A name is needed.'),
   jobTitle: words(120)
     .transform((text) => text || null)
     .nullable(),
   roles: z
     .array(z.enum(ROLES))
-    .min(1, 'at least one role')
+    .min(1, 'Choose at least one role.')
     .transform((roles) => ROLES.filter((role) => roles.includes(role))),
   wardIds: z.array(z.string().min(1).max(100)).max(200),
 });

@@ -4,10 +4,13 @@ import nodemailer from 'nodemailer';
 import { newId } from '@/lib/platform/ids';
 import type { Mail } from './port';
 
+/** Well within the lease of the outbox, so that a slow server does not get the same message twice. */
+const TIMEOUTS = { connectionTimeout: 10_000, greetingTimeout: 10_000, socketTimeout: 20_000 };
+
 /** Mail by SMTP, or, without a server to send by, as files that can be opened in any mail program. */
 export function createMail(config: { smtpUrl: string | undefined; folder: string; from: string }): Mail {
   if (config.smtpUrl) {
-    const transport = nodemailer.createTransport(config.smtpUrl);
+    const transport = nodemailer.createTransport({ url: config.smtpUrl, ...TIMEOUTS });
     return {
       kind: 'smtp',
       async send(message) {

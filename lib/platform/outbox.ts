@@ -52,7 +52,8 @@ export async function runOutboxOnce(services: Needs, handlers: Record<string, Ha
       await services.write(async (tx) => {
         await tx
           .update(outbox)
-          .set({ doneAt: services.clock.now(), leasedUntil: null, lastError: null })
+          // What was sent may hold a token that only its receiver should have: nothing of it is kept.
+          .set({ doneAt: services.clock.now(), leasedUntil: null, lastError: null, payload: {} })
           .where(eq(outbox.id, piece.id));
       });
       done++;

@@ -2,6 +2,7 @@ import { ORIGIN } from './services';
 
 export type Handler = (
   request: Request,
+  // Next resolves to nothing where the address has no parameters; types of routes that read them leave that out.
   route: { params: Promise<Record<string, string>> },
 ) => Promise<Response>;
 
@@ -34,7 +35,9 @@ export async function call(handler: Handler, wanted: Call = {}): Promise<Respons
       ? {}
       : { body: typeof wanted.body === 'string' ? wanted.body : JSON.stringify(wanted.body) }),
   });
-  return await handler(request, { params: Promise.resolve(wanted.params ?? {}) });
+  return await handler(request, {
+    params: Promise.resolve(wanted.params as Record<string, string>),
+  });
 }
 
 /** A problem's code: the last part of its type. */

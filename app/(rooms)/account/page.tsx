@@ -32,6 +32,7 @@ export default async function AccountPage() {
       <div className="grid gap-6 plate:grid-cols-[minmax(220px,280px)_minmax(0,1fr)]">
         <DefinitionList
           stacked
+          className="self-start"
           facts={[
             { term: 'E-mail', value: person.email },
             { term: 'Work', value: person.jobTitle },

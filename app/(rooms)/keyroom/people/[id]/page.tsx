@@ -115,6 +115,7 @@ function Facts({ found }: { found: PersonDescription }) {
   return (
     <DefinitionList
       stacked
+      className="self-start"
       facts={[
         { term: 'E-mail', value: found.email },
         { term: 'Work', value: found.jobTitle },
