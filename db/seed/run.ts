@@ -32,7 +32,7 @@ async function seed(): Promise<void> {
   const clock: SeedClock = {
     now: () => at,
     set: (to) => {
-      at = Math.max(at, to);
+      at = Math.max(at, Math.round(to));
     },
   };
   const services = await createServices(env, { clock });

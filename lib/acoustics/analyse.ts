@@ -100,7 +100,7 @@ class ClipAnalysis {
         spectrogram: null,
       };
     }
-    const { measures, spectrogram } = this.#measure(format, decode, facts);
+    const { measures, spectrogram } = this.#measure(format, decode, facts, limits);
     const findings = judge(measures, facts, limits);
     measures.cleanStretch = cleanStretch(measures, findings);
     return {
@@ -118,9 +118,12 @@ class ClipAnalysis {
     format: AudioFormat,
     decode: DecodeResult,
     facts: JudgingFacts,
+    limits: JudgingLimits,
   ): { measures: Measures; spectrogram: Spectrogram } {
     const durationSeconds = decode.frames / format.sampleRateHz;
-    const each = this.#channels.map((channel) => channel.finish(durationSeconds));
+    const each = this.#channels.map((channel) =>
+      channel.finish(durationSeconds, limits.minimumSecondsForRates),
+    );
     // What is heard and drawn of several channels is the louder one.
     const main = each.reduce((best, one) =>
       (one.levels.activeLevelDbfsSine ?? -999) > (best.levels.activeLevelDbfsSine ?? -999) ? one : best,

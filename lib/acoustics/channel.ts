@@ -1,6 +1,9 @@
 import { Decimator, decimationFor } from './dsp/decimate';
 import { SpectrogramProbe } from './pictures/spectrogram';
-import { NOTHING_SPECTRAL } from './spectral/nothing';
+import { BandProbe } from './spectral/bands';
+import { BandwidthProbe } from './spectral/bandwidth';
+import { ExplosiveProbe } from './spectral/explosive';
+import { TonalProbe } from './spectral/tonal';
 import { ActivityProbe } from './time/activity';
 import { DropoutProbe } from './time/dropouts';
 import { LevelProbe, stepOf } from './time/levels';
@@ -17,6 +20,10 @@ export class ChannelAnalysis {
   readonly #decimator: Decimator;
   readonly #activity: ActivityProbe;
   readonly #spectrogram: SpectrogramProbe;
+  readonly #tonal: TonalProbe;
+  readonly #bands: BandProbe;
+  readonly #bandwidth: BandwidthProbe;
+  readonly #explosive: ExplosiveProbe;
 
   constructor(format: AudioFormat) {
     const rate = format.sampleRateHz;
@@ -29,7 +36,13 @@ export class ChannelAnalysis {
     this.#decimator = new Decimator(decimationFor(rate));
     const lowRate = rate / this.#decimator.factor;
     this.#activity = new ActivityProbe(lowRate);
-    this.#spectrogram = new SpectrogramProbe(lowRate);
+    this.#spectrogram = new SpectrogramProbe(lowRate, (power, scale) => this.#tonal.push(power, scale));
+    const { binHz, bins, columnSeconds, windowSeconds } = this.#spectrogram.layout;
+    this.#tonal = new TonalProbe(binHz, bins, columnSeconds, windowSeconds);
+    this.#bands = new BandProbe(lowRate);
+    this.#bandwidth = new BandwidthProbe(rate, format.bitDepth);
+    // Widths of a millisecond want the file's own rate, up to where it no longer matters.
+    this.#explosive = new ExplosiveProbe(rate);
   }
 
   push(samples: Float32Array): void {
@@ -37,13 +50,19 @@ export class ChannelAnalysis {
     this.#rails.push(samples);
     this.#dropouts.push(samples);
     this.#spikes.push(samples);
+    this.#bandwidth.push(samples);
+    this.#explosive.push(samples);
     const low = this.#decimator.push(samples);
     this.#activity.push(low);
     this.#spectrogram.push(low);
+    this.#bands.push(low);
   }
 
-  finish(durationSeconds: number) {
+  finish(durationSeconds: number, minimumSecondsForRates: number) {
     const { min, max } = this.#levels;
+    const bands = this.#bands.finish(minimumSecondsForRates);
+    // Harmonics that are too weak to be told of as hum still draw a line.
+    const lines = bands.hum ? [1, 2, 3, 4, 5, 6].map((n) => n * (bands.hum?.frequencyHz ?? 0)) : [];
     return {
       levels: this.#levels.finish(),
       rails: this.#rails.finish(),
@@ -51,7 +70,12 @@ export class ChannelAnalysis {
       spikes: this.#spikes.finish(),
       activity: this.#activity.finish(durationSeconds),
       spectrogram: this.#spectrogram.finish(),
-      spectral: NOTHING_SPECTRAL,
+      spectral: {
+        ...bands,
+        ...this.#bandwidth.finish(),
+        tonal: this.#tonal.finish(lines),
+        explosive: this.#explosive.finish(),
+      },
     };
   }
 }

@@ -144,8 +144,6 @@ export interface Measures extends ChannelMeasures {
   frames: number;
   durationSeconds: number;
   declaredFrames: number | null;
-  /** Peak of the signal between samples too (4x oversampled, ITU-R BS.1770 annex 2), dBFS. */
-  truePeakDbfs: number | null;
   hum: Hum | null;
   bandwidthHz: number | null;
   brickWall: boolean;

@@ -15,7 +15,9 @@ const shared = globalThis as { bellkeepAnalysis?: AnalysisPool };
 
 /** The services of a request, with what only ingestion needs: the analysing threads and the way to filing. */
 export function ingestServices(services: Services): IngestServices {
-  shared.bellkeepAnalysis ??= createAnalysisPool();
+  shared.bellkeepAnalysis ??= createAnalysisPool({
+    onFailure: (why) => services.log.error({ why }, 'a clip could not be analysed'),
+  });
   return { ...services, analysis: shared.bellkeepAnalysis, place: placeRecording };
 }
 

@@ -1,4 +1,6 @@
 import { availableParallelism } from 'node:os';
+import { join } from 'node:path';
+import { pathToFileURL } from 'node:url';
 import { Worker } from 'node:worker_threads';
 import type { AnalysisRequest, AnalysisResult, FromWorker, ToWorker } from './messages';
 
@@ -22,20 +24,37 @@ const SILENCE_MS = 60_000;
 
 interface Thread {
   worker: Worker;
+  ready: Promise<void>;
   busy: boolean;
 }
 
 function startWorker(): Worker {
   // Under the framework the thread's code is bundled; elsewhere it is read as TypeScript.
-  const worker = new Worker(new URL('./worker.ts', import.meta.url), {
-    execArgv: process.env.NEXT_RUNTIME ? [] : ['--import', 'tsx'],
-  });
+  const worker = process.env.NEXT_RUNTIME
+    ? new Worker(new URL('./worker.ts', import.meta.url))
+    : new Worker(
+        pathToFileURL(join(/* turbopackIgnore: true */ process.cwd(), 'lib/ingest/workerStart.mjs')),
+      );
   worker.unref();
   return worker;
 }
 
-/** @param size threads; two at least, so that a long clip leaves one for the others */
-export function createAnalysisPool(size = Math.max(2, availableParallelism())): AnalysisPool {
+/** Resolves when the thread's code runs. A thread that cannot even start is our fault, not the clip's. */
+function whenReady(worker: Worker): Promise<void> {
+  return new Promise((resolve, reject) => {
+    worker.once('message', () => resolve());
+    worker.once('error', (cause) => reject(new Error('the analysing thread did not start', { cause })));
+    worker.once('exit', (code) =>
+      reject(new Error(`the analysing thread ended with ${code} before it began`)),
+    );
+  });
+}
+
+/** @param options.size threads; two at least, so that a long clip leaves one for the others */
+export function createAnalysisPool(
+  options: { size?: number; onFailure?: (why: string) => void } = {},
+): AnalysisPool {
+  const size = options.size ?? Math.max(2, availableParallelism());
   const threads: Thread[] = [];
   const waiting: { long: boolean; resolve: (thread: Thread) => void }[] = [];
   let longRunning = 0;
@@ -44,7 +63,11 @@ export function createAnalysisPool(size = Math.max(2, availableParallelism())): 
     const idle = threads.find((thread) => !thread.busy);
     if (idle) return idle;
     if (threads.length >= size) return null;
-    const thread = { worker: startWorker(), busy: false };
+    const worker = startWorker();
+    const ready = whenReady(worker);
+    // Asked for by whoever uses the thread; until then it must not count as unheard.
+    ready.catch(() => undefined);
+    const thread = { worker, ready, busy: false };
     threads.push(thread);
     return thread;
   };
@@ -87,7 +110,8 @@ export function createAnalysisPool(size = Math.max(2, availableParallelism())): 
       const thread = await take(long);
       let broken = true;
       try {
-        const result = await converse(thread.worker, bytes, request);
+        await thread.ready;
+        const result = await converse(thread.worker, bytes, request, options.onFailure);
         broken = result === 'broken';
         return result === 'broken' ? null : result;
       } finally {
@@ -105,6 +129,7 @@ async function converse(
   worker: Worker,
   bytes: AsyncIterable<Uint8Array>,
   request: AnalysisRequest,
+  onFailure: ((why: string) => void) | undefined,
 ): Promise<AnalysisResult | null | 'broken'> {
   let underWay = 0;
   let roomFor: (() => void) | null = null;
@@ -117,19 +142,27 @@ async function converse(
       resolve(value);
     };
   });
-  let silence = setTimeout(() => settle('broken'), SILENCE_MS);
+  const onSilence = () => onDeath(new Error('the thread said nothing for a minute'));
+  let silence = setTimeout(onSilence, SILENCE_MS);
   const stillThere = () => {
     clearTimeout(silence);
-    silence = setTimeout(() => settle('broken'), SILENCE_MS);
+    silence = setTimeout(onSilence, SILENCE_MS);
   };
   const onMessage = (message: FromWorker) => {
     stillThere();
     if (message.type === 'taken') {
       underWay--;
       roomFor?.();
-    } else settle(message.type === 'result' ? message.result : null);
+    } else if (message.type === 'result') settle(message.result);
+    else if (message.type === 'failed') {
+      onFailure?.(message.message);
+      settle(null);
+    }
   };
-  const onDeath = () => settle('broken');
+  const onDeath = (why?: unknown) => {
+    if (over === undefined) onFailure?.(why instanceof Error ? why.message : 'the thread ended');
+    settle('broken');
+  };
   worker.on('message', onMessage).on('error', onDeath).on('exit', onDeath);
   const say = (message: ToWorker, transfer: ArrayBuffer[] = []) => worker.postMessage(message, transfer);
   try {

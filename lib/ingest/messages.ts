@@ -24,7 +24,9 @@ export type ToWorker =
   | { type: 'start'; request: AnalysisRequest }
   | { type: 'chunk'; bytes: Uint8Array }
   | { type: 'end' };
+/** `ready` once, when the thread's code runs. */
 export type FromWorker =
+  | { type: 'ready' }
   | { type: 'taken' }
   | { type: 'result'; result: AnalysisResult }
   | { type: 'failed'; message: string };

@@ -105,3 +105,5 @@ parentPort?.on('message', (message: ToWorker) => {
       say({ type: 'failed', message: error instanceof Error ? error.message : String(error) }),
   );
 });
+
+say({ type: 'ready' });

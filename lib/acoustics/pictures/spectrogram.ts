@@ -30,7 +30,11 @@ export class SpectrogramProbe {
   #merged = 1;
   #inColumn = 0;
 
-  constructor(private readonly rateHz: number) {
+  /** @param onColumn is given each column's power before any merging, with its scale to a full-scale sine */
+  constructor(
+    private readonly rateHz: number,
+    private readonly onColumn?: (power: Float64Array, scale: number) => void,
+  ) {
     this.#size = 2 ** Math.max(5, Math.round(Math.log2(rateHz * WINDOW_SECONDS)));
     this.#hop = this.#size / 4;
     this.#bins = Math.min(this.#size / 2, Math.floor((HIGHEST_HZ * this.#size) / rateHz)) + 1;
@@ -42,6 +46,16 @@ export class SpectrogramProbe {
     this.#scale = 1 / (this.#size / 4) ** 2;
     this.#queue = new Float32Array(this.#size * 2);
     this.#data = new Float32Array(256 * this.#bins);
+  }
+
+  /** How its columns lie: what a listener on them needs. */
+  get layout() {
+    return {
+      binHz: this.rateHz / this.#size,
+      bins: this.#bins,
+      columnSeconds: this.#hop / this.rateHz,
+      windowSeconds: this.#size / this.rateHz,
+    };
   }
 
   push(samples: Float32Array): void {
@@ -62,6 +76,7 @@ export class SpectrogramProbe {
     for (let i = 0; i < this.#size; i++)
       this.#frame[i] = (this.#queue[at + i] as number) * (this.#window[i] as number);
     this.#spectrum.of(this.#frame, this.#power);
+    this.onColumn?.(this.#power, this.#scale);
     if (this.#inColumn === 0 && (this.#columns + 1) * this.#bins > this.#data.length) {
       const grown = new Float32Array(Math.min(this.#data.length * 2, MOST_COLUMNS * this.#bins));
       grown.set(this.#data);

@@ -1,0 +1,109 @@
+import { type Biquad, passFilter } from '../dsp/biquad';
+import { percentile } from '../dsp/percentile';
+import type { Explosive } from '../types';
+
+const THRESHOLD = 6;
+/** Above the heart: its first sound would pass for a burst at 100 Hz. */
+const HIGH_PASS_HZ = 150;
+/** Deviation is estimated from every so many samples: it is a median of hundreds either way. */
+const SAMPLED = 8;
+const CONTEXT_SECONDS = 0.05;
+const LONGEST_SECONDS = 0.025;
+/** Below this rate an initial deflection is two or three samples: only the count and the time are told. */
+const LEAST_RATE_FOR_WIDTH_HZ = 8000;
+const LEAST_SAMPLES = 3;
+const DENSEST_A_SECOND = 30;
+const MOST = 500;
+
+/**
+ * Short explosive places: above 150 Hz (twice), beyond 6 times the local median deviation, and back to it within 25 ms. The
+ * initial deflection is from onset to the first crossing of zero, two cycles to the fourth. Published means: fine 0.7
+ * and 5 ms, coarse 1.5 and 10 ms (ATS, after Piirila and Sovijarvi 1995). One- and two-sample spikes are clicks. False
+ * friends: hair, gown, contact, dropouts; in a second with more than thirty it is not these, and nothing is told.
+ */
+export class ExplosiveProbe {
+  readonly #filters: Biquad[];
+  readonly #block: number;
+  readonly #found: Explosive[] = [];
+  #work = new Float32Array(0);
+  #kept = 0;
+  #frames = 0;
+
+  constructor(private readonly rateHz: number) {
+    this.#filters = [passFilter('high', HIGH_PASS_HZ, rateHz), passFilter('high', HIGH_PASS_HZ, rateHz)];
+    this.#block = Math.round(CONTEXT_SECONDS * rateHz);
+  }
+
+  push(samples: Float32Array): void {
+    const total = this.#kept + samples.length;
+    if (this.#work.length < total) {
+      const grown = new Float32Array(total + 4096);
+      grown.set(this.#work.subarray(0, this.#kept));
+      this.#work = grown;
+    }
+    const fresh = this.#work.subarray(this.#kept, total);
+    this.#filters[0]?.run(samples, fresh, samples.length);
+    this.#filters[1]?.run(fresh, fresh, samples.length);
+    const offset = this.#frames - this.#kept;
+    let at = 0;
+    // Each block is looked at with the one after it, so that an event is whole.
+    for (; at + 3 * this.#block <= total; at += this.#block)
+      this.#look(this.#work.subarray(at, at + 3 * this.#block), offset + at);
+    this.#work.copyWithin(0, at, total);
+    this.#kept = total - at;
+    this.#frames += samples.length;
+  }
+
+  /** @param x three blocks; events that begin in the middle one are told */
+  #look(x: Float32Array, offset: number): void {
+    const sampled: number[] = [];
+    for (let i = 0; i < x.length; i += SAMPLED) sampled.push(Math.abs(x[i] as number));
+    const deviation = percentile(sampled, 0.5) * 1.4826;
+    const limit = Math.max(THRESHOLD * deviation, 0.004);
+    const longest = Math.round(LONGEST_SECONDS * this.rateHz);
+    for (let i = this.#block; i < 2 * this.#block; i++) {
+      if (Math.abs(x[i] as number) < limit) continue;
+      // Risen within a millisecond: a breath swells, a burst does not.
+      const before = Math.abs(x[Math.max(0, i - Math.ceil(this.rateHz / 1000))] as number);
+      let end = i;
+      for (let quiet = 0; end < x.length && quiet < this.rateHz * 0.004; end++)
+        quiet = Math.abs(x[end] as number) < limit / 2 ? quiet + 1 : 0;
+      const length = end - i;
+      if (before < limit && length > LEAST_SAMPLES && length < longest + this.rateHz * 0.004)
+        this.#note(x, i, offset);
+      i = end;
+    }
+  }
+
+  #note(x: Float32Array, at: number, offset: number): void {
+    if (this.#found.length >= MOST) return;
+    // Back to the crossing before the threshold was passed: the onset.
+    let onset = at;
+    const sign = Math.sign(x[at] as number);
+    while (onset > 0 && Math.sign(x[onset - 1] as number) === sign && at - onset < this.rateHz * 0.002)
+      onset--;
+    const crossings: number[] = [];
+    for (let i = onset + 1; i < x.length && crossings.length < 4; i++) {
+      const [a, b] = [x[i - 1] as number, x[i] as number];
+      if (a !== 0 && Math.sign(a) !== Math.sign(b)) crossings.push(i - 1 + a / (a - b));
+    }
+    const ms = (crossing: number | undefined) =>
+      crossing === undefined || this.rateHz < LEAST_RATE_FOR_WIDTH_HZ
+        ? null
+        : ((crossing - onset) / this.rateHz) * 1000;
+    this.#found.push({
+      startSeconds: (offset + onset) / this.rateHz,
+      initialDeflectionMs: ms(crossings[0]),
+      twoCycleMs: ms(crossings[3]),
+    });
+  }
+
+  finish(): Explosive[] {
+    const seconds = new Map<number, number>();
+    for (const { startSeconds } of this.#found)
+      seconds.set(Math.floor(startSeconds), (seconds.get(Math.floor(startSeconds)) ?? 0) + 1);
+    return this.#found.filter(
+      ({ startSeconds }) => (seconds.get(Math.floor(startSeconds)) ?? 0) <= DENSEST_A_SECOND,
+    );
+  }
+}
