@@ -1,6 +1,7 @@
 import { createHmac } from 'node:crypto';
-import { account, personRole, personWard, user, ward } from '@/db/schema';
-import { authOf } from '@/lib/identity/auth';
+import { eq } from 'drizzle-orm';
+import { account, personRole, personWard, session, user, ward } from '@/db/schema';
+import { authOf, SESSION_SECONDS } from '@/lib/identity/auth';
 import { hashPassword } from '@/lib/identity/password';
 import type { Permission, Role } from '@/lib/identity/permissions';
 import type { Authorized } from '@/lib/platform/authority';
@@ -73,6 +74,15 @@ export async function addWard(house: House, name: string): Promise<string> {
 export async function sessionOf(house: House, person: Pick<TestPerson, 'id'>): Promise<string> {
   const context = await authOf(house.services).$context;
   const made = await context.internalAdapter.createSession(person.id);
+  // By the clock of the house, which may be ahead of the one that the session was made by.
+  const at = new Date(house.clock.now());
+  const expiresAt = new Date(at.getTime() + SESSION_SECONDS * 1000);
+  await house.services.write(async (tx) => {
+    await tx
+      .update(session)
+      .set({ createdAt: at, updatedAt: at, expiresAt })
+      .where(eq(session.token, made.token));
+  });
   const signature = createHmac('sha256', house.services.env.BELLKEEP_AUTH_SECRET)
     .update(made.token)
     .digest('base64');
