@@ -8,6 +8,8 @@ import type { S3Request } from './request';
 export interface Behaviour {
   /** Carry a checksum header without looking at the bytes, as some real clusters do. */
   ignoreSignedChecksum: boolean;
+  /** Pass over conditions on writes and on the source of a copy, as some real clusters do. */
+  ignoreWriteConditions: boolean;
   /** Answer 501 to bodies with trailing headers. */
   refuseStreamedTrailers: boolean;
   /** `absent`: buckets have no lock configuration (400); `unknown`: the store does not know the operations (501). */

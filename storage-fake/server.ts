@@ -28,6 +28,7 @@ export interface StorageFakeOptions {
   nowMs?: () => number;
   ignoreSignedChecksum?: boolean;
   refuseStreamedTrailers?: boolean;
+  ignoreWriteConditions?: boolean;
   /** true: buckets without a lock configuration (400 InvalidRequest). 'not-implemented': a store without locks (501). */
   noObjectLock?: boolean | 'not-implemented';
   /** Switch faults over HTTP at `/-/faults`, without credentials. */
@@ -57,6 +58,7 @@ export async function startStorageFake(options: StorageFakeOptions): Promise<Sto
   const behaviour: Behaviour = {
     ignoreSignedChecksum: options.ignoreSignedChecksum ?? false,
     refuseStreamedTrailers: options.refuseStreamedTrailers ?? false,
+    ignoreWriteConditions: options.ignoreWriteConditions ?? false,
     objectLock: noObjectLock === false ? 'present' : noObjectLock === true ? 'absent' : 'unknown',
     allowedOrigins: options.allowedOrigins ?? ['*'],
     region,
@@ -108,7 +110,7 @@ function listen(server: Server, port: number, host: string): Promise<void> {
 
 const USAGE = `storage-fake --port N --dir D --access-key K --secret-key S --bucket B [--bucket B2 ...]
   [--host 127.0.0.1] [--region us-east-1] [--domain D ...] [--faults] [--allow-origin O ...]
-  [--ignore-signed-checksum] [--refuse-streamed-trailers] [--no-object-lock]`;
+  [--ignore-signed-checksum] [--refuse-streamed-trailers] [--ignore-write-conditions] [--no-object-lock]`;
 
 async function main(): Promise<void> {
   const { values } = parseArgs({
@@ -125,6 +127,7 @@ async function main(): Promise<void> {
       'allow-origin': { type: 'string', multiple: true },
       'ignore-signed-checksum': { type: 'boolean' },
       'refuse-streamed-trailers': { type: 'boolean' },
+      'ignore-write-conditions': { type: 'boolean' },
       'no-object-lock': { type: 'boolean' },
     },
   });
@@ -145,6 +148,7 @@ async function main(): Promise<void> {
     faultsOverHttp: values.faults ?? false,
     ignoreSignedChecksum: values['ignore-signed-checksum'] ?? false,
     refuseStreamedTrailers: values['refuse-streamed-trailers'] ?? false,
+    ignoreWriteConditions: values['ignore-write-conditions'] ?? false,
     noObjectLock: values['no-object-lock'] ?? false,
   });
   const stop = (): void => {

@@ -1,7 +1,8 @@
 import { randomUUID } from 'node:crypto';
-import { GetObjectLockConfigurationCommand } from '@aws-sdk/client-s3';
+import { PutObjectCommand } from '@aws-sdk/client-s3';
 import type { Connection } from './client';
 import { toStorageError } from './errors';
+import { hasObjectLock } from './lock';
 import type { CheckReport, CheckStep, Storage } from './port';
 
 /**
@@ -28,14 +29,21 @@ export async function checkStorage(
       steps.push({ name, ok: false, detail });
     }
   };
-  const put = () => storage.put({ key, body, contentType: 'text/plain', ifAbsent: true });
   await step('write', async () => {
-    if ((await put()).outcome !== 'stored') throw new Unexpected('a new key was said to exist');
+    const { outcome } = await storage.put({ key, body, contentType: 'text/plain', ifAbsent: true });
+    if (outcome !== 'stored') throw new Unexpected('a new key was said to exist');
     return `${body.length} bytes`;
   });
   await step('refuse to overwrite', async () => {
-    if ((await put()).outcome !== 'exists')
-      throw new Unexpected('the store overwrote an object it was told to leave');
+    // Past the port, which looks first: this is about the store.
+    const { client, bucket } = connection;
+    const again = new PutObjectCommand({ Bucket: bucket, Key: key, Body: body, IfNoneMatch: '*' });
+    const code = await client.send(again).then(
+      () => 'overwritten',
+      (error: unknown) => toStorageError(error, 'put', key).code,
+    );
+    if (code === 'overwritten') throw new Unexpected('the store overwrote an object it was told to leave');
+    if (code !== 'precondition') throw new Unexpected(code);
     return 'conditional writes are kept';
   });
   await step('read', async () => {
@@ -54,17 +62,11 @@ export async function checkStorage(
     return 'the object is gone';
   });
   const written = steps[0]?.ok === true;
-  return { ok: steps.every(({ ok }) => ok), steps, objectLock: written && (await hasObjectLock(connection)) };
+  return {
+    ok: steps.every(({ ok }) => ok),
+    steps,
+    objectLock: written && (await hasObjectLock(connection).catch(() => false)),
+  };
 }
 
 class Unexpected extends Error {}
-
-async function hasObjectLock({ client, bucket }: Connection): Promise<boolean> {
-  try {
-    const answer = await client.send(new GetObjectLockConfigurationCommand({ Bucket: bucket }));
-    return answer.ObjectLockConfiguration?.ObjectLockEnabled === 'Enabled';
-  } catch {
-    // Whether the store has none or will not say: it is not relied on.
-    return false;
-  }
-}

@@ -96,19 +96,3 @@ function strippedCause(thrown: Thrown): Error {
   cause.name = name;
   return cause;
 }
-
-/** True where the store says that it does not know object lock, or that this bucket has none. */
-export function saysNoObjectLock(error: unknown): boolean {
-  const thrown = (typeof error === 'object' && error !== null ? error : {}) as Thrown;
-  const name = thrown.Code ?? thrown.name ?? '';
-  const status = thrown.$metadata?.httpStatusCode;
-  return (
-    status === 501 ||
-    ['NotImplemented', 'ObjectLockConfigurationNotFoundError', 'NoSuchObjectLockConfiguration'].includes(
-      name,
-    ) ||
-    (status === 400 &&
-      name === 'InvalidRequest' &&
-      /object lock|objectlock|bucket is missing/i.test(thrown.message ?? ''))
-  );
-}

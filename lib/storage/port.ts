@@ -73,6 +73,8 @@ export interface Seal {
   /** Of the object at `from`, as `head` or `getStream` gave it: other bytes are not sealed. */
   expectedEtag: string;
   contentLength: number;
+  /** 32 bytes. Needed only on stores that give a copy a tag of its own: then the copy is read and hashed. */
+  sha256?: Uint8Array;
 }
 
 export interface ListPage {
@@ -102,7 +104,7 @@ export interface Storage {
   presignPut(request: PresignPut): Promise<Presigned & { method: 'PUT' }>;
   /** An address that serves the object as an attachment with its real type. */
   presignGet(request: PresignGet): Promise<Presigned & { method: 'GET' }>;
-  /** `exists`: there was something already and `ifAbsent` was asked for. */
+  /** `exists`: there was something already and `ifAbsent` was asked for. `lock` is what the store shows afterwards. */
   put(request: Put): Promise<{ outcome: 'stored' | 'exists'; lock: Lock }>;
   /**
    * Bytes `from` to `to`, both inclusive, zero-based.
@@ -116,14 +118,16 @@ export interface Storage {
   head(key: string): Promise<Head | null>;
   /**
    * Copy an object inside the store to the key where it stays, and lock it there. Never replaces what stands there:
-   * the same bytes are `already`, others are `exists` as an error. Safe to repeat after any failure.
+   * the same bytes are `already`, others are the error `exists`; `precondition` says that the source has changed.
+   * Safe to repeat after any failure.
    *
-   * Durable when it returns: the copy is at `to`; the object at `from` is left for the caller to remove.
+   * Durable when it returns: the copy is at `to`; the object at `from` is left for the caller to remove. `lock` is
+   * what the store shows, not what it was asked for.
    */
   seal(request: Seal): Promise<{ outcome: 'sealed' | 'already'; lock: Lock; etag: string }>;
   /** Keys in the order of their UTF-8 bytes. */
   list(prefix: string, options?: { after?: string; limit?: number }): Promise<ListPage>;
-  /** One that is not there is no error; one that is locked is `locked`. */
+  /** With all its versions. One that is not there is no error; one that is locked is `locked`, and stays. */
   remove(key: string): Promise<void>;
   /** Lengthen the retention of an object. `none` where the store has no object lock. */
   setRetention(key: string, untilMs: number): Promise<Lock>;

@@ -9,7 +9,7 @@ export const plainEtag = (etag: string | undefined): string => (etag ?? '').repl
 export async function head(
   { client, bucket }: Connection,
   key: string,
-): Promise<(Head & { sealedFrom?: string }) | null> {
+): Promise<(Head & { versionId?: string }) | null> {
   try {
     const found = await client.send(
       new HeadObjectCommand({ Bucket: bucket, Key: key, ChecksumMode: 'ENABLED' }),
@@ -25,7 +25,7 @@ export async function head(
         ? { retainUntilMs: found.ObjectLockRetainUntilDate.getTime() }
         : {}),
       ...(found.ObjectLockLegalHoldStatus ? { legalHold: found.ObjectLockLegalHoldStatus === 'ON' } : {}),
-      ...(found.Metadata?.['sealed-from'] ? { sealedFrom: found.Metadata['sealed-from'] } : {}),
+      ...(found.VersionId ? { versionId: found.VersionId } : {}),
     };
   } catch (error) {
     if (toStorageError(error, 'head', key).code === 'not-found') return null;

@@ -1,10 +1,12 @@
 import { checkStorage } from './checkStorage';
 import { connect, type StorageConfig } from './client';
+import { setRetention } from './lock';
 import type { Storage } from './port';
 import { presignGet, presignPut } from './presign';
 import { getBytes, getStream, head, list } from './read';
+import { remove } from './remove';
 import { seal } from './seal';
-import { put, remove, setRetention } from './write';
+import { put } from './write';
 
 export type { StorageConfig, StorageRequest } from './client';
 

@@ -1,9 +1,11 @@
+import { createHash } from 'node:crypto';
 import { CopyObjectCommand } from '@aws-sdk/client-s3';
 import type { Connection } from './client';
-import { StorageError, saysNoObjectLock, toStorageError } from './errors';
-import type { Lock, Seal } from './port';
-import { head } from './read';
-import { setRetention } from './write';
+import { StorageError, toStorageError } from './errors';
+import { isNotImplemented, setRetention } from './lock';
+import type { Head, Lock, Seal } from './port';
+import { getStream, head } from './read';
+import { remove } from './remove';
 
 interface Sealed {
   outcome: 'sealed' | 'already';
@@ -12,17 +14,17 @@ interface Sealed {
 }
 
 /**
- * Copy to the final key and lock, never replacing what stands there.
+ * Copy to the final key, look at what came of it, and lock it.
  *
- * The lock travels with the copy, so that there is no moment at which the final object exists unlocked. The source's
- * ETag is kept with the copy: a store may give the copy another one, and a later run must know it again.
+ * The copy asks the store to take only the bytes that were looked at and to replace nothing. Some stores pass over
+ * both, so what stands at the final key is compared before and after, and the lock, which cannot be taken back, comes
+ * last. Died between copy and lock: the next call finds the copy and locks it.
  */
 export async function seal(connection: Connection, request: Seal): Promise<Sealed> {
   const before = await standing(connection, request);
   if (before !== null) return before;
-  let lock: Lock = 'compliance';
   try {
-    lock = await copy(connection, request);
+    await copy(connection, request);
   } catch (error) {
     const { code } = toStorageError(error, 'seal', request.to);
     // Refused for what stands there now, or the source is gone: another run may have sealed it in between.
@@ -33,66 +35,60 @@ export async function seal(connection: Connection, request: Seal): Promise<Seale
     throw error;
   }
   const made = await head(connection, request.to);
-  if (made === null || made.contentLength !== request.contentLength) {
-    throw new StorageError('bad-response', 'seal', request.to);
+  if (made === null) throw new StorageError('bad-response', 'seal', request.to);
+  if (!(await isExpected(connection, request, made))) {
+    await takeBack(connection, request, made);
+    throw new StorageError('precondition', 'seal', request.to);
   }
-  return { outcome: 'sealed', lock, etag: made.etag };
+  return { outcome: 'sealed', lock: await lockAt(connection, request, made), etag: made.etag };
 }
 
 /** What is at the final key: null for nothing, otherwise our bytes with their lock made sure of, or an error. */
 async function standing(connection: Connection, request: Seal): Promise<Sealed | null> {
   const found = await head(connection, request.to);
   if (found === null) return null;
-  const same =
-    found.contentLength === request.contentLength &&
-    (found.etag === request.expectedEtag || found.sealedFrom === request.expectedEtag);
-  if (!same) throw new StorageError('exists', 'seal', request.to);
-  return {
-    outcome: 'already',
-    lock: await ensureLock(connection, request, found.retainUntilMs ?? 0),
-    etag: found.etag,
-  };
+  if (!(await isExpected(connection, request, found))) throw new StorageError('exists', 'seal', request.to);
+  return { outcome: 'already', lock: await lockAt(connection, request, found), etag: found.etag };
 }
 
-async function ensureLock(connection: Connection, request: Seal, untilMs: number): Promise<Lock> {
-  if (untilMs > 0 && untilMs >= floorToSecond(request.retainUntilMs)) return 'compliance';
+/** The same tag is the same bytes. Another tag may still be, where a store gives a copy its own: then they are hashed. */
+async function isExpected(connection: Connection, request: Seal, found: Head): Promise<boolean> {
+  if (found.contentLength !== request.contentLength) return false;
+  if (found.etag === request.expectedEtag) return true;
+  if (request.sha256 === undefined) return false;
+  const hash = createHash('sha256');
+  const { body } = await getStream(connection, request.to);
+  for await (const piece of body) hash.update(piece);
+  return hash.digest().equals(request.sha256);
+}
+
+/** Remove a copy of other bytes than were looked at, if it is certain that it was ours: it has the tag of the source. */
+async function takeBack(connection: Connection, request: Seal, made: Head): Promise<void> {
+  const source = await head(connection, request.from);
+  if (source !== null && source.etag === made.etag) await remove(connection, request.to);
+}
+
+async function lockAt(connection: Connection, request: Seal, found: Head): Promise<Lock> {
+  const shown = Math.floor((found.retainUntilMs ?? 0) / 1000);
+  if (shown > 0 && shown >= Math.floor(request.retainUntilMs / 1000)) return 'compliance';
   if (request.retainUntilMs <= connection.nowMs()) return 'none';
   return setRetention(connection, request.to, request.retainUntilMs);
 }
 
-/** Stores keep the date in seconds or milliseconds. */
-const floorToSecond = (ms: number): number => Math.floor(ms / 1000) * 1000;
-
-/**
- * Copy, leaving away what the store does not know: first the lock, then the condition on the target. Without the
- * condition the look at the target before is what protects it, and two runs copy the same bytes.
- */
-async function copy(connection: Connection, request: Seal): Promise<Lock> {
-  const retains = request.retainUntilMs > connection.nowMs();
-  const ways = [
-    { condition: true, locked: true },
-    { condition: true, locked: false },
-    { condition: false, locked: true },
-    { condition: false, locked: false },
-  ].filter(({ locked }) => retains || !locked);
-  for (const [i, way] of ways.entries()) {
-    try {
-      await sendCopy(connection, request, way);
-      return way.locked ? 'compliance' : 'none';
-    } catch (error) {
-      if (i === ways.length - 1 || !saysUnknown(error)) throw error;
-    }
+async function copy(connection: Connection, request: Seal): Promise<void> {
+  try {
+    await sendCopy(connection, request, '*');
+  } catch (error) {
+    if (!isNotImplemented(error)) throw error;
+    // A store that does not know the condition on the target.
+    await sendCopy(connection, request, undefined);
   }
-  throw new StorageError('bad-response', 'seal', request.to);
 }
-
-const saysUnknown = (error: unknown): boolean =>
-  saysNoObjectLock(error) || toStorageError(error, 'seal', '').status === 501;
 
 async function sendCopy(
   { client, bucket }: Connection,
   request: Seal,
-  { condition, locked }: { condition: boolean; locked: boolean },
+  ifNoneMatch: '*' | undefined,
 ): Promise<void> {
   await client.send(
     new CopyObjectCommand({
@@ -100,15 +96,10 @@ async function sendCopy(
       Key: request.to,
       CopySource: `${bucket}/${request.from.split('/').map(encodeURIComponent).join('/')}`,
       CopySourceIfMatch: `"${request.expectedEtag}"`,
-      IfNoneMatch: condition ? '*' : undefined,
+      IfNoneMatch: ifNoneMatch,
       MetadataDirective: 'REPLACE',
       ContentType: request.contentType,
-      Metadata: { 'sealed-from': request.expectedEtag },
       ChecksumAlgorithm: 'SHA256',
-      ...(locked && {
-        ObjectLockMode: 'COMPLIANCE' as const,
-        ObjectLockRetainUntilDate: new Date(request.retainUntilMs),
-      }),
     }),
   );
 }

@@ -1,33 +1,39 @@
 import { createHash } from 'node:crypto';
-import { DeleteObjectCommand, PutObjectCommand, PutObjectRetentionCommand } from '@aws-sdk/client-s3';
+import { PutObjectCommand } from '@aws-sdk/client-s3';
 import type { Connection } from './client';
-import { StorageError, saysNoObjectLock, toStorageError } from './errors';
+import { toStorageError } from './errors';
+import { refusedForLackOfLock, shownLock } from './lock';
 import type { Lock, Put } from './port';
 import { head } from './read';
 
-export async function put(
-  connection: Connection,
-  request: Put,
-): Promise<{ outcome: 'stored' | 'exists'; lock: Lock }> {
-  const retains = (request.retainUntilMs ?? 0) > connection.nowMs();
-  const wantsLock = retains || request.legalHold === true;
+type Outcome = 'stored' | 'exists';
+
+export async function put(connection: Connection, request: Put): Promise<{ outcome: Outcome; lock: Lock }> {
+  // The condition on the write decides between two at once; the look before it serves stores that pass over the condition.
+  if (request.ifAbsent && (await head(connection, request.key)) !== null)
+    return { outcome: 'exists', lock: 'none' };
+  const { retainUntilMs = 0 } = request;
+  const retains = retainUntilMs > connection.nowMs();
+  let locked = retains || request.legalHold === true;
+  let outcome: Outcome;
   try {
-    return await send(connection, request, wantsLock);
+    outcome = await send(connection, request, locked);
   } catch (error) {
-    if (wantsLock && saysNoObjectLock(error)) return send(connection, request, false);
-    throw error;
+    if (!locked || !(await refusedForLackOfLock(connection, error))) throw error;
+    locked = false;
+    outcome = await send(connection, request, locked);
   }
+  const lock =
+    outcome === 'stored' && locked && retains
+      ? await shownLock(connection, request.key, retainUntilMs)
+      : 'none';
+  return { outcome, lock };
 }
 
-async function send(
-  connection: Connection,
-  request: Put,
-  locked: boolean,
-): Promise<{ outcome: 'stored' | 'exists'; lock: Lock }> {
+async function send(connection: Connection, request: Put, locked: boolean): Promise<Outcome> {
   const { client, bucket } = connection;
-  const { key, body, retainUntilMs, legalHold } = request;
+  const { key, body, retainUntilMs = 0, legalHold } = request;
   const sha256 = createHash('sha256').update(body).digest();
-  const lock: Lock = locked && (retainUntilMs ?? 0) > connection.nowMs() ? 'compliance' : 'none';
   try {
     await client.send(
       new PutObjectCommand({
@@ -39,21 +45,21 @@ async function send(
         Metadata: request.metadata,
         ChecksumSHA256: sha256.toString('base64'),
         IfNoneMatch: request.ifAbsent ? '*' : undefined,
-        ...(lock === 'compliance' && {
-          ObjectLockMode: 'COMPLIANCE',
-          ObjectLockRetainUntilDate: new Date(retainUntilMs as number),
-        }),
+        ...(locked &&
+          retainUntilMs > connection.nowMs() && {
+            ObjectLockMode: 'COMPLIANCE',
+            ObjectLockRetainUntilDate: new Date(retainUntilMs),
+          }),
         ...(locked && legalHold && { ObjectLockLegalHoldStatus: 'ON' }),
       }),
     );
-    return { outcome: 'stored', lock };
+    return 'stored';
   } catch (error) {
     const failure = toStorageError(error, 'put', key);
     if (failure.code !== 'precondition' || !request.ifAbsent) throw error;
     // The answer to an earlier attempt may have been lost: then what stands there is ours.
     const attempts = (error as { $metadata?: { attempts?: number } }).$metadata?.attempts ?? 1;
-    if (attempts > 1 && (await isThere(connection, key, body, sha256))) return { outcome: 'stored', lock };
-    return { outcome: 'exists', lock: 'none' };
+    return attempts > 1 && (await isThere(connection, key, body, sha256)) ? 'stored' : 'exists';
   }
 }
 
@@ -67,44 +73,4 @@ async function isThere(
   if (found === null || found.contentLength !== body.length) return false;
   if (found.sha256 !== undefined) return sha256.equals(found.sha256);
   return found.etag === createHash('md5').update(body).digest('hex');
-}
-
-/** @throws StorageError `locked` also where the store only says that it is denied */
-export async function remove(connection: Connection, key: string): Promise<void> {
-  const { client, bucket } = connection;
-  try {
-    await client.send(new DeleteObjectCommand({ Bucket: bucket, Key: key }));
-  } catch (error) {
-    const failure = toStorageError(error, 'remove', key);
-    if (failure.code === 'not-found') return;
-    if (failure.code === 'denied') {
-      const found = await head(connection, key).catch(() => null);
-      if (found?.legalHold || (found?.retainUntilMs ?? 0) > connection.nowMs())
-        throw new StorageError('locked', 'remove', key, failure);
-    }
-    throw error;
-  }
-}
-
-/** @returns `none` where the store has no object lock */
-export async function setRetention(
-  { client, bucket }: Connection,
-  key: string,
-  untilMs: number,
-): Promise<Lock> {
-  try {
-    await client.send(
-      new PutObjectRetentionCommand({
-        Bucket: bucket,
-        Key: key,
-        Retention: { Mode: 'COMPLIANCE', RetainUntilDate: new Date(untilMs) },
-        // The store asks for one; without it the SDK would pick an algorithm of its own.
-        ChecksumAlgorithm: 'SHA256',
-      }),
-    );
-    return 'compliance';
-  } catch (error) {
-    if (saysNoObjectLock(error)) return 'none';
-    throw error;
-  }
 }

@@ -40,7 +40,10 @@ export async function openSource(exchange: BucketExchange) {
   const opened = await exchange.store.openObject(bucket, name.slice(slash + 1));
   try {
     const get = (header: string) => exchange.request.header(header);
-    if (checkReadConditions(get, opened.record, 'x-amz-copy-source-') === 'unchanged') {
+    if (
+      !exchange.behaviour.ignoreWriteConditions &&
+      checkReadConditions(get, opened.record, 'x-amz-copy-source-') === 'unchanged'
+    ) {
       throw preconditionFailed('x-amz-copy-source-If-None-Match');
     }
     return {

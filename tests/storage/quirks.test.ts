@@ -102,3 +102,68 @@ test('an original that somebody unlocked behind the service is locked again when
   expect(await storage.seal(request)).toMatchObject({ outcome: 'already', lock: 'compliance' });
   await expect(storage.remove('original')).rejects.toMatchObject({ code: 'locked' });
 });
+
+// Seen with one cluster: `x-amz-copy-source-if-match` was passed over, and conditional writes in a bucket with versions.
+test('a store that passes over conditions seals no other bytes than were looked at, and replaces nothing', async () => {
+  const { storage, fake } = await storageForTest({ ignoreWriteConditions: true });
+  const { expectedEtag, contentLength } = await arrive(storage, 'seen');
+  const request = {
+    from: 'slot',
+    to: 'original',
+    retainUntilMs,
+    contentType: 'audio/wav',
+    expectedEtag,
+    contentLength,
+  };
+  await storage.put({ key: 'slot', body: Buffer.from('swap'), contentType: 'audio/wav' });
+  await expect(storage.seal(request)).rejects.toMatchObject({ code: 'precondition' });
+  expect(fake.backdoor.keys(BUCKET)).toEqual(['slot']);
+
+  const sealed = await storage.seal({ ...request, ...(await arrive(storage, 'seen')) });
+  expect(sealed).toMatchObject({ outcome: 'sealed', lock: 'compliance' });
+  const other = { ...request, ...(await arrive(storage, 'swap')) };
+  await expect(storage.seal(other)).rejects.toMatchObject({ code: 'exists' });
+  expect(String(await storage.getBytes('original', 4))).toBe('seen');
+
+  const put = { key: 'k', contentType: 'text/plain', ifAbsent: true };
+  expect(await storage.put({ ...put, body: Buffer.from('1') })).toMatchObject({ outcome: 'stored' });
+  expect(await storage.put({ ...put, body: Buffer.from('2') })).toMatchObject({ outcome: 'exists' });
+  const report = await storage.check('check/');
+  expect(report.steps.filter(({ ok }) => !ok).map(({ name }) => name)).toEqual(['refuse to overwrite']);
+});
+
+test('a copy that was made and not yet locked when the process died is locked by the next call', async () => {
+  const { storage, fake } = await storageForTest();
+  const request = {
+    from: 'slot',
+    to: 'original',
+    retainUntilMs,
+    contentType: 'audio/wav',
+    ...(await arrive(storage)),
+  };
+  fake.faults.add({ kind: 'internal-error', method: 'PUT', parameter: 'retention', count: 3 });
+  await expect(storage.seal(request)).rejects.toMatchObject({ code: 'unavailable' });
+  expect(await storage.seal(request)).toMatchObject({ outcome: 'already', lock: 'compliance' });
+});
+
+test('a tag that says nothing is made up for by the hash, where the caller knows it', async () => {
+  const { storage } = await storageForTest();
+  const { contentLength } = await arrive(storage);
+  await storage.put({ key: 'original', body: Buffer.from('clip'), contentType: 'audio/wav' });
+  // The tag of a source in parts; the original is the same bytes in one.
+  const request = {
+    from: 'slot',
+    to: 'original',
+    retainUntilMs,
+    contentType: 'audio/wav',
+    contentLength,
+    expectedEtag: `${'0'.repeat(32)}-2`,
+  };
+  await expect(storage.seal(request)).rejects.toMatchObject({ code: 'exists' });
+  await expect(storage.seal({ ...request, sha256: sha256(Buffer.from('clap')) })).rejects.toMatchObject({
+    code: 'exists',
+  });
+  expect(await storage.seal({ ...request, sha256: sha256(Buffer.from('clip')) })).toMatchObject({
+    outcome: 'already',
+  });
+});
