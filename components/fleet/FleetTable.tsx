@@ -96,9 +96,9 @@ const COLUMNS: ColumnOf<FleetLine>[] = [
       </Link>
     ),
   },
-  { id: 'model', header: 'Model', maxWidth: '20ch', cell: (d) => d.model },
+  { id: 'model', header: 'Model', maxWidth: '16ch', cell: (d) => d.model },
   { id: 'serial', header: 'Serial', cell: (d) => <span className="mono">{d.serialNumber}</span> },
-  { id: 'ward', header: 'Ward', maxWidth: '15ch', cell: (d) => d.ward ?? 'none' },
+  { id: 'ward', header: 'Ward', maxWidth: '11ch', cell: (d) => d.ward ?? 'none' },
   {
     id: 'state',
     header: 'State',
@@ -117,7 +117,7 @@ const COLUMNS: ColumnOf<FleetLine>[] = [
       />
     ),
   },
-  { id: 'floor', header: 'Noise floor, 60 days, dBFS', cell: (d) => <Floor line={d} /> },
+  { id: 'floor', header: 'Noise floor, dBFS', cell: (d) => <Floor line={d} /> },
   {
     id: 'due',
     header: 'Check due',
@@ -136,7 +136,7 @@ const COLUMNS: ColumnOf<FleetLine>[] = [
       <span className="inline-flex items-center gap-2">
         <Due at={d.credentialEndsAt} days={7} />
         {d.bearerOnly && d.credentialEndsAt !== null ? (
-          <span className="text-13 font-semibold text-brass">◐ bearer only</span>
+          <span className="text-13 font-semibold text-brass">◐ bearer</span>
         ) : null}
       </span>
     ),

@@ -104,9 +104,29 @@ async function seed(): Promise<void> {
         ]);
       }
   });
+  await hearFrom(services, fleet, random, end);
   services.database.close();
   await closeAnalysis();
   writeFileSync(marker, signInsText(people), { mode: 0o600 });
+}
+
+/** Devices say how they are although nobody records with them; one has gone quiet. */
+async function hearFrom(
+  services: Services,
+  fleet: SeededDevice[],
+  random: ReturnType<typeof createRandom>,
+  end: number,
+): Promise<void> {
+  await services.write(async (tx) => {
+    for (const one of fleet) {
+      if (one.state !== 'in-service' || one.assetTag === 'HM-0369') continue;
+      const lastHeardAt = end - random.whole(1, 600) * MINUTE_MS;
+      await tx
+        .update(device)
+        .set({ lastHeardAt, batteryPercent: random.whole(20, 100), clockOffsetMs: random.whole(-3000, 3000) })
+        .where(eq(device.id, one.id));
+    }
+  });
 }
 
 async function seedWards(services: Services): Promise<Map<string, string>> {
