@@ -83,7 +83,12 @@ export async function enrolSeedDevice(services: Services, by: Actor, made: Seede
       .update(device)
       .set({
         lastCheckAt: now,
-        checkDueAt: Math.round(now + row.model.checkIntervalDays * DAY_MS * (0.3 + (0.7 * (Math.abs(hash(made.serialNumber)) % 100)) / 100)),
+        checkDueAt: Math.round(
+          now +
+            row.model.checkIntervalDays *
+              DAY_MS *
+              (0.3 + (0.7 * (Math.abs(hash(made.serialNumber)) % 100)) / 100),
+        ),
       })
       .where(eq(device.id, made.id));
     await appendEntries(tx, now, [

@@ -18,7 +18,7 @@ import { DAY_MS, type Listener, MINUTE_MS, type Place, sendClip, visit } from '.
 import { type SeededPerson, seedPeople, signInsText } from './people';
 import { createRandom } from './random';
 
-const RECORDINGS = 300;
+const RECORDINGS = Number(process.env.SEED_RECORDINGS ?? 300);
 const DAYS = 60;
 
 /** Harrowmere General Hospital from nothing: people, fleet, patients, and two months of recordings, lived through in order. */
