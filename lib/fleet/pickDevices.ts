@@ -10,7 +10,7 @@ export async function pickDevices(
   q: string,
 ) {
   const pattern = `%${q.replace(/[\\%_]/g, (c) => `\\${c}`)}%`;
-  const own = by.wardIds.length > 0 ? inArray(device.wardId, [...by.wardIds]) : sql`0`;
+  const own = by.wardIds.length > 0 ? inArray(device.wardId, [...by.wardIds]) : sql`1 = 0`;
   return await services.read
     .select({
       id: device.id,
