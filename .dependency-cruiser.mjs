@@ -23,7 +23,7 @@ export default {
       severity: 'error',
       from: { path: '^components/' },
       to: {
-        path: '^(app|db|devices|storage-fake|tests)/|^lib/(?!contract/|custody/pure/|acoustics/(pictures/|types|sentences|limits|decode/(wav|wavFormat|samples|sniff|types)\\.ts)|identity/permissions)',
+        path: '^(app|db|devices|storage-fake|tests)/|^lib/(?!contract/|custody/pure/|acoustics/(pictures/|types|sentences|limits|decode/(wav|wavFormat|riff|blocks|samples|sniff|types)\\.ts)|identity/permissions)',
       },
     },
     {

@@ -82,6 +82,7 @@ export class OggReader implements Reader {
       format: null,
       frames: 0,
       missingFrames: 0,
+      nonFinite: 0,
     };
   }
 }

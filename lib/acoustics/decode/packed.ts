@@ -1,12 +1,5 @@
 import type { AudioFormat, Container, Encoding } from '../types';
-import {
-  checkFormat,
-  type DecoderOptions,
-  LIMITS,
-  type Reader,
-  type ReaderResult,
-  Unreadable,
-} from './types';
+import { checkFormat, type DecoderOptions, type Reader, type ReaderResult, Unreadable } from './types';
 
 /** What the well-kept WebAssembly decoders have in common. */
 export interface PackedDecoder {
@@ -115,7 +108,7 @@ export class PackedReader implements Reader {
     const channels = decoded.channelData.slice(0, this.#format.channels);
     if (channels.length < this.#format.channels) throw new Unreadable('channels-change');
     this.#frames += decoded.samplesDecoded;
-    if (this.#frames > LIMITS.mostFrames) throw new Unreadable('too-long');
+    if (this.#frames > 24 * 3600 * 48_000) throw new Unreadable('too-long');
     this.options.onBlock(channels);
   }
 
@@ -149,6 +142,7 @@ export class PackedReader implements Reader {
         format: null,
         frames: 0,
         missingFrames: 0,
+        nonFinite: 0,
       };
     if (this.#frames === 0) {
       const empty = declared === 0;
@@ -158,8 +152,16 @@ export class PackedReader implements Reader {
         format: null,
         frames: 0,
         missingFrames,
+        nonFinite: 0,
       };
     }
-    return { failure: null, reason: '', format: this.#format, frames: this.#frames, missingFrames };
+    return {
+      failure: null,
+      reason: '',
+      format: this.#format,
+      frames: this.#frames,
+      missingFrames,
+      nonFinite: 0,
+    };
   }
 }

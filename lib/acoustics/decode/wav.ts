@@ -1,48 +1,50 @@
 import type { AudioFormat } from '../types';
+import { BlockSink } from './blocks';
+import { type Chunk, type RiffListener, RiffWalker, type Treatment } from './riff';
 import { type SampleReader, sampleReader } from './samples';
-import { type DecoderOptions, LIMITS, type Reader, type ReaderResult, Unreadable } from './types';
-import { containerOf, readWavFormat, type WavFormat } from './wavFormat';
+import { type DecoderOptions, type Reader, type ReaderResult, Unreadable } from './types';
+import { containerOf, FORMAT_BYTES, readWavFormat, type WavFormat } from './wavFormat';
 
-const BLOCK_FRAMES = 16_384;
-/** A fmt or ds64 chunk is small; one that claims more is read no further than this. */
-const LARGEST_COLLECTED_BYTES = 65_536;
+/** ds64 without its table (EBU Tech 3306): riffSize, dataSize and sampleCount of 64 bits, and the table's length. */
+const DS64_BYTES = 28;
 /** Sound that comes before its format is kept this far, then given up. */
-const LARGEST_EARLY_SOUND_BYTES = 32 << 20;
-/** Sizes that writers put down when they cannot come back to correct them: none, all ones, or the largest signed one. */
-const isStreamedSize = (size: number) =>
-  size === 0 || size >= 0xffff_fff0 || (size >= 0x7fff_0000 && size <= 0x7fff_ffff);
+const LARGEST_EARLY_SOUND_BYTES = 16 << 20;
+/** Chunks that may stand before fmt without remark. */
+const BEFORE_FORMAT = new Set(['ds64', 'JUNK', 'junk', 'bext', 'LIST', 'fact', 'FLLR']);
 
-type State = 'riff' | 'chunk' | 'collect' | 'skip' | 'data' | 'tail';
+const UNKNOWN_SIZE = 0xffff_ffff;
+/** Sizes written by recorders that cannot come back to correct them, beside 0: all ones, or the largest signed one. */
+const isOpenSize = (size: number): boolean =>
+  size >= 0xffff_fff0 || (size >= 0x7fff_0000 && size <= 0x7fff_ffff);
+
+interface Ds64 {
+  riffSize: number;
+  dataSize: number;
+  sampleCount: number;
+}
 
 /**
- * WAV, RF64 and BW64 (EBU Tech 3306), read as a stream. Chunk sizes are 64-bit safe numbers and never allocate;
- * chunks may come in any order, with or without their pad byte; a data size of 0 or near 2^32 means "to the end".
+ * WAV, RF64 and BW64 (EBU Tech 3306), read as a stream. Chunks may come in any order, with or without their pad byte;
+ * a data size that was left open means "to the end"; one that lies is found out by counting.
  */
-export class WavReader implements Reader {
-  #state: State = 'riff';
-  /** Bytes of a head or a small chunk that are not all there yet. */
-  #pending = new Uint8Array(0);
-  #bigEndian = false;
+export class WavReader implements Reader, RiffListener {
+  sawData = false;
+  readonly #walker = new RiffWalker(this);
+  readonly #oddities = this.#walker.oddities;
   #magic = 'RIFF';
   #riffSize = 0;
-  #position = 0;
-  #chunk = '';
-  #chunkLeft = 0;
-  #pad = 0;
-  #ds64: { riffSize: number; dataSize: number } | null = null;
+  #ds64: Ds64 | null = null;
   #format: WavFormat | null = null;
-  #audio: AudioFormat | null = null;
+  #sink: BlockSink | null = null;
   #read: SampleReader | null = null;
-  #blocks: Float32Array[] = [];
+  /** Bytes of a frame that is not all there yet. */
   #rest = new Uint8Array(0);
-  #early: Uint8Array[] | null = null;
-  #earlyBytes = 0;
-  #sawData = false;
-  #dataDeclared: number | null = null;
-  #dataBytes = 0;
-  #frames = 0;
-  #chunks: string[] = [];
-  #oddities = new Set<string>();
+  #restFilled = 0;
+  #early: Uint8Array | null = null;
+  #earlyFilled = 0;
+  /** null: left open. */
+  #dataSize: number | null = null;
+  #first = '';
   #failure: Unreadable | null = null;
 
   constructor(private readonly options: DecoderOptions) {}
@@ -50,263 +52,188 @@ export class WavReader implements Reader {
   push(bytes: Uint8Array): void {
     if (this.#failure) return;
     try {
-      let at = 0;
-      while (at < bytes.length) at += this.#step(at === 0 ? bytes : bytes.subarray(at));
-      this.#position += bytes.length;
+      this.#walker.push(bytes);
     } catch (error) {
       if (!(error instanceof Unreadable)) throw error;
       this.#failure = error;
     }
   }
 
-  /** Take some of the bytes. @returns how many */
-  #step(bytes: Uint8Array): number {
-    switch (this.#state) {
-      case 'riff':
-        return this.#gather(bytes, 12, (head) => this.#onRiff(head));
-      case 'chunk':
-        return this.#gather(bytes, 8, (head) => this.#onChunkHead(head));
-      case 'collect':
-        return this.#gather(bytes, this.#chunkLeft, (body) => this.#onCollected(body));
-      case 'skip': {
-        const taken = Math.min(bytes.length, this.#chunkLeft);
-        this.#chunkLeft -= taken;
-        if (this.#chunkLeft === 0) this.#state = 'chunk';
-        return taken;
-      }
-      case 'data': {
-        const taken = Math.min(bytes.length, this.#chunkLeft);
-        this.#onData(taken === bytes.length ? bytes : bytes.subarray(0, taken));
-        this.#chunkLeft -= taken;
-        if (this.#chunkLeft === 0) this.#endOfData();
-        return taken;
-      }
-      case 'tail':
-        this.#oddities.add('trailing-bytes');
-        return bytes.length;
-    }
+  onRiff(magic: string, size: number): void {
+    this.#magic = magic;
+    this.#riffSize = size;
   }
 
-  #gather(bytes: Uint8Array, wanted: number, whole: (body: Uint8Array) => void): number {
-    if (this.#pending.length === 0 && bytes.length >= wanted) {
-      whole(bytes.subarray(0, wanted));
-      return wanted;
+  onChunk(chunk: Chunk): Treatment {
+    this.#first ||= chunk.name;
+    if (chunk.name === 'data') return this.#onDataChunk(chunk);
+    // Only a data chunk may be longer than 32 bits say without being in the table of ds64, which nobody fills.
+    if (chunk.name === 'fmt ') {
+      if (!this.#format && !BEFORE_FORMAT.has(this.#first) && this.#first !== 'fmt ')
+        this.#oddities.add('chunk-order-odd');
+      return { how: 'collect', size: chunk.size, keep: FORMAT_BYTES };
     }
-    const taken = Math.min(bytes.length, wanted - this.#pending.length);
-    const joined = new Uint8Array(this.#pending.length + taken);
-    joined.set(this.#pending);
-    joined.set(bytes.subarray(0, taken), this.#pending.length);
-    this.#pending = joined;
-    if (joined.length === wanted) {
-      this.#pending = new Uint8Array(0);
-      whole(joined);
-    }
-    return taken;
+    if (chunk.name === 'ds64') return { how: 'collect', size: chunk.size, keep: DS64_BYTES };
+    return { how: 'skip', size: chunk.size };
   }
 
-  #onRiff(head: Uint8Array): void {
-    this.#magic = String.fromCharCode(...head.subarray(0, 4));
-    this.#bigEndian = this.#magic === 'RIFX';
-    this.#riffSize = new DataView(head.buffer, head.byteOffset, 12).getUint32(4, !this.#bigEndian);
-    if (String.fromCharCode(...head.subarray(8, 12)) !== 'WAVE') throw new Unreadable('not-wave');
-    this.#state = 'chunk';
+  #onDataChunk(chunk: Chunk): Treatment {
+    if (this.sawData) {
+      this.#oddities.add('data-twice');
+      return { how: 'skip', size: chunk.size };
+    }
+    this.sawData = true;
+    this.#dataSize = this.#declaredSize(chunk);
+    if (this.#format) this.#announce(this.#format);
+    else this.#early = new Uint8Array(0);
+    if (chunk.size === 0) return { how: 'doubt' };
+    return { how: 'stream', size: this.#dataSize ?? Number.POSITIVE_INFINITY };
   }
 
-  #onChunkHead(head: Uint8Array): void {
-    // A chunk of odd size is followed by a pad byte that its size does not count (RIFF). Writers forget it: where the
-    // byte after an odd chunk begins a plausible name, there was none.
-    if (this.#pad === 1) {
-      this.#pad = 0;
-      if (head[0] === 0 || !isName(head)) {
-        this.#pending = head.slice(1);
-        return;
-      }
-      this.#oddities.add('pad-byte-missing');
+  /** Bytes of sound that the file declares; null where it left that open. */
+  #declaredSize({ size, bodyAt }: Chunk): number | null {
+    if (size === UNKNOWN_SIZE && this.#ds64 && this.#magic !== 'RIFF') {
+      const { dataSize } = this.#ds64;
+      return dataSize > 0 && dataSize < 2 ** 63 ? dataSize : null;
     }
-    this.#chunk = String.fromCharCode(...head.subarray(0, 4));
-    const size = new DataView(head.buffer, head.byteOffset, 8).getUint32(4, !this.#bigEndian);
-    if (!isName(head)) {
-      this.#oddities.add(this.#sawData ? 'trailing-bytes' : 'chunk-name-odd');
-      if (this.#sawData) {
-        this.#state = 'tail';
-        return;
-      }
-      if (this.#chunks.length > 64) throw new Unreadable('chunks-senseless');
-    }
-    if (this.#chunks.length < 1024) this.#chunks.push(this.#chunk);
-    this.#pad = size % 2;
-    if (this.#chunk === 'data') {
-      this.#beginData(size);
-      return;
-    }
-    if (this.#chunk === 'fmt ' || this.#chunk === 'ds64') {
-      if (size > LARGEST_COLLECTED_BYTES) throw new Unreadable('format-too-long');
-      if (size === 0) throw new Unreadable('format-short');
-      this.#chunkLeft = size;
-      this.#state = 'collect';
-      return;
-    }
-    this.#chunkLeft = size;
-    this.#state = size === 0 ? 'chunk' : 'skip';
+    if (size === 0) return null;
+    if (!isOpenSize(size)) return size;
+    const { totalBytes } = this.options;
+    return totalBytes !== undefined && bodyAt + size <= totalBytes ? size : null;
   }
 
-  #onCollected(body: Uint8Array): void {
-    this.#state = 'chunk';
-    if (this.#chunk === 'ds64') {
+  onCollected(chunk: Chunk, body: Uint8Array): void {
+    if (chunk.name === 'ds64') {
       if (body.byteLength < 24) throw new Unreadable('ds64-short');
       const view = new DataView(body.buffer, body.byteOffset, body.byteLength);
-      this.#ds64 = {
-        riffSize: Number(view.getBigUint64(0, true)),
-        dataSize: Number(view.getBigUint64(8, true)),
-      };
+      const at = (offset: number) => Number(view.getBigUint64(offset, true));
+      this.#ds64 = { riffSize: at(0), dataSize: at(8), sampleCount: at(16) };
       return;
     }
     if (this.#format) {
       this.#oddities.add('format-twice');
       return;
     }
-    this.#format = readWavFormat(body, this.#bigEndian);
-    if (this.#sawData) this.#oddities.add('data-before-format');
-    this.#announce();
-    const early = this.#early;
+    this.#format = readWavFormat(body, this.#walker.bigEndian);
+    for (const oddity of this.#format.oddities) this.#oddities.add(oddity);
+    if (!this.sawData) return;
+    this.#oddities.add('data-before-format');
+    this.#announce(this.#format);
+    const early = this.#early?.subarray(0, this.#earlyFilled);
     this.#early = null;
-    for (const piece of early ?? []) this.#onData(piece);
+    if (early) this.onStream(early);
   }
 
-  #beginData(size: number): void {
-    if (this.#sawData) {
-      this.#oddities.add('data-twice');
-      this.#chunkLeft = size;
-      this.#state = size === 0 ? 'chunk' : 'skip';
-      return;
-    }
-    this.#sawData = true;
-    const long =
-      this.#magic !== 'RIFF' && this.#magic !== 'RIFX' && size === 0xffff_ffff && this.#ds64
-        ? this.#ds64.dataSize
-        : null;
-    if (long !== null) this.#dataDeclared = long;
-    else if (isStreamedSize(size)) this.#dataDeclared = null;
-    else this.#dataDeclared = size;
-    if (this.#dataDeclared === null) this.#oddities.add('data-size-open');
-    this.#chunkLeft = this.#dataDeclared ?? Number.POSITIVE_INFINITY;
-    this.#pad = this.#dataDeclared === null ? 0 : this.#dataDeclared % 2;
-    this.#state = 'data';
-    if (this.#format) this.#announce();
-    else this.#early = [];
-    if (this.#chunkLeft === 0) this.#endOfData();
-  }
-
-  /** Say the format once both it and the length of the sound are known. */
-  #announce(): void {
-    const format = this.#format;
-    if (!format || !this.#sawData || this.#audio) return;
-    for (const oddity of format.oddities) this.#oddities.add(oddity);
-    this.#audio = {
+  /** Say the format, now that both it and the length of the sound are known. */
+  #announce(format: WavFormat): void {
+    const { encoding, bytesPerSample, bytesPerFrame, channels, sampleRateHz, bitDepth } = format;
+    const audio: AudioFormat = {
       container: containerOf(this.#magic),
-      encoding: format.encoding,
-      lossy: format.encoding === 'alaw' || format.encoding === 'mulaw',
-      sampleRateHz: format.sampleRateHz,
-      channels: format.channels,
-      bitDepth: format.bitDepth,
-      declaredFrames:
-        this.#dataDeclared === null ? null : Math.floor(this.#dataDeclared / format.bytesPerFrame),
+      encoding,
+      lossy: encoding === 'alaw' || encoding === 'mulaw',
+      sampleRateHz,
+      channels,
+      bitDepth,
+      declaredFrames: this.#dataSize === null ? null : Math.floor(this.#dataSize / bytesPerFrame),
       oddities: [],
     };
-    this.#read = sampleReader(format.encoding, format.bytesPerSample, format.channels, this.#bigEndian);
-    this.#blocks = Array.from({ length: format.channels }, () => new Float32Array(BLOCK_FRAMES));
-    this.options.onFormat(this.#audio);
+    this.#sink = new BlockSink(this.options, audio, encoding === 'float32' || encoding === 'float64');
+    this.#read = sampleReader(encoding, bytesPerSample, channels, this.#walker.bigEndian);
+    this.#rest = new Uint8Array(bytesPerFrame);
+    this.options.onFormat(audio);
   }
 
-  #onData(bytes: Uint8Array): void {
-    const format = this.#format;
-    if (!format || !this.#read) {
-      this.#earlyBytes += bytes.length;
-      if (this.#earlyBytes > LARGEST_EARLY_SOUND_BYTES) throw new Unreadable('no-format');
-      this.#early?.push(bytes.slice());
+  onStream(bytes: Uint8Array): void {
+    if (!this.#sink) {
+      this.#keepEarly(bytes);
       return;
     }
-    this.#dataBytes += bytes.length;
-    let all = bytes;
-    if (this.#rest.length > 0) {
-      all = new Uint8Array(this.#rest.length + bytes.length);
-      all.set(this.#rest);
-      all.set(bytes, this.#rest.length);
+    let at = 0;
+    const wide = this.#rest.length;
+    if (this.#restFilled > 0) {
+      at = Math.min(bytes.length, wide - this.#restFilled);
+      this.#rest.set(bytes.subarray(0, at), this.#restFilled);
+      this.#restFilled += at;
+      if (this.#restFilled < wide) return;
+      this.#restFilled = 0;
+      this.#decode(this.#sink, this.#rest, 1);
     }
-    const frames = Math.floor(all.length / format.bytesPerFrame);
-    for (let done = 0; done < frames; done += BLOCK_FRAMES) {
-      const now = Math.min(BLOCK_FRAMES, frames - done);
-      this.#read(
-        all.subarray(done * format.bytesPerFrame, (done + now) * format.bytesPerFrame),
-        now,
-        this.#blocks,
-      );
-      if (format.encoding.startsWith('float')) this.#mendFloats(now);
-      this.options.onBlock(
-        now === BLOCK_FRAMES ? this.#blocks : this.#blocks.map((channel) => channel.subarray(0, now)),
-      );
-    }
-    this.#frames += frames;
-    if (this.#frames > LIMITS.mostFrames) throw new Unreadable('too-long');
-    this.#rest = all.slice(frames * format.bytesPerFrame);
-  }
-
-  #mendFloats(frames: number): void {
-    for (const channel of this.#blocks) {
-      for (let i = 0; i < frames; i++) {
-        if (Number.isFinite(channel[i])) continue;
-        channel[i] = 0;
-        this.#oddities.add('non-finite-samples');
-      }
+    const frames = Math.floor((bytes.length - at) / wide);
+    this.#decode(this.#sink, at === 0 ? bytes : bytes.subarray(at), frames);
+    at += frames * wide;
+    if (at < bytes.length) {
+      this.#rest.set(bytes.subarray(at));
+      this.#restFilled = bytes.length - at;
     }
   }
 
-  #endOfData(): void {
-    this.#state = 'chunk';
+  #decode(sink: BlockSink, bytes: Uint8Array, frames: number): void {
+    const wide = this.#rest.length;
+    for (let done = 0; done < frames; ) {
+      const now = Math.min(sink.room, frames - done);
+      this.#read?.(bytes.subarray(done * wide, (done + now) * wide), now, sink.channels, sink.filled);
+      sink.commit(now, this.#walker.position);
+      done += now;
+    }
+  }
+
+  #keepEarly(bytes: Uint8Array): void {
+    const needed = this.#earlyFilled + bytes.length;
+    if (needed > LARGEST_EARLY_SOUND_BYTES) throw new Unreadable('no-format');
+    if (!this.#early || this.#early.length < needed) {
+      const grown = new Uint8Array(Math.min(LARGEST_EARLY_SOUND_BYTES, Math.max(65_536, 2 * needed)));
+      if (this.#early) grown.set(this.#early.subarray(0, this.#earlyFilled));
+      this.#early = grown;
+    }
+    this.#early.set(bytes, this.#earlyFilled);
+    this.#earlyFilled = needed;
   }
 
   end(): ReaderResult {
-    const none = (failure: 'unreadable' | 'empty', reason: string): ReaderResult => ({
+    if (!this.#failure) {
+      try {
+        this.#walker.end();
+      } catch (error) {
+        if (!(error instanceof Unreadable)) throw error;
+        this.#failure = error;
+      }
+    }
+    this.#sink?.flush();
+    const frames = this.#sink?.frames ?? 0;
+    const missingFrames = this.#missing(frames);
+    if (!this.#failure) this.#compare(frames, missingFrames);
+    const audio = this.#sink?.format ?? null;
+    if (audio) audio.oddities = [...this.#oddities].sort();
+    const answer = (failure: ReaderResult['failure'], reason: string): ReaderResult => ({
       failure,
       reason,
-      format: this.#audio,
-      frames: 0,
-      missingFrames: 0,
+      format: audio,
+      frames,
+      missingFrames,
+      nonFinite: this.#sink?.nonFinite ?? 0,
     });
-    if (this.#failure) return none('unreadable', this.#failure.reason);
-    if (!this.#format) return none('unreadable', 'no-format');
-    if (!this.#sawData || !this.#audio) return none('empty', 'no-data');
-    const bytesPerFrame = this.#format.bytesPerFrame;
-    if (this.#rest.length > 0) this.#oddities.add('partial-frame');
-    const onlyPad = this.#pad === 1 && this.#pending.length === 1 && this.#pending[0] === 0;
-    if (this.#state === 'chunk' && this.#pending.length > 0 && !onlyPad) this.#oddities.add('trailing-bytes');
-    const missing =
-      this.#dataDeclared === null
-        ? 0
-        : Math.max(0, Math.floor(this.#dataDeclared / bytesPerFrame) - this.#frames);
-    this.#checkRiffSize(missing);
-    if (
-      this.#chunks.indexOf('fmt ') > 0 &&
-      !['ds64', 'JUNK', 'junk', 'bext', 'LIST', 'fact'].includes(this.#chunks[0] ?? '')
-    )
-      this.#oddities.add('chunk-order-odd');
-    this.#audio.oddities = [...this.#oddities].sort();
-    if (this.#frames === 0)
-      return { ...none('empty', missing > 0 ? 'data-missing' : 'no-samples'), missingFrames: missing };
-    return { failure: null, reason: '', format: this.#audio, frames: this.#frames, missingFrames: missing };
+    if (this.#failure) return answer(this.#failure.failure, this.#failure.reason);
+    if (!this.#format) return answer('unreadable', 'no-format');
+    if (!this.sawData) return answer('empty', 'no-data');
+    if (frames === 0) return answer('empty', missingFrames > 0 ? 'data-missing' : 'no-samples');
+    return answer(null, '');
   }
 
-  #checkRiffSize(missingFrames: number): void {
-    if (missingFrames > 0) return; // a cut file's size is wrong for that reason alone
-    const declared = this.#ds64 ? this.#ds64.riffSize : this.#riffSize;
-    if (
-      declared !== this.#position - 8 &&
-      !(isStreamedSize(declared) && this.#oddities.has('data-size-open'))
-    )
-      this.#oddities.add('riff-size-wrong');
+  #missing(frames: number): number {
+    if (this.#dataSize === null || !this.#format) return 0;
+    return Math.max(0, Math.floor(this.#dataSize / this.#format.bytesPerFrame) - frames);
+  }
+
+  /** What the header said against what was there. */
+  #compare(frames: number, missingFrames: number): void {
+    if (this.#restFilled > 0) this.#oddities.add('partial-frame');
+    if (this.#dataSize === null && frames > 0) this.#oddities.add('data-size-open');
+    if ((this.#sink?.nonFinite ?? 0) > 0) this.#oddities.add('non-finite-samples');
+    if (missingFrames > 0) return; // a cut file's sizes are wrong for that reason alone
+    const count = this.#ds64?.sampleCount ?? 0;
+    if (count > 0 && count !== frames) this.#oddities.add('sample-count-wrong');
+    const declared = this.#riffSize === UNKNOWN_SIZE && this.#ds64 ? this.#ds64.riffSize : this.#riffSize;
+    const leftOpen = this.#dataSize === null && frames > 0 && (isOpenSize(declared) || declared === 0);
+    if (declared !== this.#walker.position - 8 && !leftOpen) this.#oddities.add('riff-size-wrong');
   }
 }
-
-/** Chunk names are four printable ASCII characters. */
-const isName = (head: Uint8Array): boolean =>
-  [0, 1, 2, 3].every((i) => (head[i] ?? 0) >= 32 && (head[i] ?? 0) < 127);
