@@ -2,20 +2,17 @@ import type { Metadata } from 'next';
 import { redirect } from 'next/navigation';
 import { SignInForm } from '@/components/identity/SignInForm';
 import { readVisitor } from '@/lib/http/page';
+import { safeNext } from '@/lib/http/safeNext';
 
 export const metadata: Metadata = { title: 'Sign in' };
-
-/** An address of this house, or the front door: never another site. */
-const safeNext = (value: string | string[] | undefined): string =>
-  typeof value === 'string' && /^\/(?![/\\])/.test(value) ? value : '/';
 
 export default async function SignInPage({
   searchParams,
 }: {
   searchParams: Promise<{ next?: string | string[] }>;
 }) {
-  const { person } = await readVisitor();
-  const next = safeNext((await searchParams).next);
+  const { person, services } = await readVisitor();
+  const next = safeNext((await searchParams).next, services.env.BELLKEEP_ORIGIN);
   if (person) redirect(next);
   return <SignInForm next={next} />;
 }
