@@ -3,6 +3,7 @@ import type { S3Request } from './request';
 import { authenticateSigV2, isSigV2 } from './sigv2';
 import {
   ALGORITHM,
+  type Credentials,
   canonicalRequest,
   type Scope,
   sameSignature,
@@ -14,12 +15,6 @@ import {
 const SKEW_MS = 15 * 60_000;
 const EXPIRES_SECONDS_MAX = 7 * 24 * 3600;
 const UNSIGNED = 'UNSIGNED-PAYLOAD';
-
-export interface Credentials {
-  accessKey: string;
-  secretKey: string;
-  region: string;
-}
 
 /** What the chunk signatures of a streamed body chain to. */
 export interface ChunkChain {

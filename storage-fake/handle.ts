@@ -1,7 +1,7 @@
 import type { IncomingMessage, ServerResponse } from 'node:http';
 import { setTimeout as sleep } from 'node:timers/promises';
 import { commonHeaders, errorDocument, newRequestId } from './answer';
-import { authenticate, type Credentials } from './authenticate';
+import { authenticate } from './authenticate';
 import { allowOrigin, answerPreflight } from './cors';
 import { S3Error } from './errors';
 import type { Behaviour } from './exchange';
@@ -10,6 +10,7 @@ import type { Faults } from './faults';
 import type { ObjectStore } from './objects';
 import { S3Request } from './request';
 import { dispatch } from './routes/dispatch';
+import type { Credentials } from './sigv4';
 
 export interface Handling {
   store: ObjectStore;

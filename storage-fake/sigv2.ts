@@ -1,8 +1,7 @@
 import { createHmac } from 'node:crypto';
-import type { Credentials } from './authenticate';
 import { S3Error } from './errors';
 import type { S3Request } from './request';
-import { sameSignature } from './sigv4';
+import { type Credentials, sameSignature } from './sigv4';
 
 // Signature Version 2 ("Signing and authenticating REST requests", Amazon S3 developer guide). Some clients still
 // presign with it by default in us-east-1, so it is verified rather than refused.

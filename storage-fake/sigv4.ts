@@ -7,6 +7,13 @@ import { percentDecode, percentEncode, splitQuery } from './wire';
 export const ALGORITHM = 'AWS4-HMAC-SHA256';
 export const EMPTY_SHA256 = 'e3b0c44298fc1c149afbf4c8996fb92427ae41e4649b934ca495991b7852b855';
 
+/** The one pair of keys that the store knows, and the region it stands in. */
+export interface Credentials {
+  accessKey: string;
+  secretKey: string;
+  region: string;
+}
+
 /** A request as it stood on the wire; strings are latin1, a character a byte. */
 export interface WireRequest {
   method: string;

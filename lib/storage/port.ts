@@ -1,4 +1,4 @@
-export { StorageError, type StorageErrorCode } from './errors';
+export { StorageError } from './errors';
 
 /** A presigned request: whoever holds it may make it. It is a secret and is never logged. */
 export interface Presigned {

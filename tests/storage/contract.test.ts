@@ -65,6 +65,7 @@ beforeAll(async () => {
   const prefix = `contract-${Date.now()}/`;
   const found = { storage, client, bucket, prefix };
   store = { ...found, capabilities: await probe(found) };
+  if (real) console.warn(`the store at ${endpoint} was found able to: ${JSON.stringify(store.capabilities)}`);
   close = async () => {
     client.destroy();
     await rest.close();

@@ -29,8 +29,8 @@ export function describePresigned(name: string, get: () => StoreUnderTest): void
       const at = key();
       const presigned = await presign(at);
       expect(await putBy(presigned, body, { 'content-type': 'text/html' })).toBe(403);
-      expect(await putBy(presigned, body.subarray(1))).toBeGreaterThanOrEqual(400);
-      expect(await putBy(presigned, Buffer.concat([body, body]))).toBeGreaterThanOrEqual(400);
+      expect(await putBy(presigned, body.subarray(1))).toBe(403);
+      expect(await putBy(presigned, Buffer.concat([body, body]))).toBe(403);
       expect(
         await putBy(presigned, body, {
           'x-amz-checksum-sha256': sha256(Buffer.from('x')).toString('base64'),

@@ -1,9 +1,11 @@
 import { spawnSync } from 'node:child_process';
 import { existsSync } from 'node:fs';
 
+const APT_GET = '/usr/bin/apt-get';
+
 function missing(packages: readonly string[]): string[] {
   return packages.filter((name) => {
-    const asked = spawnSync('dpkg-query', ['-s', name], { encoding: 'utf8' });
+    const asked = spawnSync('/usr/bin/dpkg-query', ['-s', name], { encoding: 'utf8' });
     return asked.status !== 0 || !asked.stdout.includes('Status: install ok installed');
   });
 }
@@ -11,7 +13,7 @@ function missing(packages: readonly string[]): string[] {
 function aptGet(args: readonly string[]): boolean {
   const env = { ...process.env, DEBIAN_FRONTEND: 'noninteractive' };
   // Another test file may be installing at this moment: wait for it.
-  const ran = spawnSync('apt-get', ['-o', 'DPkg::Lock::Timeout=300', '-q', ...args], {
+  const ran = spawnSync(APT_GET, ['-o', 'DPkg::Lock::Timeout=300', '-q', ...args], {
     env,
     encoding: 'utf8',
   });
@@ -27,7 +29,7 @@ function aptGet(args: readonly string[]): boolean {
 export function ensureDebian(packages: readonly string[]): boolean {
   const wanted = missing(packages);
   if (wanted.length === 0) return true;
-  if (process.getuid?.() !== 0 || !existsSync('/usr/bin/apt-get')) return false;
+  if (process.getuid?.() !== 0 || !existsSync(APT_GET)) return false;
   const install = ['install', '-y', '--no-install-recommends', ...wanted];
   // The lists may be old or absent; without them fetched anew the archive's files may be gone.
   if (!aptGet(['update']) || !aptGet(install)) return false;
