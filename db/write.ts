@@ -23,8 +23,15 @@ export function databaseCode(error: unknown): string | undefined {
   return undefined;
 }
 
-export const isUniqueViolation = (error: unknown): boolean =>
-  /^SQLITE_CONSTRAINT(_UNIQUE|_PRIMARYKEY)?$/.test(databaseCode(error) ?? '');
+/** Whether a unique key was taken: said by an index, or by a trigger that guards one in its words. */
+export function isUniqueViolation(error: unknown): boolean {
+  const code = databaseCode(error) ?? '';
+  if (/^SQLITE_CONSTRAINT(_UNIQUE|_PRIMARYKEY)?$/.test(code)) return true;
+  return code === 'SQLITE_CONSTRAINT_TRIGGER' && /UNIQUE constraint failed/.test(wordsOf(error));
+}
+
+const wordsOf = (error: unknown): string =>
+  error instanceof Error ? `${error.message} ${wordsOf(error.cause)}` : '';
 
 const isBusy = (error: unknown): boolean => /^SQLITE_(BUSY|LOCKED)/.test(databaseCode(error) ?? '');
 
