@@ -19,6 +19,21 @@ export const FLEET_SORTS = [
   '-checkDue',
 ] as const;
 
+/** A sort value and an id, as JSON. */
+function isPlace(text: string): boolean {
+  try {
+    const place: unknown = JSON.parse(text);
+    return (
+      Array.isArray(place) &&
+      place.length === 2 &&
+      ['string', 'number'].includes(typeof place[0]) &&
+      typeof place[1] === 'string'
+    );
+  } catch {
+    return false;
+  }
+}
+
 export const FleetFilter = z.strictObject({
   q: z.string().trim().max(200).default(''),
   state: z.enum(SERVICE_STATES).optional(),
@@ -28,7 +43,7 @@ export const FleetFilter = z.strictObject({
   firmware: z.string().max(64).optional(),
   sort: z.enum(FLEET_SORTS).default('assetTag'),
   /** Keyset: sort value and id of the last row of the page before, JSON. */
-  after: z.string().max(200).optional(),
+  after: z.string().max(200).refine(isPlace, 'a place that the list gave').optional(),
   limit: z.coerce.number().int().min(1).max(1000).default(50),
 });
 export type FleetFilter = z.infer<typeof FleetFilter>;
