@@ -1,7 +1,7 @@
 import { FLACDecoder } from '@wasm-audio-decoders/flac';
 import { OggVorbisDecoder } from '@wasm-audio-decoders/ogg-vorbis';
 import { OggOpusDecoder } from 'ogg-opus-decoder';
-import { readStreamInfo } from './flac';
+import { readStreamInfo } from './flacHeader';
 import { type PackedDecoder, type PackedFacts, PackedReader } from './packed';
 import { type DecoderOptions, type Reader, type ReaderResult, Unreadable } from './types';
 
@@ -23,7 +23,8 @@ function factsOf(codec: Codec, head: Uint8Array): PackedFacts {
   if (codec === 'flac') {
     // The Ogg mapping of FLAC (RFC 9639, 10.1) puts nine bytes before the marker.
     const packet = 27 + (head[26] ?? 0);
-    return { ...readStreamInfo(head.subarray(packet + 9)), container: 'ogg' };
+    const info = readStreamInfo(head.subarray(packet + 17));
+    return { ...info, container: 'ogg', encoding: 'flac', lossy: false, declaredFrames: info.totalFrames };
   }
   return {
     container: 'ogg',
