@@ -79,6 +79,7 @@ async function quarantine(services: IngestServices, row: RecordingRow, arrived: 
     contentType: 'application/octet-stream',
     expectedEtag: arrived.etag,
     contentLength: arrived.bytes,
+    sha256: Buffer.from(arrived.sha256, 'hex'),
   });
   const now = services.clock.now();
   // If the process dies before this line the copy lies unnamed in quarantine, and the next call makes it again.

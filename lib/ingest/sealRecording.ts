@@ -40,10 +40,12 @@ export async function sealRecording(
       contentType: row.mediaType,
       expectedEtag: etag,
       contentLength: row.declaredBytes,
+      sha256: Buffer.from(row.declaredSha256, 'hex'),
     });
     lock = sealed.lock;
   } catch (error) {
-    if (error instanceof StorageError)
+    // Other bytes under the final key are no outage: nobody but us writes there.
+    if (error instanceof StorageError && error.code !== 'exists')
       throw new Refusal(
         'storage-unavailable',
         undefined,

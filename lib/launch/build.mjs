@@ -2,6 +2,7 @@ import { spawn } from 'node:child_process';
 import { createHash } from 'node:crypto';
 import { existsSync, readdirSync, readFileSync, statSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
+import { QUIET } from './processes.mjs';
 
 const STAMP = '.next/bellkeep-built';
 const SOURCES = [
@@ -38,7 +39,7 @@ export async function ensureBuilt() {
   console.error('Building …');
   const child = spawn(process.execPath, ['node_modules/next/dist/bin/next', 'build'], {
     stdio: ['ignore', 'pipe', 'pipe'],
-    env: { ...process.env, NODE_ENV: 'production', NEXT_TELEMETRY_DISABLED: '1' },
+    env: { ...process.env, NODE_ENV: 'production', NEXT_TELEMETRY_DISABLED: '1', ...QUIET },
   });
   let said = '';
   child.stdout.on('data', (text) => {

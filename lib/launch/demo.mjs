@@ -3,7 +3,7 @@ import { existsSync, mkdirSync, openSync, readFileSync, writeFileSync } from 'no
 import { join } from 'node:path';
 import { ensureBuilt } from './build.mjs';
 import { ensureInstalled } from './install.mjs';
-import { freePort, Household, untilAnswers } from './processes.mjs';
+import { freePort, Household, QUIET, untilAnswers } from './processes.mjs';
 import { localSettings, storageFakeArgs, webArgs } from './settings.mjs';
 
 // npm run demo: Harrowmere General Hospital on this machine, from nothing.
@@ -12,7 +12,10 @@ const PORTS = join(FOLDER, 'ports.json');
 
 function run(args, env) {
   return new Promise((resolve, reject) => {
-    const child = spawn(process.execPath, args, { stdio: ['ignore', 2, 2], env: { ...process.env, ...env } });
+    const child = spawn(process.execPath, args, {
+      stdio: ['ignore', 2, 2],
+      env: { ...process.env, ...QUIET, ...env },
+    });
     child.on('exit', (code) =>
       code === 0 ? resolve() : reject(new Error(`${args.slice(2).join(' ')} ended with ${code}`)),
     );

@@ -1,6 +1,9 @@
 import { spawn } from 'node:child_process';
 import { createServer } from 'node:net';
 
+/** The storage client says at every start that it will want a newer Node next year; DEVELOPERS.md says it once. */
+export const QUIET = { AWS_SDK_JS_NODE_VERSION_SUPPORT_WARNING_DISABLED: 'true' };
+
 /** A port that is free now, `preferred` if it is. */
 export function freePort(preferred = 0) {
   return new Promise((resolve, reject) => {
@@ -21,7 +24,7 @@ export class Household {
   start(name, args, options = {}) {
     const child = spawn(process.execPath, args, {
       stdio: ['ignore', options.log ?? 'pipe', options.log ?? 'pipe'],
-      env: { ...process.env, NEXT_TELEMETRY_DISABLED: '1', ...options.env },
+      env: { ...process.env, NEXT_TELEMETRY_DISABLED: '1', ...QUIET, ...options.env },
     });
     const entry = { name, child, said: '', ended: null };
     entry.ended = new Promise((resolve) => child.once('exit', (code, signal) => resolve({ code, signal })));
