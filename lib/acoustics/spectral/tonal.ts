@@ -28,6 +28,7 @@ export class TonalProbe {
   readonly #high: number;
   readonly #reach: number;
   readonly #db: Float64Array;
+  readonly #scratch: Float64Array;
   #tracks: Track[] = [];
   readonly #done: Track[] = [];
   #column = 0;
@@ -43,6 +44,7 @@ export class TonalProbe {
     this.#high = Math.min(bins - 2, Math.floor(RANGE_HZ.high / binHz));
     this.#reach = Math.max(3, Math.round(NEIGHBOURS_HZ / binHz));
     this.#db = new Float64Array(bins);
+    this.#scratch = new Float64Array(2 * this.#reach + 1);
   }
 
   /** @param power one column of the spectrum, linear, relative to a full-scale sine */
@@ -73,11 +75,22 @@ export class TonalProbe {
     return sum / (to - from);
   }
 
+  /** Median by insertion into a scratch array: two dozen values, thousands of times a second of sound. */
   #medianAround(k: number): number {
-    const around = Array.from(
-      this.#db.subarray(Math.max(1, k - this.#reach), Math.min(this.#db.length, k + this.#reach + 1)),
-    ).sort((a, b) => a - b);
-    return around[around.length >> 1] as number;
+    const from = Math.max(1, k - this.#reach);
+    const to = Math.min(this.#db.length, k + this.#reach + 1);
+    const sorted = this.#scratch;
+    let n = 0;
+    for (let i = from; i < to; i++) {
+      const value = this.#db[i] as number;
+      let at = n++;
+      while (at > 0 && (sorted[at - 1] as number) > value) {
+        sorted[at] = sorted[at - 1] as number;
+        at--;
+      }
+      sorted[at] = value;
+    }
+    return sorted[n >> 1] as number;
   }
 
   #link(peaks: { bin: number; hz: number; prominence: number }[]): void {
