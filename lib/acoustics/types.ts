@@ -27,6 +27,8 @@ export interface AudioFormat {
   lossy: boolean;
   /** The rate written in the file, in Hz. */
   sampleRateHz: number;
+  /** Rate of what a lossy encoder was given, where the file tells it and decodes at another (OpusHead). */
+  sourceSampleRateHz?: number;
   channels: number;
   /** Valid bits a sample (8 for A-law and mu-law); null where a lossy codec has none. */
   bitDepth: number | null;

@@ -140,9 +140,9 @@ class SniffingDecoder implements AudioDecoder {
 
 /** The readers of packed sound bring decoders along; they are loaded when a file asks for them. */
 async function packedReader(sniffed: 'flac' | 'ogg' | 'mp3', options: DecoderOptions): Promise<Reader> {
-  if (sniffed === 'flac') return (await import('./flac')).createFlacReader(options);
+  if (sniffed === 'flac') return new (await import('./flac')).FlacReader(options);
   if (sniffed === 'ogg') return new (await import('./ogg')).OggReader(options);
-  return (await import('./mp3')).createMp3Reader(options);
+  return await (await import('./mp3')).Mp3Reader.create(options);
 }
 
 /** Decode a whole file that is in memory. Channels are empty where it cannot be read. */

@@ -194,5 +194,3 @@ export class FlacReader implements Reader {
     };
   }
 }
-
-export const createFlacReader = (options: DecoderOptions): Reader => new FlacReader(options);

@@ -1,89 +1,136 @@
-import { FLACDecoder } from '@wasm-audio-decoders/flac';
-import { OggVorbisDecoder } from '@wasm-audio-decoders/ogg-vorbis';
-import { OggOpusDecoder } from 'ogg-opus-decoder';
-import { readStreamInfo } from './flacHeader';
-import { type PackedDecoder, type PackedFacts, PackedReader } from './packed';
+import { GAVE_UP } from './askDecoder';
+import { OggFlacCodec } from './oggFlac';
+import { OggPackets } from './oggPackets';
+import { type OggPage, OggPages } from './oggPages';
+import { OpusCodec } from './opus';
 import { type DecoderOptions, type Reader, type ReaderResult, Unreadable } from './types';
+import { VorbisCodec } from './vorbis';
 
-/** The first page's first packet begins here when its segment table has one entry (RFC 3533, 6). */
-const HEAD_BYTES = 128;
-
-type Codec = 'opus' | 'vorbis' | 'flac';
-
-function codecOf(head: Uint8Array): Codec {
-  const packet = 27 + (head[26] ?? 0);
-  const text = String.fromCharCode(...head.subarray(packet, packet + 8));
-  if (text === 'OpusHead') return 'opus';
-  if (text.slice(1, 7) === 'vorbis') return 'vorbis';
-  if (text.slice(1, 5) === 'FLAC') return 'flac';
-  throw new Unreadable('ogg-codec-unknown');
+/** What makes sound of one logical stream's packets. */
+export interface OggCodec {
+  /** Longer packets are not put together, but given as null. */
+  readonly mostPacketBytes: number;
+  /** Every packet but the first, which the codec was made of; null: it is not whole. */
+  packet(packet: Uint8Array | null): void | Promise<void>;
+  /** All packets of a page were given. */
+  pageEnd(granule: number | null, last: boolean, bytesSoFar: number): void | Promise<void>;
+  /** The file ends within a page of this position. */
+  cut(granule: number | null): void;
+  end(failure: Unreadable | null): ReaderResult;
+  free(): void;
 }
 
-function factsOf(codec: Codec, head: Uint8Array): PackedFacts {
-  if (codec === 'flac') {
-    // The Ogg mapping of FLAC (RFC 9639, 10.1) puts nine bytes before the marker.
-    const packet = 27 + (head[26] ?? 0);
-    const info = readStreamInfo(head.subarray(packet + 17));
-    return { ...info, container: 'ogg', encoding: 'flac', lossy: false, declaredFrames: info.totalFrames };
-  }
-  return {
-    container: 'ogg',
-    encoding: codec,
-    lossy: true,
-    bitDepth: null,
-    sampleRateHz: null,
-    channels: null,
-    declaredFrames: null,
-  };
-}
+/** First packets are short: a longer one is none that is known. */
+const MOST_FIRST_PACKET_BYTES = 4096;
 
-const decoderOf = (codec: Codec): PackedDecoder =>
-  codec === 'opus' ? new OggOpusDecoder() : codec === 'vorbis' ? new OggVorbisDecoder() : new FLACDecoder();
-
-/** Ogg: the codec is known only from its first packet, so the decoder is chosen when that is there. */
+/** Ogg (RFC 3533): the first logical stream whose codec is known is the recording. */
 export class OggReader implements Reader {
-  #head = new Uint8Array(0);
-  #reader: PackedReader | null = null;
-  #failure: string | null = null;
+  readonly #pages = new OggPages();
+  readonly #oddities = this.#pages.oddities;
+  readonly #packets = new OggPackets(this.#oddities);
+  #serial: number | null = null;
+  #codec: OggCodec | null = null;
+  #over = false;
+  #failure: Unreadable | null = null;
 
   constructor(private readonly options: DecoderOptions) {}
 
   async push(bytes: Uint8Array): Promise<void> {
-    if (this.#failure) return;
-    if (this.#reader) return await this.#reader.push(bytes);
-    const joined = new Uint8Array(this.#head.length + bytes.length);
-    joined.set(this.#head);
-    joined.set(bytes, this.#head.length);
-    this.#head = joined;
-    if (joined.length >= HEAD_BYTES) await this.#choose();
-  }
-
-  async #choose(): Promise<void> {
-    try {
-      const codec = codecOf(this.#head);
-      this.#reader = new PackedReader(
-        this.options,
-        () => decoderOf(codec),
-        0,
-        (head) => factsOf(codec, head),
-      );
-      await this.#reader.push(this.#head);
-    } catch (error) {
-      if (!(error instanceof Unreadable)) throw error;
-      this.#failure = error.reason;
+    for (let at = 0; at < bytes.length && !this.#failure; ) {
+      at += this.#pages.feed(bytes, at);
+      await this.#guarded(async () => {
+        for (let page = this.#pages.next(); page; page = this.#pages.next()) await this.#onPage(page);
+      });
     }
   }
 
-  async end(): Promise<ReaderResult> {
-    if (!this.#reader && !this.#failure) await this.#choose();
-    if (this.#reader) return await this.#reader.end();
-    return {
-      failure: 'unreadable',
-      reason: this.#failure ?? 'ogg-codec-unknown',
-      format: null,
-      frames: 0,
-      missingFrames: 0,
-      nonFinite: 0,
-    };
+  async #guarded(work: () => Promise<void>): Promise<void> {
+    try {
+      await work();
+    } catch (error) {
+      if (!(error instanceof Unreadable)) throw error;
+      this.#failure = error;
+    }
   }
+
+  async #onPage(page: OggPage): Promise<void> {
+    if (this.#serial === null) {
+      await this.#choose(page);
+      return;
+    }
+    if (page.first && this.#over) this.#oddities.add('chained-streams');
+    if (page.serial !== this.#serial || this.#over) {
+      if (!page.first || !this.#over) this.#oddities.add('other-streams');
+      return;
+    }
+    await this.#take(page);
+  }
+
+  async #choose(page: OggPage): Promise<void> {
+    if (!page.first) throw new Unreadable('ogg-codec-unknown');
+    const packets: (Uint8Array | null)[] = [];
+    new OggPackets(this.#oddities).page(page, MOST_FIRST_PACKET_BYTES, (packet) => packets.push(packet));
+    const create = creatorOf(packets[0] ?? new Uint8Array(0));
+    if (!create) {
+      this.#oddities.add('other-streams');
+      return;
+    }
+    this.#serial = page.serial;
+    this.#codec = await create(this.options, this.#oddities);
+    // The first packet made the codec; the sequence of pages is followed from its page on.
+    this.#packets.page(page, MOST_FIRST_PACKET_BYTES, () => undefined);
+  }
+
+  async #take(page: OggPage): Promise<void> {
+    const codec = this.#codec as OggCodec;
+    const packets: (Uint8Array | null)[] = [];
+    this.#packets.page(page, codec.mostPacketBytes, (packet) => packets.push(packet));
+    for (const packet of packets) await codec.packet(packet);
+    await codec.pageEnd(page.granule, page.last, this.#pages.seen);
+    if (page.last) this.#over = true;
+  }
+
+  async end(): Promise<ReaderResult> {
+    const cut = this.#pages.cut();
+    if (cut && cut.serial === this.#serial) this.#codec?.cut(cut.granule);
+    else if (this.#pages.left > 0) this.#oddities.add('stray-bytes');
+    const failure = this.#failure;
+    const result = this.#codec?.end(failure);
+    this.#codec?.free();
+    if (!result)
+      return {
+        failure: failure?.failure ?? 'unreadable',
+        reason: failure?.reason ?? 'ogg-codec-unknown',
+        format: null,
+        frames: 0,
+        missingFrames: 0,
+        nonFinite: 0,
+      };
+    return this.#weighed(result, failure);
+  }
+
+  #weighed(result: ReaderResult, failure: Unreadable | null): ReaderResult {
+    if (result.nonFinite > 0) this.#oddities.add('non-finite-samples');
+    const givenUp = failure?.reason === GAVE_UP && result.frames > 0;
+    if (givenUp) this.#oddities.add('packets-damaged');
+    if (result.format)
+      result.format.oddities = [...new Set([...result.format.oddities, ...this.#oddities])].sort();
+    // A decoder that gave up half way leaves what it had made.
+    if (failure && !givenUp) return { ...result, failure: failure.failure, reason: failure.reason };
+    if (result.frames > 0) return { ...result, failure: null, reason: '' };
+    return { ...result, failure: 'empty', reason: result.missingFrames > 0 ? 'data-missing' : 'no-samples' };
+  }
+}
+
+type Creator = (options: DecoderOptions, oddities: Set<string>) => Promise<OggCodec> | OggCodec;
+
+/** By the first packet: RFC 7845 5.1, Vorbis I 4.2.1, RFC 9639 10.1. */
+function creatorOf(packet: Uint8Array): Creator | null {
+  const text = String.fromCharCode(...packet.subarray(0, 8));
+  if (text === 'OpusHead') return (options, oddities) => OpusCodec.create(packet, options, oddities);
+  if (text.startsWith('\u0001vorbis'))
+    return (options, oddities) => VorbisCodec.create(packet, options, oddities);
+  if (text.startsWith('\u007fFLAC'))
+    return (options, oddities) => new OggFlacCodec(packet, options, oddities);
+  return null;
 }
