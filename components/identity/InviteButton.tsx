@@ -98,39 +98,55 @@ function InviteForm({ id, wards, failure, onInvite }: InviteFormProps) {
       <Field id="invite-jobTitle" label="What they do" optional error={errors.jobTitle}>
         <TextInput name="jobTitle" autoComplete="off" maxLength={120} placeholder="Respiratory medicine" />
       </Field>
-      <FieldSet legend="Roles" error={errors.roles}>
-        {ROLES.map((role, index) => (
-          <Checkbox
-            key={role}
-            {...(index === 0 ? { id: 'invite-roles' } : {})}
-            label={ROLE_NAMES[role]}
-            help={ROLE_HELP[role]}
-            checked={roles.includes(role)}
-            onChange={(event) =>
-              setRoles(event.target.checked ? [...roles, role] : roles.filter((held) => held !== role))
-            }
-          />
-        ))}
-      </FieldSet>
+      <RoleFields roles={roles} onRoles={setRoles} error={errors.roles} />
       {roles.includes('clinician') && wards.length > 0 ? (
-        <FieldSet
-          legend="Wards"
-          help="Looking at patients elsewhere asks for a reason."
-          error={errors.wardIds}
-        >
-          <div className="grid grid-cols-2 gap-x-4">
-            {wards.map((ward, index) => (
-              <Checkbox
-                key={ward.id}
-                {...(index === 0 ? { id: 'invite-wardIds' } : {})}
-                name="ward"
-                value={ward.id}
-                label={ward.name}
-              />
-            ))}
-          </div>
-        </FieldSet>
+        <WardFields wards={wards} error={errors.wardIds} />
       ) : null}
     </form>
+  );
+}
+
+function RoleFields({
+  roles,
+  onRoles,
+  error,
+}: {
+  roles: readonly Role[];
+  onRoles: (roles: readonly Role[]) => void;
+  error?: string | undefined;
+}) {
+  return (
+    <FieldSet legend="Roles" error={error}>
+      {ROLES.map((role, index) => (
+        <Checkbox
+          key={role}
+          {...(index === 0 ? { id: 'invite-roles' } : {})}
+          label={ROLE_NAMES[role]}
+          help={ROLE_HELP[role]}
+          checked={roles.includes(role)}
+          onChange={(event) =>
+            onRoles(event.target.checked ? [...roles, role] : roles.filter((held) => held !== role))
+          }
+        />
+      ))}
+    </FieldSet>
+  );
+}
+
+function WardFields({ wards, error }: { wards: readonly WardChoice[]; error?: string | undefined }) {
+  return (
+    <FieldSet legend="Wards" help="Looking at patients elsewhere asks for a reason." error={error}>
+      <div className="grid grid-cols-2 gap-x-4">
+        {wards.map((ward, index) => (
+          <Checkbox
+            key={ward.id}
+            {...(index === 0 ? { id: 'invite-wardIds' } : {})}
+            name="ward"
+            value={ward.id}
+            label={ward.name}
+          />
+        ))}
+      </div>
+    </FieldSet>
   );
 }

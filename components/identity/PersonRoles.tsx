@@ -23,34 +23,14 @@ export function PersonRoles({ id, name, held }: { id: string; name: string; held
   return (
     <>
       <ul className="grid divide-y divide-line">
-        {ROLES.map((role) => {
-          const found = held.find((one) => one.role === role);
-          return (
-            <li key={role} className="flex flex-wrap items-center justify-between gap-x-4 gap-y-2 py-3">
-              <div className="min-w-0">
-                <p className={found ? 'font-semibold' : undefined}>{ROLE_NAMES[role]}</p>
-                <p className="max-w-line text-13 text-ink-soft">
-                  {found ? (
-                    <>
-                      Held since <Time at={found.givenAt} mode="date" />
-                      {found.givenBy ? `, given by ${found.givenBy}` : ''}
-                    </>
-                  ) : (
-                    ROLE_HELP[role]
-                  )}
-                </p>
-              </div>
-              <Button
-                size="small"
-                variant={found ? 'danger' : 'plain'}
-                aria-label={`${found ? 'Take away' : 'Give'}: ${ROLE_NAMES[role]}`}
-                onClick={() => setChange({ role, held: !found })}
-              >
-                {found ? 'Take away' : 'Give'}
-              </Button>
-            </li>
-          );
-        })}
+        {ROLES.map((role) => (
+          <RoleLine
+            key={role}
+            role={role}
+            found={held.find((one) => one.role === role)}
+            onChange={(wanted) => setChange({ role, held: wanted })}
+          />
+        ))}
       </ul>
       <ConfirmDialog
         open={change !== null}
@@ -76,5 +56,39 @@ export function PersonRoles({ id, name, held }: { id: string; name: string; held
         <p>Their sessions end at once, and they sign in again with what they may do then.</p>
       </ConfirmDialog>
     </>
+  );
+}
+
+interface RoleLineProps {
+  role: Role;
+  found: HeldRole | undefined;
+  onChange: (held: boolean) => void;
+}
+
+function RoleLine({ role, found, onChange }: RoleLineProps) {
+  return (
+    <li className="flex flex-wrap items-center justify-between gap-x-4 gap-y-2 py-3">
+      <div className="min-w-0">
+        <p className={found ? 'font-semibold' : undefined}>{ROLE_NAMES[role]}</p>
+        <p className="max-w-line text-13 text-ink-soft">
+          {found ? (
+            <>
+              Held since <Time at={found.givenAt} mode="date" />
+              {found.givenBy ? `, given by ${found.givenBy}` : ''}
+            </>
+          ) : (
+            ROLE_HELP[role]
+          )}
+        </p>
+      </div>
+      <Button
+        size="small"
+        variant={found ? 'danger' : 'plain'}
+        aria-label={`${found ? 'Take away' : 'Give'}: ${ROLE_NAMES[role]}`}
+        onClick={() => onChange(!found)}
+      >
+        {found ? 'Take away' : 'Give'}
+      </Button>
+    </li>
   );
 }

@@ -67,6 +67,7 @@ export const ROUTES = {
   'POST /api/models': { permission: 'model.write' },
 
   'GET /api/encounters': { permission: 'bedside.read' },
+  'GET /api/encounters/[id]': { permission: 'bedside.read' },
   'POST /api/patients/reason': { permission: 'bedside.read' },
   'POST /api/sessions': { permission: 'session.write' },
   'GET /api/sessions/[id]': { permission: 'bedside.read' },
@@ -77,6 +78,7 @@ export const ROUTES = {
   'POST /api/recordings/[id]/file': { permission: 'filing.write' },
   'POST /api/recordings/[id]/move': { permission: 'filing.write' },
   'POST /api/recordings/[id]/keep': { permission: 'recording.keep' },
+  'POST /api/recordings/[id]/heard': { permission: 'recording.read' },
   'GET /api/recordings/[id]/original': { permission: 'recording.read' },
   'GET /api/recordings/[id]/sound': { permission: 'recording.read' },
   'GET /api/recordings/[id]/peaks': { permission: 'recording.read' },

@@ -12,7 +12,7 @@ import { readSearch } from '@/lib/http/address';
 import { requirePage } from '@/lib/http/page';
 import { listWards } from '@/lib/identity/describePerson';
 import { countInvitations } from '@/lib/identity/listInvitations';
-import { countPeople, listPeople, PeopleFilter } from '@/lib/identity/listPeople';
+import { countPeople, listPeople, type PeopleCounts, PeopleFilter } from '@/lib/identity/listPeople';
 import { ROLE_NAMES, ROLES } from '@/lib/identity/permissions';
 
 export const metadata: Metadata = { title: 'People' };
@@ -55,25 +55,7 @@ export default async function PeoplePage({
         )}
       </PageHead>
       <PeopleTabs current="people" open={invitations.open} />
-      <Filters>
-        <SearchInput label="Name, address or work" />
-        <Chip
-          href={link({ role: null, left: null })}
-          current={filter.role === undefined && filter.left === undefined}
-        >
-          All
-        </Chip>
-        {ROLES.map((role) => (
-          <Chip key={role} href={link({ role, left: null })} current={filter.role === role}>
-            {ROLE_NAMES[role]} {counts.byRole[role]}
-          </Chip>
-        ))}
-        {counts.left > 0 ? (
-          <Chip href={link({ role: null, left: 'yes' })} current={filter.left === 'yes'}>
-            Left {counts.left}
-          </Chip>
-        ) : null}
-      </Filters>
+      <PeopleFilters filter={filter} counts={counts} link={link} />
       <PeopleTable
         key={query}
         query={query}
@@ -83,5 +65,37 @@ export default async function PeoplePage({
         nextHref={`${here}${here.includes('?') ? '&' : '?'}`}
       />
     </>
+  );
+}
+
+function PeopleFilters({
+  filter,
+  counts,
+  link,
+}: {
+  filter: PeopleFilter;
+  counts: PeopleCounts;
+  link: (changes: Record<string, string | null>) => string;
+}) {
+  return (
+    <Filters>
+      <SearchInput label="Name, address or work" />
+      <Chip
+        href={link({ role: null, left: null })}
+        current={filter.role === undefined && filter.left === undefined}
+      >
+        All
+      </Chip>
+      {ROLES.map((role) => (
+        <Chip key={role} href={link({ role, left: null })} current={filter.role === role}>
+          {ROLE_NAMES[role]} {counts.byRole[role]}
+        </Chip>
+      ))}
+      {counts.left > 0 ? (
+        <Chip href={link({ role: null, left: 'yes' })} current={filter.left === 'yes'}>
+          Left {counts.left}
+        </Chip>
+      ) : null}
+    </Filters>
   );
 }

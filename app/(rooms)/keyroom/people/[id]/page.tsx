@@ -73,28 +73,11 @@ export default async function PersonPage({ params }: { params: Promise<{ id: str
       >
         {sentence(found)}
       </PageHead>
-      {self ? (
-        <Notice tone="info" className="mb-6">
-          This is you. Sessions, password and second factor are on{' '}
-          <Link href="/account">your account page</Link>.
-        </Notice>
-      ) : null}
+      {self ? <ThisIsYou /> : null}
       <div className="grid gap-6 plate:grid-cols-[minmax(220px,280px)_minmax(0,1fr)]">
         <Facts found={found} />
         <div className="grid content-start gap-6">
-          {here ? (
-            <>
-              <Panel title="Roles">
-                <PersonRoles id={id} name={found.name} held={found.roles} />
-              </Panel>
-              <Panel title="Wards">
-                <PersonWards id={id} name={found.name} wards={wards} held={found.wardIds} />
-              </Panel>
-              <Section title="Sessions">
-                <SessionsTable sessions={found.sessions} />
-              </Section>
-            </>
-          ) : null}
+          {here ? <Living found={found} wards={wards} /> : null}
           <Section
             title="What happened"
             aside={
@@ -125,5 +108,30 @@ function Facts({ found }: { found: PersonDescription }) {
         { term: 'Left', value: found.leftAt === null ? null : <Time at={found.leftAt} mode="minute" /> },
       ]}
     />
+  );
+}
+
+/** What can be changed about somebody who is here. */
+function Living({ found, wards }: { found: PersonDescription; wards: { id: string; name: string }[] }) {
+  return (
+    <>
+      <Panel title="Roles">
+        <PersonRoles id={found.id} name={found.name} held={found.roles} />
+      </Panel>
+      <Panel title="Wards">
+        <PersonWards id={found.id} name={found.name} wards={wards} held={found.wardIds} />
+      </Panel>
+      <Section title="Sessions">
+        <SessionsTable sessions={found.sessions} />
+      </Section>
+    </>
+  );
+}
+
+function ThisIsYou() {
+  return (
+    <Notice tone="info" className="mb-6">
+      This is you. Sessions, password and second factor are on <Link href="/account">your account page</Link>.
+    </Notice>
   );
 }

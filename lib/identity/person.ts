@@ -1,1 +1,0 @@
-export type { Authorized, Person } from '@/lib/platform/authority';
