@@ -1,4 +1,4 @@
-import { and, asc, desc, eq, gt, inArray, isNull, sql } from 'drizzle-orm';
+import { and, asc, desc, eq, gt, inArray, isNull, or, sql } from 'drizzle-orm';
 import { credential, device, deviceModel, enrolmentCode, firmwareChange, recording, ward } from '@/db/schema';
 import type { Authorized } from '@/lib/platform/authority';
 import type { Services } from '@/lib/platform/services';
@@ -92,7 +92,7 @@ export async function readModels(services: Pick<Services, 'read'>, _by: Authoriz
     .orderBy(asc(deviceModel.name));
 }
 
-/** Devices by their ids, in the order of their asset tags: for sheets and acts on a selection. */
+/** Devices by their ids or asset tags, in the order of their asset tags: for sheets and acts on a selection. */
 export async function readDevices(
   services: Pick<Services, 'read'>,
   _by: Authorized<'fleet.write'>,
@@ -104,6 +104,6 @@ export async function readDevices(
     .from(device)
     .innerJoin(deviceModel, eq(deviceModel.id, device.modelId))
     .leftJoin(ward, eq(ward.id, device.wardId))
-    .where(inArray(device.id, [...ids]))
+    .where(or(inArray(device.id, [...ids]), inArray(device.assetTag, [...ids])))
     .orderBy(asc(device.assetTag));
 }
