@@ -57,7 +57,7 @@ export function DataTable(props: DataTableProps) {
     <SelectionContext value={selection}>
       <div
         ref={box}
-        className={cx(wide && 'overflow-x-auto')}
+        className={cx(wide && 'relative overflow-x-auto')}
         {...(wide ? { role: 'region', 'aria-label': caption, tabIndex: 0 } : {})}
       >
         <table className="table" aria-busy={props.loading || undefined}>
