@@ -235,15 +235,19 @@ function Floors({ view: { device, noiseFloor } }: { view: DeviceView }) {
   const last = values.at(-1) ?? 0;
   return (
     <div className="grid gap-2">
-      <Sparkline
-        values={values}
-        label={`Noise floor of ${device.assetTag} over 60 days`}
-        unit="dBFS"
-        limit={-50}
-        alarm={last > -50}
-        width={640}
-        height={96}
-      />
+      {values.length < 2 ? null : (
+        <div className="relative max-w-full overflow-x-auto">
+          <Sparkline
+            values={values}
+            label={`Noise floor of ${device.assetTag} over 60 days`}
+            unit="dBFS"
+            limit={-50}
+            alarm={last > -50}
+            width={640}
+            height={96}
+          />
+        </div>
+      )}
       <p className="text-13 text-ink-soft">
         Latest {last.toFixed(1).replace('-', '−')} dBFS; the dotted line is −50 dBFS. A rise means “send to
         the bench”, not “broken”.
