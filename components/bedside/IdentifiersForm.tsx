@@ -1,26 +1,30 @@
 'use client';
 
-import { type FormEvent, type ReactNode, useState } from 'react';
+import { type FormEvent, useState } from 'react';
 import { useAct } from '@/components/identity/useAct';
+import type { ProblemError } from '@/components/shell/useData';
 import { Button } from '@/components/ui/Button';
 import { Field, Textarea, TextInput } from '@/components/ui/Field';
 import { Notice } from '@/components/ui/Notice';
+import { Time } from '@/components/ui/Time';
 
 interface Props {
   /** Where it is sent. */
   url: string;
   encounterId: string;
-  /** Moving: the encounter it is in now, and a reason is asked for. */
-  from?: string;
+  /** Moving: the version of the recording that is shown; then a reason is asked for. */
+  version?: number | undefined;
   submitLabel: string;
   onDone: () => void;
-  children?: ReactNode;
+  /** Somebody else was first: what is shown is out of date. */
+  onOutdated: () => void;
 }
 
 /** Two identifiers are read from the wristband or asked of the patient before anything is filed. */
-export function IdentifiersForm({ url, encounterId, from, submitLabel, onDone, children }: Props) {
+export function IdentifiersForm({ url, encounterId, version, submitLabel, onDone, onOutdated }: Props) {
   const { act, busy, failure } = useAct(url);
   const [touched, setTouched] = useState(false);
+  const moving = version !== undefined;
   async function submit(event: FormEvent<HTMLFormElement>) {
     event.preventDefault();
     setTouched(false);
@@ -29,34 +33,68 @@ export function IdentifiersForm({ url, encounterId, from, submitLabel, onDone, c
     const answer = await act({
       encounterId,
       identifiers: { recordNumber: value('recordNumber'), second: value('second') },
-      ...(from === undefined ? {} : { from, reason: value('reason') }),
+      ...(moving ? { version, reason: value('reason') } : {}),
     });
     if (answer) onDone();
   }
   return (
     <form onSubmit={submit} onChange={() => setTouched(true)} className="grid gap-4">
-      {children}
-      {failure && !touched ? (
-        <Notice tone="alarm" title={failure.title}>
-          {failure.message}
-        </Notice>
-      ) : null}
+      {failure && !touched ? <Refused failure={failure} onOutdated={onOutdated} /> : null}
       <Field label="Record number" help="Read it from the wristband, not from this screen." required>
-        <TextInput name="recordNumber" mono autoComplete="off" autoFocus className="min-h-11" />
+        <TextInput
+          name="recordNumber"
+          mono
+          autoComplete="off"
+          autoCapitalize="characters"
+          spellCheck={false}
+          autoFocus
+          className="min-h-11"
+        />
       </Field>
-      <Field label="Date of birth or family name" help="Date as YYYY-MM-DD." required>
-        <TextInput name="second" autoComplete="off" className="min-h-11" />
+      <Field
+        label="Date of birth or family name"
+        help="A date as 1951-03-14, 14 Mar 1951 or 14.3.1951."
+        required
+      >
+        <TextInput name="second" autoComplete="off" spellCheck={false} className="min-h-11" />
       </Field>
-      {from === undefined ? null : (
+      {moving ? (
         <Field label="Reason for moving" help="It stands in the custody thread with your name." required>
           <Textarea name="reason" minLength={5} maxLength={500} />
         </Field>
-      )}
+      ) : null}
       <div>
         <Button type="submit" variant="primary" size="large" busy={busy}>
           {submitLabel}
         </Button>
       </div>
     </form>
+  );
+}
+
+const OUTDATED = new Set(['already-filed', 'stale', 'not-found']);
+
+function Refused({ failure, onOutdated }: { failure: ProblemError; onOutdated: () => void }) {
+  const { at } = failure.members;
+  return (
+    <Notice
+      tone={OUTDATED.has(failure.code) ? 'care' : 'alarm'}
+      title={failure.title}
+      live
+      action={
+        OUTDATED.has(failure.code) ? (
+          <Button className="min-h-11" onClick={onOutdated}>
+            Show how it stands now
+          </Button>
+        ) : null
+      }
+    >
+      <p>{failure.message}</p>
+      {typeof at === 'number' ? (
+        <p>
+          That was <Time at={at} ago />.
+        </p>
+      ) : null}
+    </Notice>
   );
 }

@@ -4,132 +4,71 @@ import { useRouter } from 'next/navigation';
 import { type FormEvent, useState } from 'react';
 import { useAct } from '@/components/identity/useAct';
 import { Button } from '@/components/ui/Button';
-import { Checkbox, FieldSet } from '@/components/ui/Checkbox';
-import { EmptyState } from '@/components/ui/EmptyState';
-import { Field, Select, TextInput } from '@/components/ui/Field';
+import { Checkbox } from '@/components/ui/Checkbox';
 import { Notice } from '@/components/ui/Notice';
 import { Time } from '@/components/ui/Time';
+import { type DeviceChoice, DevicePicker } from './DevicePicker';
+import { type EncounterChoice, EncounterPicker } from './EncounterPicker';
 import { bornInWords, nameOf } from './words';
 
-interface Choice {
-  id: string;
-  number: string;
-  givenName: string;
-  familyName: string;
-  birthDate: string | null;
-  recordNumber: string;
-  ward: string | null;
-  bed: string | null;
-}
-interface DeviceChoice {
-  id: string;
-  assetTag: string;
-  model: string;
-  serialNumber: string;
-  lastHeardAt: number | null;
-  inSession: string | null;
+interface Props {
+  encounters: readonly EncounterChoice[];
+  chosen: EncounterChoice | null;
+  devices: readonly DeviceChoice[];
 }
 
 /** Patient, stethoscope, open. A scanner types into the stethoscope's field and presses Enter. */
-export function NewSession({
-  encounters,
-  chosen,
-  devices,
-}: {
-  encounters: Choice[];
-  chosen: string | null;
-  devices: DeviceChoice[];
-}) {
+export function NewSession({ encounters, chosen, devices }: Props) {
   const router = useRouter();
-  const [encounterId, setEncounterId] = useState(chosen ?? '');
+  const [patient, setPatient] = useState(chosen);
   const [device, setDevice] = useState('');
   const [takeOver, setTakeOver] = useState(false);
   const { act, busy, failure } = useAct<{ id: string }>('/api/sessions');
-  const patient = encounters.find((encounter) => encounter.id === encounterId);
+  const [tried, setTried] = useState('');
+  // A refusal speaks of the device that was tried, not of the one that is chosen since.
+  const refusal = tried === device ? failure : null;
+  const elsewhere = refusal?.members.takeOver === true;
   async function submit(event: FormEvent) {
     event.preventDefault();
-    const answer = await act({ encounterId, device, takeOver });
+    if (!patient) return;
+    setTried(device);
+    const answer = await act({ encounterId: patient.id, device: device.trim(), takeOver });
     if (answer) router.push(`/bedside/sessions/${answer.id}`);
   }
-  if (encounters.length === 0)
-    return (
-      <EmptyState title="Nobody is on your wards now">
-        Open a patient of another ward from Bedside first.
-      </EmptyState>
-    );
   return (
-    <form onSubmit={submit} className="grid max-w-[640px] gap-5">
-      {failure ? (
-        <Notice tone={failure.members.takeOver === true ? 'care' : 'alarm'} title={failure.title}>
-          {failure.message}
-          {failure.members.takeOver === true ? (
-            <div className="mt-2">
+    <form onSubmit={submit} className="grid max-w-[720px] gap-6">
+      <EncounterPicker chosen={patient} onChoose={setPatient} first={encounters} />
+      {patient ? (
+        <Notice tone="info" title={`Is this ${nameOf(patient)}?`}>
+          Ask for two identifiers before you begin: born {bornInWords(patient.birthDate)}, record{' '}
+          <span className="mono">{patient.recordNumber}</span>.
+        </Notice>
+      ) : null}
+      <DevicePicker
+        word={device}
+        own={devices}
+        onWord={(word) => {
+          setDevice(word);
+          setTakeOver(false);
+        }}
+      />
+      {refusal ? (
+        <Notice tone={elsewhere ? 'care' : 'alarm'} title={refusal.title} live>
+          <p>{refusal.message}</p>
+          {elsewhere ? (
+            <>
+              <p>
+                It has been there since <Time at={Number(refusal.members.since)} mode="minute" />.
+              </p>
               <Checkbox
                 label="It is here with me now: end that session"
                 checked={takeOver}
                 onChange={(event) => setTakeOver(event.target.checked)}
+                className="mt-2 min-h-11"
               />
-            </div>
+            </>
           ) : null}
         </Notice>
-      ) : null}
-      <Field label="Patient" required>
-        <Select
-          value={encounterId}
-          onChange={(event) => setEncounterId(event.target.value)}
-          placeholder="Choose a patient"
-          className="min-h-11"
-          options={encounters.map((e) => ({
-            value: e.id,
-            label: `${e.familyName}, ${e.givenName} · ${bornInWords(e.birthDate)} · ${e.recordNumber}${e.bed ? ` · ${e.bed}` : ''}`,
-          }))}
-        />
-      </Field>
-      {patient ? (
-        <Notice tone="info" title={`Is this ${nameOf(patient)}?`}>
-          Ask for two identifiers before you begin. Born {bornInWords(patient.birthDate)}, record{' '}
-          <span className="mono">{patient.recordNumber}</span>, encounter{' '}
-          <span className="mono">{patient.number}</span>.
-        </Notice>
-      ) : null}
-      <Field label="Stethoscope" help="Scan its label, or type the asset tag or serial number." required>
-        <TextInput
-          value={device}
-          onChange={(event) => setDevice(event.target.value)}
-          mono
-          autoComplete="off"
-          className="min-h-11"
-        />
-      </Field>
-      {devices.length > 0 ? (
-        <FieldSet legend="Or one of your wards">
-          <div className="grid gap-1 min-[641px]:grid-cols-2">
-            {devices.map((one) => (
-              <div key={one.id} className="flex min-h-11 flex-wrap items-center gap-x-2">
-                <Checkbox
-                  radio
-                  name="device"
-                  label={
-                    <>
-                      <span className="mono">{one.assetTag}</span> {one.model}
-                    </>
-                  }
-                  checked={device === one.assetTag}
-                  onChange={() => setDevice(one.assetTag)}
-                />
-                <span className="text-13 text-ink-soft">
-                  {one.inSession ? (
-                    `in ${one.inSession}`
-                  ) : (
-                    <>
-                      heard <Time at={one.lastHeardAt} ago />
-                    </>
-                  )}
-                </span>
-              </div>
-            ))}
-          </div>
-        </FieldSet>
       ) : null}
       <div>
         <Button
@@ -137,9 +76,9 @@ export function NewSession({
           variant="primary"
           size="large"
           busy={busy}
-          disabled={encounterId === '' || device === ''}
+          disabled={!patient || device.trim() === '' || (elsewhere && !takeOver)}
         >
-          Open the session
+          {patient ? `Open the session for ${nameOf(patient)}` : 'Open the session'}
         </Button>
       </div>
     </form>

@@ -12,3 +12,15 @@ export function bornInWords(date: string | null): string {
 
 export const nameOf = (who: { givenName: string; familyName: string }): string =>
   `${who.givenName} ${who.familyName}`;
+
+/** As lists have it, family name first. */
+export const listNameOf = (who: { givenName: string; familyName: string }): string =>
+  `${who.familyName}, ${who.givenName}`;
+
+/** "1 clip", "3 clips". */
+export const counted = (count: number, one: string, many = `${one}s`): string =>
+  `${count.toLocaleString('en-GB')} ${count === 1 ? one : many}`;
+
+/** "Alder", "Alder and Birch", "Alder, Birch and Cedar". */
+export const joined = (names: readonly string[]): string =>
+  names.length < 2 ? (names[0] ?? '') : `${names.slice(0, -1).join(', ')} and ${names.at(-1)}`;

@@ -163,7 +163,12 @@ const SENTENCES: Record<string, Sentence> = {
   'put-in-tray': (d) => `Because ${TRAY_WORDS[text(d.why)] ?? text(d.why)}`,
   'kept-anyway': (d, e) => `${actorWords(e.actor)}. Reason given: “${text(d.reason)}”`,
   heard: (d, e) =>
-    join(actorWords(e.actor), text(d.band), typeof d.seconds === 'number' && `${text(d.seconds)} s`),
+    join(
+      actorWords(e.actor),
+      text(d.band),
+      typeof d.from === 'number' && typeof d.to === 'number' && `${text(d.from)} to ${text(d.to)} s`,
+      typeof d.seconds === 'number' && `for ${text(d.seconds)} s`,
+    ),
   'access-outside-wards': (d, e) => `${actorWords(e.actor)}. Reason given: “${text(d.reason)}”`,
   'session-opened': (d, e) =>
     join(

@@ -1,12 +1,19 @@
-import { and, desc, eq, gte, inArray, isNull, lte, or } from 'drizzle-orm';
-import { device, encounter, listeningSession, patient, recording, ward } from '@/db/schema';
+import type { Sight } from '@/db/queries/sight';
+import {
+  candidateRows,
+  encountersHeardWith,
+  encountersNamed,
+  encountersOnWard,
+  sessionsOfDevice,
+} from '@/db/queries/tray';
 import type { Services } from '@/lib/platform/services';
 
 export interface Candidate {
   encounterId: string;
   encounterNumber: string;
   patientId: string;
-  patientName: string;
+  givenName: string;
+  familyName: string;
   recordNumber: string;
   birthDate: string | null;
   ward: string | null;
@@ -15,116 +22,119 @@ export interface Candidate {
   why: string[];
 }
 
-const NEAR_MS = 30 * 60_000;
-const MOST = 5;
+export interface StrayClip {
+  deviceId: string;
+  wardId: string | null;
+  ward: string | null;
+  /** UTC milliseconds. */
+  recordedAt: number;
+  scannedIdentifier: string | null;
+}
 
-const minutes = (ms: number): string => `${Math.max(1, Math.round(ms / 60_000))} min`;
+const NEAR_MS = 30 * 60_000;
+const SAME_ROUND_MS = 12 * 3_600_000;
+const LATELY_MS = 14 * 86_400_000;
+const MOST = 5;
+/** Of those who were merely on the ward: a longer list would only be leafed through. */
+const MOST_OF_WARD = 3;
+/** From here on a reason is more than having been on the ward. */
+const STRONG = 10;
+
+interface Reason {
+  encounterId: string;
+  weight: number;
+  words: string;
+}
 
 /**
- * Encounters that a stray clip may belong to, the likeliest first, each with why. Order: the scanned identifier, then
- * sessions of the same device close in time, then encounters on the device's ward. Nothing is filed by this: a person
- * reads two identifiers first.
+ * Encounters that a stray clip may belong to, the likeliest first, each with why: the scanned identifier, then sessions
+ * of the same device close in time, then whom the device was with lately, then who was on the device's ward. The
+ * weights only order; they are ours and shown to nobody. Nothing is filed by this: a person reads two identifiers first.
  *
- * @param wardIds wards the person sees; encounters elsewhere are not suggested
+ * @param sight encounters that the person does not see are not suggested
  */
 export async function candidatesFor(
   services: Pick<Services, 'read'>,
-  recordingId: string,
-  wardIds: readonly string[],
+  clip: StrayClip,
+  sight: Sight,
 ): Promise<Candidate[]> {
-  const [clip] = await services.read
-    .select({ clip: recording, wardId: device.wardId })
-    .from(recording)
-    .innerJoin(device, eq(device.id, recording.deviceId))
-    .where(eq(recording.id, recordingId))
-    .limit(1);
-  if (!clip || wardIds.length === 0) return [];
-  const at = clip.clip.recordedAt;
-  const rank = new Map<string, { score: number; why: string[] }>();
-  const add = (encounterId: string, score: number, why: string) => {
-    const before = rank.get(encounterId) ?? { score: 0, why: [] };
-    rank.set(encounterId, { score: before.score + score, why: [...before.why, why] });
-  };
-
-  const scanned = clip.clip.scannedIdentifier;
-  if (scanned !== null) {
-    const rows = await services.read
-      .select({ id: encounter.id })
-      .from(encounter)
-      .innerJoin(patient, eq(patient.id, encounter.patientId))
-      .where(or(eq(encounter.number, scanned), eq(patient.recordNumber, scanned)))
-      .limit(10);
-    for (const row of rows) add(row.id, 100, `“${scanned}” was scanned with the clip`);
+  const reasons = [
+    ...(await byScan(services, clip)),
+    ...(await bySession(services, clip)),
+    ...(await byWard(services, clip)),
+  ];
+  const ranked = new Map<string, { weight: number; why: string[] }>();
+  for (const { encounterId, weight, words } of reasons.sort((a, b) => b.weight - a.weight)) {
+    const before = ranked.get(encounterId) ?? { weight: 0, why: [] };
+    ranked.set(encounterId, { weight: before.weight + weight, why: [...before.why, words] });
   }
-  const sessions = await services.read
-    .select({
-      encounterId: listeningSession.encounterId,
-      number: listeningSession.number,
-      openedAt: listeningSession.openedAt,
-      closedAt: listeningSession.closedAt,
-    })
-    .from(listeningSession)
-    .where(
-      and(
-        eq(listeningSession.deviceId, clip.clip.deviceId),
-        gte(listeningSession.openedAt, at - 12 * 3_600_000),
-        lte(listeningSession.openedAt, at + NEAR_MS),
-      ),
-    )
-    .orderBy(desc(listeningSession.openedAt))
-    .limit(10);
-  for (const session of sessions) {
-    if (session.openedAt > at)
-      add(
-        session.encounterId,
-        60,
-        `session ${session.number} with this device began ${minutes(session.openedAt - at)} later`,
-      );
-    else if (session.closedAt === null)
-      add(session.encounterId, 80, `session ${session.number} with this device was open`);
-    else if (at - session.closedAt <= NEAR_MS)
-      add(
-        session.encounterId,
-        70,
-        `session ${session.number} with this device had ended ${minutes(Math.max(0, at - session.closedAt))} before`,
-      );
-    else add(session.encounterId, 20, `this device was with the patient earlier that day`);
-  }
-  if (clip.wardId !== null) {
-    const here = await services.read
-      .select({ id: encounter.id })
-      .from(encounter)
-      .where(
-        and(
-          eq(encounter.wardId, clip.wardId),
-          lte(encounter.startedAt, at),
-          or(isNull(encounter.endedAt), gte(encounter.endedAt, at)),
-        ),
-      )
-      .orderBy(desc(encounter.startedAt))
-      .limit(20);
-    for (const row of here) add(row.id, 5, 'on the ward that the device belongs to, at that time');
-  }
-  if (rank.size === 0) return [];
-  const rows = await services.read
-    .select({ encounter, patient, ward: ward.name })
-    .from(encounter)
-    .innerJoin(patient, eq(patient.id, encounter.patientId))
-    .leftJoin(ward, eq(ward.id, encounter.wardId))
-    .where(and(inArray(encounter.id, [...rank.keys()]), inArray(encounter.wardId, [...wardIds])));
-  return rows
-    .map((row) => ({ row, ...(rank.get(row.encounter.id) ?? { score: 0, why: [] }) }))
-    .sort((a, b) => b.score - a.score)
-    .slice(0, MOST)
-    .map(({ row, why }) => ({
-      encounterId: row.encounter.id,
-      encounterNumber: row.encounter.number,
-      patientId: row.patient.id,
-      patientName: `${row.patient.givenName} ${row.patient.familyName}`,
-      recordNumber: row.patient.recordNumber,
-      birthDate: row.patient.birthDate,
-      ward: row.ward,
-      bed: row.encounter.bed,
-      why,
-    }));
+  const rows = await candidateRows(services.read, sight, [...ranked.keys()]);
+  const found = rows
+    .map(({ startedAt, ...row }) => ({
+      row,
+      startedAt,
+      ...(ranked.get(row.encounterId) ?? { weight: 0, why: [] }),
+    }))
+    .sort((a, b) => b.weight - a.weight || b.startedAt - a.startedAt);
+  const strong = found.filter(({ weight }) => weight >= STRONG);
+  const weak = found.filter(({ weight }) => weight < STRONG).slice(0, MOST_OF_WARD);
+  return [...strong, ...weak].slice(0, MOST).map(({ row, why }) => ({ ...row, why }));
 }
+
+async function byScan(services: Pick<Services, 'read'>, clip: StrayClip): Promise<Reason[]> {
+  const scanned = clip.scannedIdentifier;
+  if (scanned === null) return [];
+  const named = await encountersNamed(services.read, scanned);
+  return named
+    .filter(({ status }) => status !== 'cancelled')
+    .map(({ id, startedAt, endedAt }) => {
+      const ran = startedAt <= clip.recordedAt && (endedAt === null || endedAt >= clip.recordedAt);
+      return {
+        encounterId: id,
+        weight: ran ? 100 : 40,
+        words: ran
+          ? `“${scanned}” was scanned with the clip`
+          : `“${scanned}” was scanned, though this encounter ${startedAt > clip.recordedAt ? 'began later' : 'had ended by then'}`,
+      };
+    });
+}
+
+async function bySession(services: Pick<Services, 'read'>, clip: StrayClip): Promise<Reason[]> {
+  const at = clip.recordedAt;
+  const sessions = await sessionsOfDevice(services.read, clip.deviceId, at - SAME_ROUND_MS, at + NEAR_MS);
+  return sessions.map(({ encounterId, number, openedAt, closedAt }) => {
+    const session = `session ${number} with this device`;
+    if (openedAt > at)
+      return { encounterId, weight: 60, words: `${session} began ${minutes(openedAt - at)} later` };
+    if (closedAt === null || closedAt >= at) return { encounterId, weight: 80, words: `${session} was open` };
+    if (at - closedAt <= NEAR_MS)
+      return { encounterId, weight: 70, words: `${session} had ended ${minutes(at - closedAt)} before` };
+    return { encounterId, weight: 20, words: 'this device was with the patient earlier that day' };
+  });
+}
+
+async function byWard(services: Pick<Services, 'read'>, clip: StrayClip): Promise<Reason[]> {
+  if (clip.wardId === null) return [];
+  const [here, heard] = await Promise.all([
+    encountersOnWard(services.read, clip.wardId, clip.recordedAt),
+    encountersHeardWith(services.read, clip.deviceId, clip.recordedAt - LATELY_MS, clip.recordedAt),
+  ]);
+  const heardAt = new Map(heard.map((row) => [row.encounterId, row.at]));
+  return here.flatMap(({ id }): Reason[] => {
+    const last = heardAt.get(id);
+    const onWard = {
+      encounterId: id,
+      weight: 5,
+      words: `in ${clip.ward ?? 'the ward'} then, where the device belongs`,
+    };
+    if (last === undefined) return [onWard];
+    const days = Math.round((clip.recordedAt - last) / 86_400_000);
+    const when = days === 0 ? 'the same day' : days === 1 ? 'the day before' : `${days} days before`;
+    return [
+      { encounterId: id, weight: 15 - Math.min(9, days), words: `this device recorded the patient ${when}` },
+      onWard,
+    ];
+  });
+}
+
+const minutes = (ms: number): string => `${Math.max(1, Math.round(ms / 60_000))} min`;

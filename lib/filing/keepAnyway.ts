@@ -1,6 +1,6 @@
-import { eq } from 'drizzle-orm';
+import { and, eq, isNull } from 'drizzle-orm';
 import { z } from 'zod';
-import { recording } from '@/db/schema';
+import { filing, recording } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
 import { type Authorized, personActor } from '@/lib/platform/authority';
@@ -13,6 +13,7 @@ export const Keep = z.strictObject({ reason: z.string().trim().min(5).max(500) }
  * Keep a clip that should be recorded again, with a reason: a crying child may not allow a second try. The verdict
  * stays what it is.
  *
+ * @param number the recording's number
  * @throws Refusal `not-found`, `not-possible`
  */
 export async function keepAnyway(
@@ -33,6 +34,11 @@ export async function keepAnyway(
     if (clip.verdict !== 'repeat')
       throw new Refusal('not-possible', `${clip.number} need not be recorded again.`);
     if (clip.keptAt !== null) throw new Refusal('not-possible', `${clip.number} is kept already.`);
+    const [filed] = await tx
+      .select({ encounterId: filing.encounterId, patientId: filing.patientId })
+      .from(filing)
+      .where(and(eq(filing.recordingId, clip.id), isNull(filing.supersededAt)))
+      .limit(1);
     await tx
       .update(recording)
       .set({ keptReason: reason, keptBy: by.id, keptAt: now, version: clip.version + 1 })
@@ -44,6 +50,12 @@ export async function keepAnyway(
         subjects: [
           { kind: 'recording', id: clip.id },
           { kind: 'device', id: clip.deviceId },
+          ...(filed
+            ? [
+                { kind: 'encounter' as const, id: filed.encounterId },
+                { kind: 'patient' as const, id: filed.patientId },
+              ]
+            : []),
         ],
         detail: { number: clip.number, reason },
       },

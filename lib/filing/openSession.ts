@@ -1,13 +1,15 @@
-import { and, eq, isNull, or, sql } from 'drizzle-orm';
+import { and, eq, isNull, sql } from 'drizzle-orm';
 import { z } from 'zod';
-import { device, encounter, listeningSession, user } from '@/db/schema';
+import { encounter, listeningSession, user } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
-import type { NewEntry } from '@/lib/custody/entry';
+import type { Actor, NewEntry } from '@/lib/custody/entry';
 import { type Authorized, personActor } from '@/lib/platform/authority';
 import { Refusal } from '@/lib/platform/errors';
 import { newId } from '@/lib/platform/ids';
 import type { Services } from '@/lib/platform/services';
+import { endSession } from './closeSession';
+import { findDevice } from './findDevice';
 
 export const SessionToOpen = z.strictObject({
   encounterId: z.string().min(1).max(64),
@@ -18,17 +20,19 @@ export const SessionToOpen = z.strictObject({
 });
 export type SessionToOpen = z.infer<typeof SessionToOpen>;
 
-interface Opened {
+export interface Opened {
   id: string;
   number: string;
+  /** The device was with this patient already: its open session goes on. */
+  wasOpen: boolean;
 }
 
 /**
  * "This device is with this patient from now on": clips in that window file themselves. The caller has checked that
  * the person may see the encounter's patient.
  *
- * @throws Refusal `not-found`; `not-possible` when the device is not in service, the encounter is over, or the device
- *   is in another session (then with `session` and `since`; taking over ends that one)
+ * @throws Refusal `not-found`; `not-possible` when the device is not in service, the encounter is not running, or the
+ *   device is in another session (then with `session`, `since` and `takeOver`; taking over ends that one)
  */
 export async function openSession(
   services: Pick<Services, 'write' | 'clock'>,
@@ -39,136 +43,84 @@ export async function openSession(
   const now = services.clock.now();
   const actor = personActor(by, 'session.write');
   return await services.write(async (tx) => {
-    const [place] = await tx.select().from(encounter).where(eq(encounter.id, wanted.encounterId)).limit(1);
-    if (!place) throw new Refusal('not-found');
-    if (place.status !== 'in-progress')
-      throw new Refusal(
-        'not-possible',
-        `Encounter ${place.number} is ${place.status.replace('-', ' ')}. Choose one that is running.`,
-      );
+    const place = await runningEncounter(tx, wanted.encounterId);
     const found = await findDevice(tx, wanted.device);
-    const entries: NewEntry[] = [];
-    const [open] = await tx
-      .select({ session: listeningSession, opener: user.name })
-      .from(listeningSession)
-      .innerJoin(user, eq(user.id, listeningSession.openedBy))
-      .where(and(eq(listeningSession.deviceId, found.id), isNull(listeningSession.closedAt)))
-      .limit(1);
-    if (open && open.session.encounterId === place.id)
-      return { id: open.session.id, number: open.session.number };
-    if (open && !wanted.takeOver) {
-      throw new Refusal(
-        'not-possible',
-        `${found.assetTag} is in listening session ${open.session.number}, opened by ${open.opener}. Take it over if it is here now.`,
-        {
-          session: open.session.number,
-          since: open.session.openedAt,
-          takeOver: true,
-        },
-      );
-    }
-    if (open) {
-      await tx
-        .update(listeningSession)
-        .set({ closedAt: now, closedBy: by.id, closedWhy: 'device-moved' })
-        .where(eq(listeningSession.id, open.session.id));
+    const open = await openSessionOf(tx, found.id);
+    let answer: Opened;
+    if (open?.session.encounterId === place.id) {
+      answer = { id: open.session.id, number: open.session.number, wasOpen: true };
+    } else {
+      if (open && !wanted.takeOver) throw inUse(found.assetTag, open);
+      const entries = open ? [await moveDevice(tx, open, actor, now)] : [];
+      const number = await nextNumber(tx);
+      answer = { id: newId(), number, wasOpen: false };
+      await tx.insert(listeningSession).values({
+        id: answer.id,
+        number,
+        deviceId: found.id,
+        encounterId: place.id,
+        openedBy: by.id,
+        openedAt: now,
+      });
       entries.push({
-        kind: 'session-closed',
+        kind: 'session-opened',
         actor,
         subjects: [
-          { kind: 'session', id: open.session.id },
+          { kind: 'session', id: answer.id },
           { kind: 'device', id: found.id },
-          { kind: 'encounter', id: open.session.encounterId },
+          { kind: 'encounter', id: place.id },
+          { kind: 'patient', id: place.patientId },
         ],
-        detail: { number: open.session.number, why: 'device moved' },
+        detail: { number, assetTag: found.assetTag, encounter: place.number },
       });
+      await appendEntries(tx, now, entries);
     }
-    const [count] = await tx.select({ n: sql<number>`count(*)` }).from(listeningSession);
-    const answer: Opened = { id: newId(), number: `S-${2001 + (count?.n ?? 0)}` };
-    await tx
-      .insert(listeningSession)
-      .values({ ...answer, deviceId: found.id, encounterId: place.id, openedBy: by.id, openedAt: now });
-    entries.push({
-      kind: 'session-opened',
-      actor,
-      subjects: [
-        { kind: 'session', id: answer.id },
-        { kind: 'device', id: found.id },
-        { kind: 'encounter', id: place.id },
-        { kind: 'patient', id: place.patientId },
-      ],
-      detail: { number: answer.number, assetTag: found.assetTag, encounter: place.number },
-    });
-    await appendEntries(tx, now, entries);
     await remember?.(tx, answer);
+    // Durable when this transaction commits. Died before: the session that was open before still is. Died after: asking
+    // again answers with the session that is open now.
     return answer;
   });
 }
 
-async function findDevice(tx: Tx, word: string) {
-  const rows = await tx
-    .select()
-    .from(device)
-    .where(
-      or(
-        eq(device.assetTag, word.toUpperCase()),
-        eq(device.assetTag, word),
-        eq(device.serialNumber, word),
-        eq(device.udi, word),
-      ),
-    )
-    .limit(2);
-  const found = rows[0];
-  if (!found)
+async function runningEncounter(tx: Tx, id: string) {
+  const [place] = await tx.select().from(encounter).where(eq(encounter.id, id)).limit(1);
+  if (!place) throw new Refusal('not-found');
+  if (place.status !== 'in-progress')
     throw new Refusal(
       'not-possible',
-      `No device goes by “${word}”. Scan its label again, or type the asset tag.`,
+      `Encounter ${place.number} is ${place.status}. Choose one that is running.`,
     );
-  if (rows.length > 1)
-    throw new Refusal('not-possible', `More than one device goes by “${word}”. Type the asset tag.`);
-  if (found.state !== 'in-service')
-    throw new Refusal(
-      'not-possible',
-      `${found.assetTag} is ${found.state.replace('-', ' ')}. Take another stethoscope.`,
-    );
-  return found;
+  return place;
 }
 
-/**
- * End a session. Ending one that has ended is no error: the answer says when.
- *
- * @throws Refusal `not-found`
- */
-export async function closeSession(
-  services: Pick<Services, 'write' | 'clock'>,
-  by: Authorized<'session.write'>,
-  id: string,
-  remember?: (tx: Tx, answer: { number: string; closedAt: number }) => Promise<void>,
-): Promise<{ number: string; closedAt: number }> {
-  const now = services.clock.now();
-  return await services.write(async (tx) => {
-    const [open] = await tx.select().from(listeningSession).where(eq(listeningSession.id, id)).limit(1);
-    if (!open) throw new Refusal('not-found');
-    const answer = { number: open.number, closedAt: open.closedAt ?? now };
-    if (open.closedAt === null) {
-      await tx
-        .update(listeningSession)
-        .set({ closedAt: now, closedBy: by.id, closedWhy: 'ended' })
-        .where(eq(listeningSession.id, id));
-      await appendEntries(tx, now, [
-        {
-          kind: 'session-closed',
-          actor: personActor(by, 'session.write'),
-          subjects: [
-            { kind: 'session', id },
-            { kind: 'device', id: open.deviceId },
-            { kind: 'encounter', id: open.encounterId },
-          ],
-          detail: { number: open.number, why: 'ended' },
-        },
-      ]);
-    }
-    await remember?.(tx, answer);
-    return answer;
-  });
+async function openSessionOf(tx: Tx, deviceId: string) {
+  const [open] = await tx
+    .select({ session: listeningSession, opener: user.name, patientId: encounter.patientId })
+    .from(listeningSession)
+    .innerJoin(user, eq(user.id, listeningSession.openedBy))
+    .innerJoin(encounter, eq(encounter.id, listeningSession.encounterId))
+    .where(and(eq(listeningSession.deviceId, deviceId), isNull(listeningSession.closedAt)))
+    .limit(1);
+  return open ?? null;
+}
+type Open = NonNullable<Awaited<ReturnType<typeof openSessionOf>>>;
+
+const inUse = (assetTag: string, { session, opener }: Open): Refusal =>
+  new Refusal(
+    'not-possible',
+    `${assetTag} is in listening session ${session.number}, opened by ${opener}. Take it over if it is here now.`,
+    { session: session.number, since: session.openedAt, openedBy: opener, takeOver: true },
+  );
+
+const moveDevice = (tx: Tx, { session, patientId }: Open, actor: Actor, now: number): Promise<NewEntry> =>
+  endSession(
+    tx,
+    { ...session, patientId },
+    { actor, nowMs: now, why: 'device-moved', words: 'device moved' },
+  );
+
+/** Sessions are never removed, and one transaction runs at a time: the count is the next number. */
+async function nextNumber(tx: Tx): Promise<string> {
+  const [row] = await tx.select({ n: sql<number>`count(*)` }).from(listeningSession);
+  return `S-${2001 + (row?.n ?? 0)}`;
 }

@@ -7,7 +7,7 @@ import { newId } from '@/lib/platform/ids';
  * How far a clip may begin before its session was opened: a clinician who opens the session while the device is
  * already recording means that patient. Ours; small against the time a chestpiece needs to reach another bed.
  */
-const BEFORE_SESSION_MS = 5_000;
+export const BEFORE_SESSION_MS = 5_000;
 
 export interface Placement {
   encounterId: string;

@@ -1,14 +1,13 @@
-import { entriesFrom, logSize, type ThreadEntry } from '@/lib/custody/readThread';
-import { may } from '@/lib/identity/permissions';
+import type { ThreadEntry } from '@/lib/custody/readThread';
 import type { Person } from '@/lib/platform/authority';
 import type { Services } from '@/lib/platform/services';
+import { audibleTo } from './audible';
+import { type Batch, followLog } from './logTail';
 
-const POLL_MS = 700;
 const BEAT_MS = 20_000;
 /** A stream begins anew after this, so that a session that has ended does not go on listening. */
 const LONGEST_MS = 15 * 60_000;
-const AT_ONCE = 200;
-const STREAMS_A_PERSON = 8;
+export const STREAMS_A_PERSON = 8;
 
 const shared = globalThis as {
   bellkeepStreams?: { open: Set<() => void>; byPerson: Map<string, number>; listening: boolean };
@@ -19,33 +18,21 @@ function streams() {
   if (!state.listening) {
     state.listening = true;
     // An open stream would hold a stopping server up for as long as a browser likes.
-    for (const signal of ['SIGTERM', 'SIGINT'] as const)
-      process.once(signal, () => {
-        for (const end of state.open) end();
-      });
+    for (const signal of ['SIGTERM', 'SIGINT'] as const) process.once(signal, endStreams);
   }
   return state;
 }
 
-/** Which subjects of an entry this person may hear of: the names of things only, never what happened to them. */
-function audible(person: Person, entry: ThreadEntry): { kind: string; id: string }[] {
-  const clinical = may(person.roles, 'recording.read');
-  const fleet = may(person.roles, 'device.read');
-  const people = may(person.roles, 'people.read');
-  return entry.entry.subjects.filter(({ kind }) => {
-    if (['recording', 'patient', 'encounter', 'session'].includes(kind))
-      return clinical || (kind === 'recording' && fleet);
-    if (['device', 'model'].includes(kind)) return fleet;
-    if (kind === 'credential' || kind === 'signing-key') return may(person.roles, 'credential.read');
-    if (kind === 'person' || kind === 'invitation') return people || may(person.roles, 'ledger.read');
-    return true;
-  });
+/** End every stream of this process: it is about to stop. */
+export function endStreams(): void {
+  for (const end of [...(shared.bellkeepStreams?.open ?? [])]) end();
 }
 
 /** Entries after which a person's sessions may have ended, or may do something else. */
 const CHANGES_AUTHORITY = new Set<string>([
   'role-given',
   'role-taken',
+  'wards-changed',
   'person-left',
   'sessions-ended',
   'password-reset',
@@ -56,9 +43,93 @@ const CHANGES_AUTHORITY = new Set<string>([
 const speaksOf = (person: Person, { entry }: ThreadEntry): boolean =>
   entry.subjects.some(({ kind, id }) => kind === 'person' && id === person.id);
 
+/** Events that a browser has not taken: a line that is this far behind is ended, and opened anew. */
+const MOST_WAITING = 1_000;
+
+class EventStream {
+  readonly body: ReadableStream<Uint8Array>;
+  #controller: ReadableStreamDefaultController<Uint8Array> | null = null;
+  #over = false;
+  #atEnd: (() => void)[] = [];
+  // Told one after the other: what takes longer to look up must not be overtaken.
+  #telling: Promise<void> = Promise.resolve();
+  readonly #audible: ReturnType<typeof audibleTo>;
+
+  constructor(
+    private readonly services: Services,
+    private readonly person: Person,
+  ) {
+    this.#audible = audibleTo(services, person);
+    this.body = new ReadableStream<Uint8Array>(
+      {
+        start: (controller) => {
+          this.#controller = controller;
+        },
+        cancel: () => this.end(),
+      },
+      new CountQueuingStrategy({ highWaterMark: MOST_WAITING }),
+    );
+    this.say('retry: 2000\n\n');
+    const beat = setInterval(() => this.say(': still here\n\n'), BEAT_MS);
+    const longest = setTimeout(() => this.end(), LONGEST_MS);
+    this.whenOver(() => {
+      clearInterval(beat);
+      clearTimeout(longest);
+    });
+  }
+
+  whenOver(act: () => void): void {
+    if (this.#over) act();
+    else this.#atEnd.push(act);
+  }
+
+  readonly follow = (batch: Batch): void => {
+    this.#telling = this.#telling
+      .then(() => this.#tell(batch))
+      .catch((error: unknown) => {
+        // What could not be told is not known to the page: it opens another stream, and asks for everything.
+        this.services.log.warn({ err: error }, 'an event stream was ended by a fault');
+        this.end();
+      });
+  };
+
+  readonly end = (): void => {
+    if (this.#over) return;
+    this.#over = true;
+    for (const act of this.#atEnd) act();
+    try {
+      this.#controller?.close();
+    } catch {
+      // The other side closed it first.
+    }
+  };
+
+  async #tell(batch: Batch): Promise<void> {
+    for (const entry of batch.entries) {
+      if (this.#over) return;
+      // What one may hear was read when the stream began: it begins anew, or not at all.
+      if (CHANGES_AUTHORITY.has(entry.kind) && speaksOf(this.person, entry)) return this.end();
+      const subjects = await this.#audible(entry, batch);
+      if (subjects.length === 0) continue;
+      const data = JSON.stringify({ kind: entry.kind, subjects, sequence: entry.sequence });
+      this.say(`id: ${entry.sequence}\ndata: ${data}\n\n`);
+    }
+  }
+
+  private say(text: string): void {
+    if (this.#over) return;
+    if ((this.#controller?.desiredSize ?? 0) <= 0) this.end();
+    else this.#controller?.enqueue(encoder.encode(text));
+  }
+}
+
+const encoder = new TextEncoder();
+
 /**
- * Server-sent events that follow the custody log: what changed, so that pages ask again. The log is in the database, so
- * it does not matter which process the change happened in.
+ * Server-sent events (HTML, 9.2) that follow the custody log: what changed, so that pages ask again. Ends when the
+ * person's authority changes, when the process stops, and after a quarter of an hour: the page then opens another.
+ *
+ * @returns null when the person has as many streams open as one may
  */
 export async function eventStream(
   services: Services,
@@ -66,59 +137,28 @@ export async function eventStream(
   signal: AbortSignal,
 ): Promise<Response | null> {
   const state = streams();
+  const count = (change: 1 | -1) => {
+    const now = (state.byPerson.get(person.id) ?? 0) + change;
+    if (now > 0) state.byPerson.set(person.id, now);
+    else state.byPerson.delete(person.id);
+  };
   if ((state.byPerson.get(person.id) ?? 0) >= STREAMS_A_PERSON) return null;
-  let next = await logSize(services);
-  const encoder = new TextEncoder();
-  let end: () => void = () => undefined;
-  const body = new ReadableStream<Uint8Array>({
-    start(controller) {
-      state.byPerson.set(person.id, (state.byPerson.get(person.id) ?? 0) + 1);
-      const say = (text: string) => controller.enqueue(encoder.encode(text));
-      say('retry: 2000\n\n');
-      let polling = false;
-      const poll = setInterval(async () => {
-        if (polling) return;
-        polling = true;
-        try {
-          for (const entry of await entriesFrom(services, next, AT_ONCE)) {
-            next = entry.sequence + 1;
-            // What one may hear was read when the stream began: it begins anew, or not at all.
-            if (CHANGES_AUTHORITY.has(entry.kind) && speaksOf(person, entry)) return end();
-            const subjects = audible(person, entry);
-            if (subjects.length > 0)
-              say(
-                `id: ${entry.sequence}\ndata: ${JSON.stringify({ kind: entry.kind, subjects, sequence: entry.sequence })}\n\n`,
-              );
-          }
-        } catch (error) {
-          services.log.warn({ err: error }, 'an event stream could not read the log');
-        } finally {
-          polling = false;
-        }
-      }, POLL_MS);
-      const beat = setInterval(() => say(': still here\n\n'), BEAT_MS);
-      const longest = setTimeout(() => end(), LONGEST_MS);
-      let over = false;
-      end = () => {
-        if (over) return;
-        over = true;
-        clearInterval(poll);
-        clearInterval(beat);
-        clearTimeout(longest);
-        state.open.delete(end);
-        state.byPerson.set(person.id, Math.max(0, (state.byPerson.get(person.id) ?? 1) - 1));
-        try {
-          controller.close();
-        } catch {
-          // The other side closed it first.
-        }
-      };
-      state.open.add(end);
-      signal.addEventListener('abort', end);
-    },
-    cancel: () => end(),
+  count(1);
+  const stream = new EventStream(services, person);
+  state.open.add(stream.end);
+  stream.whenOver(() => {
+    state.open.delete(stream.end);
+    count(-1);
   });
-  return new Response(body, {
+  signal.addEventListener('abort', stream.end);
+  try {
+    stream.whenOver(await followLog(services, stream.follow));
+  } catch (error) {
+    stream.end();
+    throw error;
+  }
+  if (signal.aborted) stream.end();
+  return new Response(stream.body, {
     headers: {
       'content-type': 'text/event-stream; charset=utf-8',
       'cache-control': 'no-store, no-transform',

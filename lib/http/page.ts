@@ -4,6 +4,7 @@ import { cache } from 'react';
 import { may, type Permission } from '@/lib/identity/permissions';
 import { readPerson, type SignedIn } from '@/lib/identity/readPerson';
 import type { Authorized } from '@/lib/platform/authority';
+import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
 import { getServices } from './services';
 
@@ -27,4 +28,14 @@ export async function requirePage<P extends Permission>(
   if (person.needsSecondFactor && !options.beforeSecondFactor) redirect('/account?second-factor=required');
   if (!may(person.roles, permission)) notFound();
   return { person: person as unknown as Authorized<P>, services };
+}
+
+/** What a page shows, or the page for what one may not see and for what does not exist, which look alike. */
+export async function orNotFound<T>(wanted: Promise<T>): Promise<T> {
+  try {
+    return await wanted;
+  } catch (error) {
+    if (error instanceof Refusal && error.code === 'not-found') notFound();
+    throw error;
+  }
 }

@@ -1,4 +1,5 @@
-import type { ClipView } from '@/lib/filing/readClips';
+import { findingsOf } from '@/lib/filing/clipLine';
+import type { ClipView } from '@/lib/filing/readRecordings';
 
 /** A recording as pages and routes show it: no keys of storage, no hashes of requests. */
 export function recordingView(clip: ClipView) {
@@ -29,10 +30,11 @@ export function recordingView(clip: ClipView) {
     bytes: r.declaredBytes,
     durationSeconds: r.durationSeconds,
     sampleRateHz: r.sampleRateHz,
-    findings: r.findings ?? [],
+    findings: findingsOf(r.findings),
     measures: r.measures,
     keptAt: r.keptAt,
     keptReason: r.keptReason,
+    version: r.version,
     device: {
       id: device.id,
       assetTag: device.assetTag,

@@ -1,4 +1,5 @@
 import { applyMigrations } from '@/db/migrate';
+import { endForgottenSessions } from '@/lib/filing/endForgottenSessions';
 import { forgetExpired } from '@/lib/identity/forgetExpired';
 import { sweepRecordings } from '@/lib/ingest/sweep';
 import { currentSigningKey } from '@/lib/keys/signingKeys';
@@ -26,6 +27,7 @@ export async function startProcess(): Promise<void> {
     try {
       const done = await sweepRecordings(ingestServices(services));
       if (done > 0) services.log.info({ done }, 'the sweep carried clips on');
+      await endForgottenSessions(services);
     } catch (error) {
       services.log.error({ err: error }, 'the sweep failed');
     } finally {

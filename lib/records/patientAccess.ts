@@ -1,4 +1,4 @@
-import { and, desc, eq, gt, inArray, sql } from 'drizzle-orm';
+import { and, desc, eq, gt, inArray, ne, sql } from 'drizzle-orm';
 import { accessReason, encounter, patient } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
@@ -27,6 +27,7 @@ export async function maySeePatient(
         and(
           eq(encounter.patientId, patientId),
           inArray(encounter.wardId, [...person.wardIds]),
+          ne(encounter.status, 'cancelled'),
           sql`coalesce(${encounter.endedAt}, ${now}) > ${now - AFTER_ENCOUNTER_MS}`,
         ),
       )
@@ -46,6 +47,40 @@ export async function maySeePatient(
     .limit(1);
   return reason !== undefined;
 }
+
+/** The patient, and where an encounter was named that one, by the exact record number or encounter number. */
+async function byExactNumber(from: Services['read'] | Tx, identifier: string) {
+  const words = [identifier.trim(), identifier.trim().toUpperCase()];
+  const [byRecord] = await from
+    .select({ patientId: patient.id })
+    .from(patient)
+    .where(inArray(patient.recordNumber, words))
+    .limit(1);
+  if (byRecord) return { patientId: byRecord.patientId, encounterId: null };
+  const [byEncounter] = await from
+    .select({ patientId: encounter.patientId, encounterId: encounter.id })
+    .from(encounter)
+    .where(inArray(encounter.number, words))
+    .limit(1);
+  return byEncounter ?? null;
+}
+
+/**
+ * Whether exactly this record number or encounter number is of a patient whom the person may not see yet: then a reason
+ * is asked for. Only who holds the whole number learns that there is such a patient.
+ */
+export async function isOutsideWards(
+  services: Pick<Services, 'read' | 'clock'>,
+  person: Pick<Person, 'id' | 'wardIds'>,
+  identifier: string,
+): Promise<boolean> {
+  if (identifier.trim().length < SHORTEST_NUMBER) return false;
+  const found = await byExactNumber(services.read, identifier);
+  return found !== null && !(await maySeePatient(services, person, found.patientId));
+}
+
+/** Shorter than this no number is looked for. */
+export const SHORTEST_NUMBER = 3;
 
 interface GaveReason {
   patientId: string;
@@ -67,24 +102,12 @@ export async function giveReason(
 ): Promise<GaveReason> {
   const now = services.clock.now();
   return await services.write(async (tx) => {
-    const identifier = wanted.identifier.trim().toUpperCase();
-    const [byRecord] = await tx
-      .select({ id: patient.id })
-      .from(patient)
-      .where(eq(patient.recordNumber, identifier))
-      .limit(1);
-    const [byEncounter] = byRecord
-      ? [byRecord]
-      : await tx
-          .select({ id: encounter.patientId })
-          .from(encounter)
-          .where(eq(encounter.number, identifier))
-          .limit(1);
-    if (!byEncounter) throw new Refusal('not-found');
+    const found = await byExactNumber(tx, wanted.identifier);
+    if (!found) throw new Refusal('not-found');
     await tx.insert(accessReason).values({
       id: newId(),
       personId: by.id,
-      patientId: byEncounter.id,
+      patientId: found.patientId,
       reason: wanted.reason,
       givenAt: now,
       expiresAt: now + REASON_LASTS_MS,
@@ -94,22 +117,27 @@ export async function giveReason(
         kind: 'access-outside-wards',
         actor: personActor(by, 'bedside.read'),
         subjects: [
-          { kind: 'patient', id: byEncounter.id },
+          { kind: 'patient', id: found.patientId },
           { kind: 'person', id: by.id },
         ],
         detail: { reason: wanted.reason },
       },
     ]);
-    const [latest] = await tx
-      .select({ id: encounter.id })
-      .from(encounter)
-      .where(
-        and(eq(encounter.patientId, byEncounter.id), byRecord ? undefined : eq(encounter.number, identifier)),
-      )
-      .orderBy(desc(encounter.startedAt))
-      .limit(1);
-    const answer = { patientId: byEncounter.id, encounterId: latest?.id ?? null };
+    const answer = {
+      patientId: found.patientId,
+      encounterId: found.encounterId ?? (await latestEncounter(tx, found.patientId)),
+    };
     await remember?.(tx, answer);
     return answer;
   });
+}
+
+async function latestEncounter(tx: Tx, patientId: string): Promise<string | null> {
+  const [latest] = await tx
+    .select({ id: encounter.id })
+    .from(encounter)
+    .where(eq(encounter.patientId, patientId))
+    .orderBy(desc(encounter.startedAt))
+    .limit(1);
+  return latest?.id ?? null;
 }

@@ -1,4 +1,4 @@
-import { ClipFilter, listClips } from '@/lib/filing/readClips';
+import { ClipFilter, listClips } from '@/lib/filing/readRecordings';
 import { personRoute } from '@/lib/http/person';
 
 /** Clips filed on the person's wards. */

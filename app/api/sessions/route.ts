@@ -1,4 +1,4 @@
-import { openSession, SessionToOpen } from '@/lib/filing/openSession';
+import { type Opened, openSession, SessionToOpen } from '@/lib/filing/openSession';
 import { personRoute } from '@/lib/http/person';
 import { reachEncounter } from '@/lib/http/reach';
 
@@ -7,10 +7,10 @@ export const POST = personRoute(
   'POST /api/sessions',
   { body: SessionToOpen },
   async ({ person, body, services, idempotency }) => {
-    await reachEncounter(services, person, body.encounterId);
-    return Response.json(
-      await idempotency.once((remember) => openSession(services, person, body, remember)),
-      { status: 201 },
+    const { id } = await reachEncounter(services, person, body.encounterId);
+    const opened = await idempotency.once<Opened>((remember) =>
+      openSession(services, person, { ...body, encounterId: id }, remember),
     );
+    return Response.json(opened, { status: opened.wasOpen ? 200 : 201 });
   },
 );

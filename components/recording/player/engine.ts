@@ -19,6 +19,10 @@ export interface Playing {
 
 /** One act of listening, for the custody thread. */
 export interface Heard {
+  /** The stretch that was played, seconds of the recording. */
+  from: number;
+  to: number;
+  /** How long it was listened to, with repeats. */
   seconds: number;
   band: BandChoice;
   rate: number;
@@ -90,8 +94,8 @@ export class Engine {
 
   #heard(): Heard | null {
     if (!this.#playing) return null;
-    const { band, rate, startedAt } = this.#playing;
-    return { seconds: Math.max(0, this.context.currentTime - startedAt), band, rate };
+    const { from, to, band, rate, startedAt } = this.#playing;
+    return { from, to, seconds: Math.max(0, this.context.currentTime - startedAt), band, rate };
   }
 
   close(): void {

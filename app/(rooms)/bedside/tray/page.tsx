@@ -1,9 +1,11 @@
 import type { Metadata } from 'next';
-import Link from 'next/link';
+import { BedsideTabs } from '@/components/bedside/BedsideTabs';
+import { CountsRefresh } from '@/components/bedside/CountsRefresh';
 import { TrayList } from '@/components/bedside/TrayList';
 import { PageHead } from '@/components/ui/PageHead';
-import { readTray } from '@/lib/filing/readClips';
 import { countBedside } from '@/lib/filing/readEncounters';
+import { readTray, TrayFilter } from '@/lib/filing/readTray';
+import { readSearch } from '@/lib/http/address';
 import { requirePage } from '@/lib/http/page';
 
 export const metadata: Metadata = { title: 'Tray' };
@@ -12,27 +14,29 @@ export const metadata: Metadata = { title: 'Tray' };
 export default async function TrayPage({
   searchParams,
 }: {
-  searchParams: Promise<{ before?: string | string[] }>;
+  searchParams: Promise<Record<string, string | string[] | undefined>>;
 }) {
   const { person, services } = await requirePage('bedside.read');
-  const before = Number([(await searchParams).before].flat()[0]) || undefined;
+  const { filter, query } = readSearch(TrayFilter, await searchParams);
   const [page, counts] = await Promise.all([
-    readTray(services, person, before),
+    readTray(services, person, filter),
     countBedside(services, person),
   ]);
   return (
     <>
-      <PageHead title="Tray" back={<Link href="/bedside">Bedside</Link>}>
+      <CountsRefresh />
+      <PageHead title="Tray">
         {counts.tray === 0
           ? 'Every clip of your wards’ devices is filed.'
           : `${counts.tray} ${counts.tray === 1 ? 'clip waits' : 'clips wait'} to be filed to the right encounter and no other.`}
       </PageHead>
+      <BedsideTabs current="tray" tray={counts.tray} />
       <TrayList
-        key={before ?? 0}
-        href={`/api/tray${before === undefined ? '' : `?before=${before}`}`}
-        first={JSON.parse(JSON.stringify(page))}
+        key={query}
+        href={`/api/tray${query}`}
+        first={page}
         olderHref={page.next === null ? null : `/bedside/tray?before=${page.next}`}
-        newerHref={before === undefined ? null : '/bedside/tray'}
+        newerHref={filter.before === undefined ? null : '/bedside/tray'}
       />
     </>
   );

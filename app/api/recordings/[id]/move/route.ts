@@ -1,4 +1,4 @@
-import { Move, moveFiling } from '@/lib/filing/fileRecording';
+import { Move, moveFiling } from '@/lib/filing/moveFiling';
 import { personRoute } from '@/lib/http/person';
 import { reachEncounter, reachRecording } from '@/lib/http/reach';
 
@@ -7,11 +7,11 @@ export const POST = personRoute(
   'POST /api/recordings/[id]/move',
   { body: Move },
   async ({ person, body, params, services, idempotency }) => {
-    const clip = await reachRecording(services, person, params.id ?? '');
-    await reachEncounter(services, person, body.encounterId);
+    const { recording } = await reachRecording(services, person, params.id ?? '');
+    const { id } = await reachEncounter(services, person, body.encounterId);
     return Response.json(
       await idempotency.once((remember) =>
-        moveFiling(services, person, clip.recording.number, body, remember),
+        moveFiling(services, person, recording.number, { ...body, encounterId: id }, remember),
       ),
     );
   },

@@ -1,14 +1,14 @@
-import { noteAccess } from '@/lib/custody/noteAccess';
 import { personRoute } from '@/lib/http/person';
-import { reachRecording } from '@/lib/http/reach';
-import { personActor } from '@/lib/platform/authority';
+import { openRecording, reachRecording } from '@/lib/http/reach';
 import { Refusal } from '@/lib/platform/errors';
 
 const EXTENSIONS: Record<string, string> = {
   'audio/wav': 'wav',
   'audio/wave': 'wav',
   'audio/x-wav': 'wav',
+  'audio/vnd.wave': 'wav',
   'audio/flac': 'flac',
+  'audio/x-flac': 'flac',
   'audio/ogg': 'ogg',
   'audio/mpeg': 'mp3',
 };
@@ -18,10 +18,9 @@ export const GET = personRoute(
   'GET /api/recordings/[id]/original',
   {},
   async ({ person, params, services }) => {
-    const { recording, patient } = await reachRecording(services, person, params.id ?? '');
+    const { recording } = await reachRecording(services, person, params.id ?? '');
     if (recording.originalKey === null) throw new Refusal('not-found');
-    await noteAccess(services, 'downloaded', personActor(person, 'recording.read'), recording, {
-      subjects: patient ? [{ kind: 'patient', id: patient.id }] : [],
+    await openRecording(services, person, recording.number, 'downloaded', {
       detail: { sha256: recording.declaredSha256 },
     });
     const { url } = await services.storage.presignGet({
@@ -30,6 +29,6 @@ export const GET = personRoute(
       contentType: recording.mediaType,
       filename: `${recording.number}.${EXTENSIONS[recording.mediaType] ?? 'bin'}`,
     });
-    return new Response(null, { status: 303, headers: { location: url } });
+    return new Response(null, { status: 303, headers: { location: url, 'referrer-policy': 'no-referrer' } });
   },
 );

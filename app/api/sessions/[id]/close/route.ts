@@ -1,5 +1,5 @@
 import { z } from 'zod';
-import { closeSession } from '@/lib/filing/openSession';
+import { closeSession } from '@/lib/filing/closeSession';
 import { personRoute } from '@/lib/http/person';
 import { reachSession } from '@/lib/http/reach';
 
