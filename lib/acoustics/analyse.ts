@@ -1,7 +1,8 @@
 import { ChannelAnalysis } from './channel';
+import { cleanStretch } from './cleanStretch';
 import { createDecoder } from './decode/decode';
 import type { DecodeResult } from './decode/types';
-import { cleanStretch, type JudgingFacts, judge, verdictOf } from './judge';
+import { type JudgingFacts, judge, verdictOf } from './judge';
 import { PeaksProbe } from './pictures/peaks';
 import type {
   AudioBlock,
@@ -85,8 +86,8 @@ class ClipAnalysis {
       distinctCodes: 0,
       identicalChannels: false,
       deadChannels: [],
-      clippedFrom: null,
-      clippedTo: null,
+      mainChannel: 0,
+      clippedSpans: [],
     };
     if (!decode.ok || !format) {
       const findings = judge(null, facts, limits);
@@ -102,7 +103,7 @@ class ClipAnalysis {
     }
     const { measures, spectrogram } = this.#measure(format, decode, facts, limits);
     const findings = judge(measures, facts, limits);
-    measures.cleanStretch = cleanStretch(measures, findings);
+    measures.cleanStretch = cleanStretch(measures, facts.clippedSpans, findings);
     return {
       decode,
       measures,
@@ -130,8 +131,11 @@ class ClipAnalysis {
     );
     facts.overFullScale = Math.max(...each.map((one) => one.rails.overFullScale));
     facts.distinctCodes = Math.max(...each.map((one) => one.rails.distinctCodes));
-    facts.clippedFrom = main.rails.clippedFrom;
-    facts.clippedTo = main.rails.clippedTo;
+    facts.mainChannel = each.indexOf(main);
+    facts.clippedSpans = main.rails.clippedSpans.map(([from, to]) => [
+      from / format.sampleRateHz,
+      to / format.sampleRateHz,
+    ]);
     facts.identicalChannels = each.length > 1 && this.#identical;
     facts.deadChannels =
       each.length > 1

@@ -1,5 +1,5 @@
 import type { DecodeResult } from './decode/types';
-import type { Finding, JudgingLimits, Measures, Severity, Verdict } from './types';
+import type { ChannelMeasures, Finding, JudgingLimits, Measures, Severity, Verdict } from './types';
 
 /** Defaults are engineering choices, to be tuned on real recordings; the hospital's policy may change every one. */
 export const DEFAULT_LIMITS: JudgingLimits = {
@@ -25,11 +25,21 @@ export const DEFAULT_LIMITS: JudgingLimits = {
   bandwidthCareHz: 1000,
 };
 
-/** A floor that stands this far below the sound does no harm, however high it is. */
-const RANGE_THAT_EXCUSES_DB = 15;
+/** A floor that stands this far below the sound does little harm, however high it is. */
+const RANGE_THAT_EXCUSES_DB = 12;
+/** Nor does one that is this far below all of the sound, heart included. */
+const FLOOR_BELOW_LEVEL_DB = 20;
 /** A tone has a crest factor near 3 dB: a steady one has no floor to speak of. */
 const CREST_OF_A_TONE_DB = 4;
+const LOWEST_NOISY_FLOOR_DBFS = -70;
 const SHORTEST_FOR_DC_SECONDS = 2;
+/** Fewer codes than this are the converter's own, unless they are far apart. */
+const FEW_CODES = 4;
+/** Above the one or two codes of an 8-bit converter at rest. */
+const PEAK_AT_REST_DBFS = -36;
+const ODD_BREATHS = { below: 6, above: 50 };
+const ODD_BEATS = { below: 42, above: 185 };
+const SURE_OF_A_RATE = 0.6;
 
 /** What judging needs beside the measures; small JSON that is stored with them, so that it can be run again. */
 export interface JudgingFacts {
@@ -43,8 +53,10 @@ export interface JudgingFacts {
   distinctCodes: number;
   identicalChannels: boolean;
   deadChannels: number[];
-  clippedFrom: number | null;
-  clippedTo: number | null;
+  /** The channel that the measures are of: the louder one. */
+  mainChannel: number;
+  /** Where the main channel is clipped, seconds. */
+  clippedSpans: [from: number, to: number][];
 }
 
 /** The worst severity decides; a score would hide a fatal fault. */
@@ -57,25 +69,24 @@ const above = (value: number, care: number, repeat: number): Severity | null =>
   value > repeat ? 'repeat' : value > care ? 'care' : null;
 
 /**
- * Findings out of measures and facts, by the limits. One finding a code, from its first place to its last. Pure, so
- * that a changed policy can be tried on what is stored.
+ * Findings out of measures and facts, by the limits. One finding a code, from its first place to its last; another
+ * channel adds one of its own, with its number, where it is worse than the main one. Pure, so that a changed policy can
+ * be tried on what is stored.
  */
 export function judge(measures: Measures | null, facts: JudgingFacts, limits: JudgingLimits): Finding[] {
   if (facts.failure === 'empty') return [{ code: 'empty', severity: 'repeat' }];
   if (facts.failure === 'unreadable' || !measures) return [{ code: 'unreadable', severity: 'repeat' }];
-  const findings: Finding[] = [...ofTheFile(measures, facts, limits), ...ofTheRate(measures, limits)];
   const silent = isSilent(measures, facts, limits);
-  if (silent)
-    findings.push({
-      code: 'silent',
-      severity: 'repeat',
-      ...(measures.activeLevelDbfsSine === null ? {} : { value: measures.activeLevelDbfsSine, unit: 'dBFS' }),
-      threshold: limits.silentDbfs,
-    });
-  findings.push(...ofTheRails(measures, facts, limits), ...ofHoles(measures, limits));
-  if (!silent) findings.push(...ofTheSound(measures, limits));
-  findings.push(...ofTheChannels(facts));
-  return findings;
+  return [
+    ...ofTheFile(measures, facts, limits),
+    ...ofTheRate(measures, limits),
+    ...(silent ? [silence(measures, limits)] : []),
+    ...ofOneChannel(measures, measures, limits, silent ? [] : facts.clippedSpans),
+    ...overFullScale(facts),
+    ...clicks(measures),
+    ...(silent ? [] : ofTheSound(measures, limits)),
+    ...ofTheChannels(measures, facts, limits),
+  ];
 }
 
 function ofTheFile(m: Measures, facts: JudgingFacts, limits: JudgingLimits): Finding[] {
@@ -94,22 +105,12 @@ function ofTheFile(m: Measures, facts: JudgingFacts, limits: JudgingLimits): Fin
   if (facts.oddities.length > 0) found.push({ code: 'container-odd', severity: 'note' });
   if (!facts.typeMatches) found.push({ code: 'type-mismatch', severity: 'note' });
   if (facts.lossy && !limits.allowLossy) found.push({ code: 'lossy', severity: 'care' });
+  const length = { value: m.durationSeconds, unit: 's' };
   if (short)
-    found.push({
-      code: 'too-short',
-      severity: 'repeat',
-      value: m.durationSeconds,
-      unit: 's',
-      threshold: limits.minimumSeconds,
-    });
+    found.push({ code: 'too-short', severity: 'repeat', ...length, threshold: limits.minimumSeconds });
   else if (m.durationSeconds < limits.minimumSecondsForRates) {
-    found.push({
-      code: 'too-short-for-rates',
-      severity: 'note',
-      value: m.durationSeconds,
-      unit: 's',
-      threshold: limits.minimumSecondsForRates,
-    });
+    const threshold = limits.minimumSecondsForRates;
+    found.push({ code: 'too-short-for-rates', severity: 'note', ...length, threshold });
   }
   return found;
 }
@@ -135,41 +136,53 @@ function ofTheRate(m: Measures, limits: JudgingLimits): Finding[] {
       threshold: limits.bandwidthCareHz,
     });
   }
+  const isOdd = (perMinute: number, range: { below: number; above: number }) =>
+    perMinute < range.below || perMinute > range.above;
   const odd = [
-    m.breathRate && (m.breathRate.perMinute < 6 || m.breathRate.perMinute > 50) ? m.breathRate : null,
-    m.heartRate && (m.heartRate.perMinute < 42 || m.heartRate.perMinute > 185) ? m.heartRate : null,
+    m.breathRate && isOdd(m.breathRate.perMinute, ODD_BREATHS) ? m.breathRate : null,
+    m.heartRate && isOdd(m.heartRate.perMinute, ODD_BEATS) ? m.heartRate : null,
   ].find((rate) => rate !== null);
-  if (odd && odd.confidence >= 0.6)
+  if (odd && odd.confidence >= SURE_OF_A_RATE)
     found.push({ code: 'implausible-rates', severity: 'note', value: odd.perMinute, unit: '/min' });
   return found;
 }
 
 const isSilent = (m: Measures, facts: JudgingFacts, limits: JudgingLimits): boolean =>
   m.peakDbfs === null ||
-  facts.distinctCodes < 4 ||
   m.activeLevelDbfsSine === null ||
-  m.activeLevelDbfsSine < limits.silentDbfs;
+  m.activeLevelDbfsSine < limits.silentDbfs ||
+  (facts.distinctCodes < FEW_CODES && m.peakDbfs < PEAK_AT_REST_DBFS);
 
-function ofTheRails(m: Measures, facts: JudgingFacts, limits: JudgingLimits): Finding[] {
+const silence = (m: Measures, limits: JudgingLimits): Finding => ({
+  code: 'silent',
+  severity: 'repeat',
+  ...(m.activeLevelDbfsSine === null ? {} : { value: m.activeLevelDbfsSine, unit: 'dBFS' }),
+  threshold: limits.silentDbfs,
+});
+
+/** What is measured for each channel: its rails, its offset, its holes. */
+function ofOneChannel(
+  m: ChannelMeasures,
+  clip: Measures,
+  limits: JudgingLimits,
+  clippedSpans: readonly (readonly [number, number])[],
+): Finding[] {
   const found: Finding[] = [];
   const clipped = above(m.clippedFraction, limits.clippedCareFraction, limits.clippedRepeatFraction);
-  if (clipped && facts.distinctCodes >= 4) {
+  if (clipped && m.peakDbfs !== null) {
+    const [first, last] = [clippedSpans[0], clippedSpans.at(-1)];
     found.push({
       code: 'clipped',
       severity: clipped,
       value: m.clippedFraction,
       unit: 'fraction',
       threshold: clipped === 'repeat' ? limits.clippedRepeatFraction : limits.clippedCareFraction,
-      ...(facts.clippedFrom === null || facts.clippedTo === null
-        ? {}
-        : { from: facts.clippedFrom / m.sampleRateHz, to: facts.clippedTo / m.sampleRateHz }),
+      ...(first && last ? { from: first[0], to: last[1] } : {}),
     });
   }
   if (m.flatTop) found.push({ code: 'flat-topped', severity: 'care', value: m.flatTop.dbfs, unit: 'dBFS' });
-  if (facts.overFullScale > 0)
-    found.push({ code: 'over-full-scale', severity: 'note', value: facts.overFullScale, unit: 'samples' });
   const dc =
-    m.durationSeconds >= SHORTEST_FOR_DC_SECONDS
+    clip.durationSeconds >= SHORTEST_FOR_DC_SECONDS
       ? above(Math.abs(m.dcFraction), limits.dcCareFraction, limits.dcRepeatFraction)
       : null;
   if (dc)
@@ -180,38 +193,38 @@ function ofTheRails(m: Measures, facts: JudgingFacts, limits: JudgingLimits): Fi
       unit: 'fraction',
       threshold: dc === 'repeat' ? limits.dcRepeatFraction : limits.dcCareFraction,
     });
-  return found;
+  return [...found, ...holes(m, clip, limits)];
 }
 
-function ofHoles(m: Measures, limits: JudgingLimits): Finding[] {
-  const found: Finding[] = [];
-  const first = m.dropouts[0];
-  const last = m.dropouts.at(-1);
-  if (first && last) {
-    const seconds = m.dropouts.reduce((sum, hole) => sum + hole.lengthSamples, 0) / m.sampleRateHz;
-    const repeat =
-      seconds > limits.dropoutRepeatSeconds || seconds > limits.dropoutRepeatFraction * m.durationSeconds;
-    found.push({
+function holes(m: ChannelMeasures, clip: Measures, limits: JudgingLimits): Finding[] {
+  const [first, last] = [m.dropouts[0], m.dropouts.at(-1)];
+  if (!first || !last) return [];
+  const seconds = m.dropouts.reduce((sum, hole) => sum + hole.lengthSamples, 0) / clip.sampleRateHz;
+  const repeat =
+    seconds > limits.dropoutRepeatSeconds || seconds > limits.dropoutRepeatFraction * clip.durationSeconds;
+  return [
+    {
       code: 'dropout',
       severity: repeat ? 'repeat' : 'care',
       value: seconds,
       unit: 's',
       threshold: limits.dropoutRepeatSeconds,
       from: first.startSeconds,
-      to: last.startSeconds + last.lengthSamples / m.sampleRateHz,
-    });
-  }
-  const click = m.spikes[0];
-  if (click)
-    found.push({
-      code: 'spikes',
-      severity: 'care',
-      value: m.spikes.length,
-      unit: 'count',
-      from: click.startSeconds,
-      to: m.spikes.at(-1)?.startSeconds ?? click.startSeconds,
-    });
-  return found;
+      to: last.startSeconds + last.lengthSamples / clip.sampleRateHz,
+    },
+  ];
+}
+
+const overFullScale = (facts: JudgingFacts): Finding[] =>
+  facts.overFullScale > 0
+    ? [{ code: 'over-full-scale', severity: 'note', value: facts.overFullScale, unit: 'samples' }]
+    : [];
+
+function clicks(m: Measures): Finding[] {
+  const [first, last] = [m.spikes[0], m.spikes.at(-1)];
+  if (!first || !last) return [];
+  const place = { from: first.startSeconds, to: last.startSeconds };
+  return [{ code: 'spikes', severity: 'care', value: m.spikes.length, unit: 'count', ...place }];
 }
 
 function ofTheSound(m: Measures, limits: JudgingLimits): Finding[] {
@@ -226,113 +239,67 @@ function ofTheSound(m: Measures, limits: JudgingLimits): Finding[] {
     });
   }
   if (m.hum) {
-    const severity: Severity =
-      m.hum.relativeDb > limits.humRepeatDb
-        ? 'repeat'
-        : m.hum.relativeDb >= limits.humNoteDb
-          ? 'care'
-          : 'note';
+    const { relativeDb } = m.hum;
+    const severity =
+      relativeDb > limits.humRepeatDb ? 'repeat' : relativeDb >= limits.humNoteDb ? 'care' : 'note';
     found.push({
       code: 'hum',
       severity,
-      value: m.hum.relativeDb,
+      value: relativeDb,
       unit: 'dB',
       threshold: severity === 'repeat' ? limits.humRepeatDb : limits.humNoteDb,
     });
   }
-  if (isNoisy(m, limits)) {
-    const floorIsIt = (m.activityRangeDb ?? 0) >= limits.activityRangeCareDb;
-    found.push(
-      floorIsIt
-        ? {
-            code: 'noisy',
-            severity: 'care',
-            value: m.noiseFloorDbfsSine ?? 0,
-            unit: 'dBFS',
-            threshold: limits.noiseFloorCareDbfs,
-          }
-        : {
-            code: 'noisy',
-            severity: 'care',
-            value: m.activityRangeDb ?? 0,
-            unit: 'dB',
-            threshold: limits.activityRangeCareDb,
-          },
-    );
-  }
-  const handled = above(m.handlingShare, limits.handlingCareShare, limits.handlingRepeatShare);
-  const first = m.handling[0];
-  const last = m.handling.at(-1);
-  if (handled && first && last) {
-    found.push({
+  return [...found, ...noise(m, limits), ...contact(m, limits)];
+}
+
+/** Noise that stands still between the breaths, or hides them. */
+function noise(m: Measures, limits: JudgingLimits): Finding[] {
+  const { noiseFloorDbfsSine: floor, activityRangeDb: range, activeLevelDbfsSine: level } = m;
+  if (floor === null || range === null || level === null || m.durationSeconds < 2) return [];
+  if (m.crestDb !== null && m.crestDb < CREST_OF_A_TONE_DB) return [];
+  if (floor < level - FLOOR_BELOW_LEVEL_DB) return [];
+  // A range this small under a very low floor is a quiet clip, which "low" says already.
+  if (range < limits.activityRangeCareDb && floor > LOWEST_NOISY_FLOOR_DBFS)
+    return [
+      { code: 'noisy', severity: 'care', value: range, unit: 'dB', threshold: limits.activityRangeCareDb },
+    ];
+  if (floor <= limits.noiseFloorCareDbfs || range >= RANGE_THAT_EXCUSES_DB) return [];
+  return [
+    { code: 'noisy', severity: 'care', value: floor, unit: 'dBFS', threshold: limits.noiseFloorCareDbfs },
+  ];
+}
+
+function contact(m: Measures, limits: JudgingLimits): Finding[] {
+  const severity = above(m.handlingShare, limits.handlingCareShare, limits.handlingRepeatShare);
+  const [first, last] = [m.handling[0], m.handling.at(-1)];
+  if (!severity || !first || !last) return [];
+  return [
+    {
       code: 'handling',
-      severity: handled,
+      severity,
       value: m.handlingShare,
       unit: 'fraction',
-      threshold: handled === 'repeat' ? limits.handlingRepeatShare : limits.handlingCareShare,
+      threshold: severity === 'repeat' ? limits.handlingRepeatShare : limits.handlingCareShare,
       from: first.startSeconds,
       to: last.startSeconds + last.durationSeconds,
-    });
-  }
-  return found;
+    },
+  ];
 }
 
-function isNoisy(m: Measures, limits: JudgingLimits): boolean {
-  if (m.noiseFloorDbfsSine === null || m.activityRangeDb === null || m.durationSeconds < 2) return false;
-  if (m.crestDb !== null && m.crestDb < CREST_OF_A_TONE_DB) return false;
-  // A range this small under a very low floor is a quiet clip, which "low" says already.
-  if (m.activityRangeDb < limits.activityRangeCareDb) return m.noiseFloorDbfsSine > -70;
-  return m.noiseFloorDbfsSine > limits.noiseFloorCareDbfs && m.activityRangeDb < RANGE_THAT_EXCUSES_DB;
-}
+const WEIGHT: Record<Severity, number> = { note: 0, care: 1, repeat: 2 };
 
-function ofTheChannels(facts: JudgingFacts): Finding[] {
+function ofTheChannels(m: Measures, facts: JudgingFacts, limits: JudgingLimits): Finding[] {
   const found: Finding[] = [];
-  if (facts.identicalChannels) found.push({ code: 'channels-identical', severity: 'note' });
+  if (facts.identicalChannels) return [{ code: 'channels-identical', severity: 'note' }];
   for (const channel of facts.deadChannels) found.push({ code: 'channel-dead', severity: 'care', channel });
+  const main = ofOneChannel(m, m, limits, []);
+  m.perChannel?.forEach((other, channel) => {
+    if (channel === facts.mainChannel || facts.deadChannels.includes(channel)) return;
+    for (const finding of ofOneChannel(other, m, limits, [])) {
+      const same = main.find(({ code }) => code === finding.code);
+      if (!same || WEIGHT[finding.severity] > WEIGHT[same.severity]) found.push({ ...finding, channel });
+    }
+  });
   return found;
-}
-
-/** Longest stretch without a care or repeat finding that has a place, seconds; null when a finding spans the clip. */
-export function cleanStretch(
-  m: Pick<Measures, 'durationSeconds' | 'dropouts' | 'spikes' | 'handling' | 'sampleRateHz'>,
-  findings: readonly Finding[],
-): { from: number; to: number } | null {
-  const has = (code: Finding['code']) =>
-    findings.some((finding) => finding.code === code && finding.severity !== 'note');
-  const clipped = findings.find((finding) => finding.code === 'clipped');
-  const whole = [
-    'silent',
-    'flat-topped',
-    'hum',
-    'noisy',
-    'level-low',
-    'dc-offset',
-    'rate-unexpected',
-    'lossy',
-    'bandwidth-limited',
-  ] as const;
-  if (whole.some(has)) return null;
-  const bad: [number, number][] = [
-    ...m.dropouts.map((hole): [number, number] => [
-      hole.startSeconds,
-      hole.startSeconds + hole.lengthSamples / m.sampleRateHz,
-    ]),
-    ...m.spikes.map((click): [number, number] => [click.startSeconds, click.startSeconds]),
-    ...(has('handling')
-      ? m.handling.map((burst): [number, number] => [
-          burst.startSeconds,
-          burst.startSeconds + burst.durationSeconds,
-        ])
-      : []),
-    ...(clipped?.from === undefined || clipped.to === undefined
-      ? []
-      : [[clipped.from, clipped.to] as [number, number]]),
-  ].sort((a, b) => a[0] - b[0]);
-  let best = { from: 0, to: 0 };
-  let at = 0;
-  for (const [from, to] of [...bad, [m.durationSeconds, m.durationSeconds] as [number, number]]) {
-    if (from - at > best.to - best.from) best = { from: at, to: from };
-    at = Math.max(at, to);
-  }
-  return best.to > best.from ? best : null;
 }

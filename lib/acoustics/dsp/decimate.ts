@@ -17,6 +17,7 @@ export class Decimator {
   #history: Float32Array;
   #kept = 0;
   #skip = 0;
+  #begun = false;
   #out = new Float32Array(4096);
 
   constructor(readonly factor: number) {
@@ -39,7 +40,8 @@ export class Decimator {
     }
     for (let i = 0; i < length; i++) this.#taps[i] = (this.#taps[i] as number) / sum;
     this.#history = new Float32Array(length);
-    // Half a filter of silence first: output sample k stands for input sample k * factor.
+    // Half a filter of the first sample stands before it, so that an offset makes no step; output sample k stands for
+    // input sample k * factor.
     this.#kept = Math.floor(middle);
   }
 
@@ -54,6 +56,10 @@ export class Decimator {
       this.#history = grown;
     }
     const x = this.#history;
+    if (!this.#begun && samples.length > 0) {
+      x.fill(samples[0] as number, 0, this.#kept);
+      this.#begun = true;
+    }
     x.set(samples, this.#kept);
     const outputs = Math.max(0, Math.floor((total - length - this.#skip) / this.factor) + 1);
     if (this.#out.length < outputs) this.#out = new Float32Array(outputs + 1024);

@@ -1,8 +1,25 @@
 import type { Encoding, FlatTop } from '../types';
 import { toDbfs } from './levels';
 
-/** A run shorter than this is a peak that happens to touch the rail: a full-scale sine does (acoustics of 97 Hz at 8 kHz). */
+/** A run shorter than this is a peak that happens to touch the rail: a full-scale sine of 97 Hz at 8 kHz does. */
 const SHORTEST_RUN = 3;
+/** Codes below the extreme that its pile is weighed against. */
+const WINDOW = 33;
+/** No pile is smaller. */
+const LEAST_PILE = 20;
+/** A pile this many times as high as the codes below it was cut. Unclipped sound: 0.2 to 10; cut: 400 and more. */
+const LEAST_RATIO = 50;
+/** With a run at the rail to go with it, less will do: the tops of a slow full-scale wave reach 4. */
+const LEAST_RATIO_WITH_RUN = 10;
+/** Below this many 16-bit codes the converter's own noise makes piles. */
+const LEAST_EXTREME = 256;
+/** From here on a flat top is clipping at the rail. */
+const RAIL_CODE = 32_760;
+/** A square wave is all pile: it was made so, not cut. */
+const SQUARE_SHARE = 0.4;
+const ENOUGH_CODES = 16;
+const NEAR_SECONDS = 0.5;
+const MOST_SPANS = 200;
 
 /** The range that counts as the rail: within one code of it, at 16 bit at the finest. */
 function railOf(encoding: Encoding, bitDepth: number | null): { high: number; low: number } {
@@ -16,148 +33,224 @@ export interface RailMeasures {
   clippedSamples: number;
   clippedFraction: number;
   clippedLongestRunSamples: number;
-  /** First and last frame of clipping; null without any. */
-  clippedFrom: number | null;
-  clippedTo: number | null;
+  /** Where it is clipped: first frame and the one after the last, in order; places less than half a second apart are one. */
+  clippedSpans: [from: number, to: number][];
   overFullScale: number;
   flatTop: FlatTop | null;
-  /** Fewer than four codes are in use: the converter's own noise, or nothing. */
+  /** Different codes in use, counted up to sixteen. */
   distinctCodes: number;
+}
+
+/**
+ * One side of a channel: what lies at its rail, and what lies at its own extreme. Amplitudes come with the sign turned
+ * for the lower side, so that the extreme is always the largest.
+ */
+class Side {
+  atRail = 0;
+  longestRun = 0;
+  /** Runs of two or more at the rail. */
+  railRuns = 0;
+  readonly spans: [from: number, to: number][] = [];
+  extreme = -40_000;
+  extremeRuns = 0;
+  /** Complete for the codes from `extreme - WINDOW` up: that is all that is asked of it. */
+  readonly #histogram = new Uint32Array(65_536);
+  #run = 0;
+  #extremeRun = 0;
+
+  /** @param near frames between two places that are told as one */
+  constructor(private readonly near: number) {}
+
+  /** Nothing in the stretch comes near: runs end. */
+  pass(): void {
+    this.#run = 0;
+    this.#extremeRun = 0;
+  }
+
+  isNear(amplitude: number): boolean {
+    return amplitude * 32_768 >= this.extreme - WINDOW - 1;
+  }
+
+  look(samples: Float32Array, from: number, to: number, sign: 1 | -1, rail: number, offset: number): void {
+    for (let i = from; i < to; i++) {
+      const x = sign * (samples[i] as number);
+      if (x >= rail) this.#atRail(offset + i);
+      else this.#run = 0;
+      this.#count(x);
+    }
+  }
+
+  /** Float samples beyond full scale are neither at the rail nor in the pile. */
+  lookFloat(
+    samples: Float32Array,
+    from: number,
+    to: number,
+    sign: 1 | -1,
+    rail: number,
+    offset: number,
+  ): number {
+    let over = 0;
+    for (let i = from; i < to; i++) {
+      const x = sign * (samples[i] as number);
+      if (x > 1) {
+        over++;
+        this.pass();
+        continue;
+      }
+      if (x >= rail) this.#atRail(offset + i);
+      else this.#run = 0;
+      this.#count(x);
+    }
+    return over;
+  }
+
+  #atRail(frame: number): void {
+    this.atRail++;
+    this.#run++;
+    if (this.#run === 2) this.railRuns++;
+    if (this.#run > this.longestRun) this.longestRun = this.#run;
+    const span = this.spans.at(-1);
+    if (span && (frame - span[1] < this.near || this.spans.length >= MOST_SPANS)) span[1] = frame + 1;
+    else this.spans.push([frame, frame + 1]);
+  }
+
+  #count(x: number): void {
+    const code = Math.max(-32_768, Math.min(32_767, Math.round(x * 32_768)));
+    this.#histogram[code + 32_768] = (this.#histogram[code + 32_768] as number) + 1;
+    if (code < this.extreme - 1) {
+      this.#extremeRun = 0;
+      return;
+    }
+    if (code > this.extreme + 1) {
+      this.extremeRuns = 0;
+      this.#extremeRun = 0;
+    }
+    if (code > this.extreme) this.extreme = code;
+    if (++this.#extremeRun === SHORTEST_RUN) this.extremeRuns++;
+  }
+
+  /** How many samples lie within one step of the extreme, and how much higher that is than the codes below. */
+  pile(stepCodes: number): { samples: number; ratio: number } {
+    const h = (step: number) => this.#histogram[this.extreme + 32_768 - step * stepCodes] ?? 0;
+    const samples = h(0) + h(1);
+    let below = 0;
+    for (let i = 2; i <= WINDOW; i++) below += h(i);
+    return { samples, ratio: samples / 2 / Math.max(below / (WINDOW - 1), 0.05) };
+  }
 }
 
 /**
  * Clipping at the rail, and tops that were cut below it.
  *
- * Rail: runs of 3 or more samples within one code of either end. Below the rail: a pile in the amplitude histogram at
- * its own extreme (Laguna and Lerch, AES 141, 2016, for the family of methods): with m the outermost 16-bit code,
- * r = mean(h[m], h[m-1]) / max(mean(h[m-2..m-33]), 0.05) >= 50, three runs of 3 or more within one code of m, and 20
- * samples in the pile. Not seen: tops that were cut before a filter or a change of rate, which ripple.
- * Float samples beyond 1.0 are over full scale, which is not clipping.
+ * Rail: samples within one code of either end, on a side that shows cutting there: a run of 3 or more, or a pile with
+ * runs of 2. Below the rail: a pile in the amplitude histogram at its own extreme (Laguna and Lerch, AES 141, 2016,
+ * for the family of methods): with m the outermost 16-bit code, r = mean(h[m], h[m-1]) / max(mean(h[m-2..m-33]), 0.05)
+ * >= 50, three runs of 3 or more within one code of m, and 20 samples in the pile. Not seen: tops that were cut before
+ * a filter or a change of rate, which ripple. Float samples beyond 1.0 are over full scale, which is not clipping.
  */
 export class RailProbe {
-  readonly #histogram = new Uint32Array(65_536);
   readonly #high: number;
   readonly #low: number;
   readonly #float: boolean;
+  readonly #stepCodes: number;
+  readonly #upper: Side;
+  readonly #lower: Side;
+  readonly #codes = new Set<number>();
   #frames = 0;
-  #run = 0;
-  #clipped = 0;
-  #longest = 0;
-  #first = -1;
-  #last = -1;
   #over = 0;
-  #top = -40_000;
-  #bottom = 40_000;
-  #topRun = 0;
-  #topRuns = 0;
-  #bottomRun = 0;
-  #bottomRuns = 0;
 
   constructor(
     encoding: Encoding,
     private readonly bitDepth: number | null,
+    sampleRateHz: number,
   ) {
+    this.#upper = new Side(NEAR_SECONDS * sampleRateHz);
+    this.#lower = new Side(NEAR_SECONDS * sampleRateHz);
     const { high, low } = railOf(encoding, bitDepth);
     this.#high = high;
-    this.#low = low;
+    this.#low = -low;
+    const companded = encoding === 'mulaw' || encoding === 'alaw';
+    this.#stepCodes = companded ? 1 : 2 ** (16 - Math.min(bitDepth ?? 16, 16));
     this.#float =
       encoding.startsWith('float') || encoding === 'opus' || encoding === 'vorbis' || encoding === 'mp3';
   }
 
-  push(samples: Float32Array): void {
-    const high = this.#high;
-    const low = this.#low;
-    const histogram = this.#histogram;
-    let run = this.#run;
-    for (let i = 0; i < samples.length; i++) {
-      const x = samples[i] as number;
-      let code = Math.round(x * 32_768);
-      if (code > 32_767) code = 32_767;
-      else if (code < -32_768) code = -32_768;
-      histogram[code + 32_768] = (histogram[code + 32_768] as number) + 1;
-      if (x >= high || x <= low) {
-        if (this.#float && (x > 1 || x < -1)) {
-          this.#over++;
-          if (run > 0) this.#closeRun(run, this.#frames + i);
-          run = 0;
-        } else run++;
-      } else if (run > 0) {
-        this.#closeRun(run, this.#frames + i);
-        run = 0;
-      }
-      if (code >= this.#top - 1) this.#atTop(code);
-      else this.#topRun = 0;
-      if (code <= this.#bottom + 1) this.#atBottom(code);
-      else this.#bottomRun = 0;
-    }
-    this.#run = run;
-    this.#frames += samples.length;
+  /** A stretch of a few milliseconds with its extremes: only one that comes near a rail or an extreme is looked at. */
+  look(samples: Float32Array, from: number, to: number, min: number, max: number): void {
+    // Frames before this array, so that an index in it is a frame of the clip.
+    const offset = this.#frames - from;
+    if (max >= this.#high || this.#upper.isNear(max))
+      this.#lookAt(this.#upper, samples, from, to, 1, this.#high, offset);
+    else this.#upper.pass();
+    if (-min >= this.#low || this.#lower.isNear(-min))
+      this.#lookAt(this.#lower, samples, from, to, -1, this.#low, offset);
+    else this.#lower.pass();
+    for (let i = from; i < to && this.#codes.size < ENOUGH_CODES; i++)
+      this.#codes.add(Math.round((samples[i] as number) * 32_768));
+    this.#frames += to - from;
   }
 
-  #closeRun(run: number, end: number): void {
-    if (run < SHORTEST_RUN) return;
-    this.#clipped += run;
-    if (run > this.#longest) this.#longest = run;
-    if (this.#first < 0) this.#first = end - run;
-    this.#last = end;
-  }
-
-  #atTop(code: number): void {
-    if (code > this.#top + 1) {
-      this.#topRuns = 0;
-      this.#topRun = 0;
-    }
-    if (code > this.#top) this.#top = code;
-    if (++this.#topRun === SHORTEST_RUN) this.#topRuns++;
-  }
-
-  #atBottom(code: number): void {
-    if (code < this.#bottom - 1) {
-      this.#bottomRuns = 0;
-      this.#bottomRun = 0;
-    }
-    if (code < this.#bottom) this.#bottom = code;
-    if (++this.#bottomRun === SHORTEST_RUN) this.#bottomRuns++;
+  #lookAt(
+    side: Side,
+    samples: Float32Array,
+    from: number,
+    to: number,
+    sign: 1 | -1,
+    rail: number,
+    offset: number,
+  ): void {
+    if (this.#float) this.#over += side.lookFloat(samples, from, to, sign, rail, offset);
+    else side.look(samples, from, to, sign, rail, offset);
   }
 
   finish(): RailMeasures {
-    if (this.#run > 0) this.#closeRun(this.#run, this.#frames);
-    let distinctCodes = 0;
-    for (let i = 0; i < 65_536 && distinctCodes < 16; i++)
-      if ((this.#histogram[i] as number) > 0) distinctCodes++;
+    const cut = [this.#upper, this.#lower].filter((side) => this.#isCutAtRail(side));
+    const clippedSamples = cut.reduce((sum, side) => sum + side.atRail, 0);
     return {
-      clippedSamples: this.#clipped,
-      clippedFraction: this.#frames > 0 ? this.#clipped / this.#frames : 0,
-      clippedLongestRunSamples: this.#longest,
-      clippedFrom: this.#first < 0 ? null : this.#first,
-      clippedTo: this.#last < 0 ? null : this.#last,
+      clippedSamples,
+      clippedFraction: this.#frames > 0 ? clippedSamples / this.#frames : 0,
+      clippedLongestRunSamples: Math.max(0, ...cut.map((side) => side.longestRun)),
+      clippedSpans: merged(cut.flatMap((side) => side.spans)),
       overFullScale: this.#over,
       flatTop: this.#flatTop(),
-      distinctCodes,
+      distinctCodes: this.#codes.size,
     };
+  }
+
+  #isCutAtRail(side: Side): boolean {
+    if (side.atRail === 0) return false;
+    const { samples, ratio } = side.pile(this.#stepCodes);
+    if (side.longestRun >= SHORTEST_RUN && ratio >= LEAST_RATIO_WITH_RUN) return true;
+    return side.railRuns >= SHORTEST_RUN && samples >= LEAST_PILE && ratio >= LEAST_RATIO;
   }
 
   #flatTop(): FlatTop | null {
     if (this.#frames === 0 || (this.bitDepth ?? 16) <= 8) return null;
-    const positive = this.#top > 256 && this.#top < 32_760 && this.#isPile(this.#top, -1, this.#topRuns);
-    const negative =
-      this.#bottom < -256 && this.#bottom > -32_760 && this.#isPile(this.#bottom, 1, this.#bottomRuns);
+    const positive = this.#isPile(this.#upper);
+    const negative = this.#isPile(this.#lower);
     if (!positive && !negative) return null;
-    const rail = positive && negative ? (this.#top - this.#bottom) / 2 : positive ? this.#top : -this.#bottom;
+    const [up, down] = [this.#upper.extreme, this.#lower.extreme];
+    const rail = positive && negative ? (up + down) / 2 : positive ? up : down;
     return {
       dbfs: toDbfs(rail / 32_768),
       side: positive && negative ? 'both' : positive ? 'positive' : 'negative',
     };
   }
 
-  #isPile(extreme: number, inward: 1 | -1, runs: number): boolean {
-    const h = (code: number) => this.#histogram[code + 32_768] ?? 0;
-    const pile = h(extreme) + h(extreme + inward);
-    let below = 0;
-    for (let i = 2; i <= 33; i++) below += h(extreme + inward * i);
-    // A square wave is all pile: it was made so, not cut.
-    return (
-      pile >= 20 && runs >= 3 && pile / 2 / Math.max(below / 32, 0.05) >= 50 && pile / this.#frames < 0.4
-    );
+  #isPile(side: Side): boolean {
+    if (side.extreme <= LEAST_EXTREME || side.extreme >= RAIL_CODE || side.extremeRuns < 3) return false;
+    const { samples, ratio } = side.pile(1);
+    return samples >= LEAST_PILE && ratio >= LEAST_RATIO && samples / this.#frames < SQUARE_SHARE;
   }
+}
+
+/** Spans in order, those that overlap made one. */
+function merged(spans: readonly [number, number][]): [number, number][] {
+  const out: [number, number][] = [];
+  for (const [from, to] of [...spans].sort((a, b) => a[0] - b[0])) {
+    const last = out.at(-1);
+    if (last && from <= last[1]) last[1] = Math.max(last[1], to);
+    else out.push([from, to]);
+  }
+  return out;
 }

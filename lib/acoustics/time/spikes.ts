@@ -1,29 +1,46 @@
 import { percentile } from '../dsp/percentile';
+import type { Span } from '../types';
 
 /** Samples looked at on either side of a candidate. */
 const REACH = 32;
+/** Of these, the nearest are the spike's own. */
+const OWN = 3;
 const MOST_SPIKES = 2000;
-/** A candidate's step against the running mean step. */
-const CANDIDATE = 8;
+/** A candidate's bend against the mean bend of the last blocks. */
+const CANDIDATE = 6;
+const BLOCK = 256;
+const LEAST_MAD = 20;
+/** What lies on either side of a spike differs by no more than this share of it: a step is not a spike. */
+const MOST_STEP = 0.4;
+const AT_RAIL = 0.999;
+
+/** Frames of one click: where it is, and whether it is one sample or two. */
+interface Spike {
+  frame: number;
+  height: number;
+}
 
 /**
- * Transmission clicks of one or two samples: |x - median of 5 around it| above 20 median absolute deviations of its
- * surroundings, and the sound is back to itself two samples later. Longer bursts are sound, or handling.
+ * Transmission clicks of one or two samples: a sample, or two, that stands off the line between its neighbours by more
+ * than 20 median absolute deviations of how the samples around do, while the sound goes on behind it as if nothing had
+ * been. Longer bursts are sound, or handling. The second difference stands in for the distance from a median of five:
+ * it follows a wave near the top of its band as well as one far below. Method general, the limit ours.
  */
 export class SpikeProbe {
-  readonly #at: number[] = [];
+  readonly #found: Spike[] = [];
   #work = new Float32Array(0);
   #kept = 0;
   #frames = 0;
-  #meanStep = 0;
-  readonly #decay: number;
+  /** Mean bend of the blocks so far, and of the one that is not full. */
+  #mean = 0;
+  #sum = 0;
+  #n = 0;
+  readonly #bends = new Float64Array(2 * REACH);
 
   constructor(
     private readonly sampleRateHz: number,
     private readonly step: number,
-  ) {
-    this.#decay = 1 / Math.max(64, sampleRateHz * 0.05);
-  }
+  ) {}
 
   push(samples: Float32Array): void {
     const total = this.#kept + samples.length;
@@ -35,7 +52,9 @@ export class SpikeProbe {
     const x = this.#work;
     x.set(samples, this.#kept);
     const offset = this.#frames - this.#kept;
-    this.#scan(x, Math.max(1, Math.min(this.#kept, REACH)), total - REACH, offset);
+    // Each sample is judged once, with REACH samples on both sides; the first and last of a clip are not.
+    const from = this.#kept < 2 * REACH ? REACH : this.#kept - REACH;
+    if (total - REACH > from) this.#scan(x, from, total - REACH, offset);
     this.#frames += samples.length;
     const keep = Math.min(total, 2 * REACH);
     x.copyWithin(0, total - keep, total);
@@ -43,41 +62,75 @@ export class SpikeProbe {
   }
 
   #scan(x: Float32Array, from: number, to: number, offset: number): void {
-    let mean = this.#meanStep;
-    const decay = this.#decay;
-    for (let i = from; i < to; i++) {
-      const step = Math.abs((x[i] as number) - (x[i - 1] as number));
-      if (step > CANDIDATE * mean + 8 * this.step && this.#at.length < MOST_SPIKES && this.#isSpike(x, i))
-        this.#note(offset + i);
-      mean += (Math.min(step, CANDIDATE * mean + this.step) - mean) * decay;
+    for (let at = from; at < to; ) {
+      const end = Math.min(to, at + BLOCK - this.#n);
+      const limit = CANDIDATE * this.#mean + 8 * this.step;
+      let sum = 0;
+      let before = x[at - 1] as number;
+      let here = x[at] as number;
+      for (let i = at; i < end; i++) {
+        const next = x[i + 1] as number;
+        const bend = Math.abs(here + here - before - next);
+        sum += bend;
+        if (bend > limit) this.#judge(x, i, offset);
+        before = here;
+        here = next;
+      }
+      this.#sum += sum;
+      this.#n += end - at;
+      at = end;
+      if (this.#n === BLOCK) this.#closeBlock();
     }
-    this.#meanStep = mean;
   }
 
-  #isSpike(x: Float32Array, i: number): boolean {
-    if (i < 4) return false;
-    const around = Array.from(x.subarray(Math.max(0, i - REACH), i + REACH));
-    const middle = percentile(around, 0.5);
-    const mad = Math.max(
-      percentile(
-        around.map((v) => Math.abs(v - middle)),
-        0.5,
-      ),
-      2 * this.step,
-    );
-    const five = percentile(Array.from(x.subarray(i - 2, i + 3)), 0.5);
-    if (Math.abs((x[i] as number) - five) <= 20 * mad) return false;
-    // Narrow: what stands two before and two after is the undisturbed sound.
-    return Math.abs((x[i - 2] as number) - five) < 8 * mad && Math.abs((x[i + 2] as number) - five) < 8 * mad;
+  #closeBlock(): void {
+    const mean = this.#sum / BLOCK;
+    // Quick to follow downwards: a quiet stretch behind a loud one must not hide a click.
+    this.#mean = this.#mean === 0 ? mean : Math.min(mean, this.#mean + 0.5 * (mean - this.#mean));
+    this.#sum = 0;
+    this.#n = 0;
   }
 
-  #note(frame: number): void {
-    const last = this.#at.at(-1);
-    // The second sample of a two-sample click is the same click.
-    if (last === undefined || frame - last > 2) this.#at.push(frame);
+  #judge(x: Float32Array, i: number, offset: number): void {
+    if (this.#found.length >= MOST_SPIKES) return;
+    const at = (index: number) => x[index] as number;
+    const one = Math.abs(at(i) - (at(i - 1) + at(i + 1)) / 2);
+    const two = Math.abs(at(i) + at(i + 1) - at(i - 1) - at(i + 2)) / 2;
+    // A second sample that is as far out as the first belongs to it.
+    const width = two > 0.75 * Math.abs(at(i) - at(i - 1)) && two > one ? 2 : 1;
+    const height = width === 2 ? two : one;
+    // Between two samples at the rail nobody knows what the sound was.
+    if (Math.max(Math.abs(at(i - 1)), Math.abs(at(i + width))) >= AT_RAIL) return;
+    if (Math.abs(at(i - 1) - at(i + width)) > MOST_STEP * height) return;
+    if (width === 2 && Math.abs(at(i) - at(i + 1)) > MOST_STEP * height) return;
+    if (height <= LEAST_MAD * Math.max(this.#usualBend(x, i, width), this.step / 2)) return;
+    this.#note({ frame: offset + i, height });
   }
 
-  finish(): { startSeconds: number }[] {
-    return this.#at.map((frame) => ({ startSeconds: frame / this.sampleRateHz }));
+  /** Median distance of the samples around from the line between their neighbours. */
+  #usualBend(x: Float32Array, i: number, width: number): number {
+    let n = 0;
+    for (let k = i - REACH + 1; k < i + REACH - 1; k++) {
+      if (k > i - OWN && k < i + width - 1 + OWN) continue;
+      this.#bends[n++] = Math.abs((x[k] as number) - ((x[k - 1] as number) + (x[k + 1] as number)) / 2);
+    }
+    const bends = this.#bends.subarray(0, n);
+    let sum = 0;
+    for (const bend of bends) sum += bend;
+    // A wave of a few samples a period has bends of none and all: half their mean then says more.
+    return Math.max(percentile(bends, 0.5), sum / n / 2);
+  }
+
+  #note(spike: Spike): void {
+    const last = this.#found.at(-1);
+    if (last === undefined || spike.frame - last.frame > 2) this.#found.push(spike);
+    else if (spike.height > last.height) this.#found[this.#found.length - 1] = spike;
+  }
+
+  /** @param leastHeight full scale: what is smaller is not heard as a click */
+  finish(leastHeight: number): Span[] {
+    return this.#found
+      .filter((spike) => spike.height >= leastHeight)
+      .map(({ frame }) => ({ startSeconds: frame / this.sampleRateHz, durationSeconds: 0 }));
   }
 }

@@ -1,0 +1,113 @@
+import { FilterChain, highPass, lowPass } from '../dsp/biquad';
+import { percentile } from '../dsp/percentile';
+import type { Span } from '../types';
+import { Envelope } from './envelope';
+
+const FRAME_SECONDS = 0.01;
+/** A clip of a few beats does not tell a burst from a beat. */
+const SHORTEST_CLIP_SECONDS = 5;
+const SHORTEST_BURST_SECONDS = 0.02;
+const LONGEST_BURST_SECONDS = 3;
+/** Below this RMS nothing was touched. */
+const LEAST_RMS = 0.002;
+const OVER_MEDIAN = 10;
+const LEAST_RISE = 10 ** (15 / 20);
+const RISE_FRAMES = 12;
+/** Holds a beat down to 60 a minute, and four times in five down to 48. */
+const BEAT_WINDOW_SECONDS = 1;
+/** So many windows may be without a beat; the others may be handled and the beat is still known. */
+const BEAT_QUANTILE = 0.2;
+const OVER_BEAT = 2;
+/** A click rings this long in the low band. */
+const CLICK_SECONDS = 0.06;
+/** A burst that stays this long below half its threshold is over. */
+const GAP_FRAMES = 5;
+/** Share of handling is counted in blocks of this. */
+const SHARE_SECONDS = 0.25;
+
+export interface HandlingMeasures {
+  handling: Span[];
+  /** Share of 250 ms blocks touched by it, 0 to 1. */
+  handlingShare: number;
+}
+
+/**
+ * Handling and contact, on the stream divided to about 5 kHz: the envelope below 40 Hz above 10 times its median for 20 ms
+ * or more, begun by a rise of more than 15 dB within 120 ms. Heart sounds do the same at every
+ * beat, so a burst must also stand well above the beats: above twice the lowest fifth of the largest values in each
+ * second. Cough and speech look the same; a device that filters out the low band shows nothing here; knocks
+ * louder than none of the beats are not told from them. Limits ours, tried on synthetic sounds.
+ */
+export class HandlingProbe {
+  readonly #low: Envelope;
+  readonly #lowBand: FilterChain;
+
+  constructor(rateHz: number) {
+    const frame = Math.max(1, Math.round(rateHz * FRAME_SECONDS));
+    this.#low = new Envelope(frame);
+    this.#lowBand = new FilterChain([highPass(5, rateHz), lowPass(40, rateHz), lowPass(40, rateHz)]);
+  }
+
+  push(samples: Float32Array): void {
+    this.#low.push(this.#lowBand.run(samples), samples.length);
+  }
+
+  /** @param holes the edges of these, and of @param clicks, ring in the low band without any contact */
+  finish(durationSeconds: number, holes: readonly Span[], clicks: readonly Span[]): HandlingMeasures {
+    const handling = this.#bursts().filter(
+      (burst) =>
+        !holes.some((hole) => touches(burst, hole)) &&
+        !(burst.durationSeconds <= CLICK_SECONDS && clicks.some((click) => touches(burst, click))),
+    );
+    return { handling, handlingShare: shareOf(handling, durationSeconds) };
+  }
+
+  #bursts(): Span[] {
+    const low = this.#low.values.view();
+    if (low.length * FRAME_SECONDS < SHORTEST_CLIP_SECONDS) return [];
+    const threshold = Math.max(OVER_MEDIAN * percentile(low, 0.5), OVER_BEAT * beatLevel(low), LEAST_RMS);
+    const bursts: Span[] = [];
+    for (let i = RISE_FRAMES; i < low.length; i++) {
+      if ((low[i] as number) < threshold) continue;
+      const start = i;
+      let end = i;
+      for (; i < low.length && i - end < GAP_FRAMES; i++)
+        if ((low[i] as number) >= threshold / 2) end = i + 1;
+      const seconds = (end - start) * FRAME_SECONDS;
+      if (seconds < SHORTEST_BURST_SECONDS || seconds > LONGEST_BURST_SECONDS) continue;
+      if (risesAt(low, start)) bursts.push({ startSeconds: start * FRAME_SECONDS, durationSeconds: seconds });
+    }
+    return bursts;
+  }
+}
+
+const touches = (burst: Span, place: Span): boolean =>
+  burst.startSeconds < place.startSeconds + place.durationSeconds + 0.1 &&
+  burst.startSeconds + burst.durationSeconds > place.startSeconds - 0.05;
+
+/** What the loudest of a beat reaches in this band: a low quantile over windows that hold a beat each. */
+function beatLevel(envelope: Float32Array): number {
+  const window = Math.round(BEAT_WINDOW_SECONDS / FRAME_SECONDS);
+  const largest = new Float32Array(Math.floor(envelope.length / window));
+  for (let w = 0; w < largest.length; w++)
+    for (let i = w * window; i < (w + 1) * window; i++)
+      largest[w] = Math.max(largest[w] as number, envelope[i] as number);
+  return percentile(largest, BEAT_QUANTILE);
+}
+
+function risesAt(envelope: Float32Array, at: number): boolean {
+  let before = Number.POSITIVE_INFINITY;
+  for (let back = 1; back <= RISE_FRAMES; back++) before = Math.min(before, envelope[at - back] as number);
+  const peak = Math.max(envelope[at] as number, envelope[Math.min(at + 1, envelope.length - 1)] as number);
+  return peak >= LEAST_RISE * Math.max(before, 1e-5);
+}
+
+function shareOf(spans: readonly Span[], durationSeconds: number): number {
+  const blocks = Math.max(1, Math.ceil(durationSeconds / SHARE_SECONDS));
+  const touched = new Set<number>();
+  for (const span of spans) {
+    const last = Math.floor((span.startSeconds + span.durationSeconds) / SHARE_SECONDS);
+    for (let b = Math.floor(span.startSeconds / SHARE_SECONDS); b <= last; b++) touched.add(b);
+  }
+  return touched.size / blocks;
+}
