@@ -25,7 +25,7 @@ const WORDS: Record<Act, { button: string; confirm: string; done: string; body: 
         `For somebody who lost both authenticator and recovery codes. Make sure that it is ${name} who asks. They are told by mail, are signed out, and an IT administrator sets up another before anything else.`,
     },
     leave: {
-      button: 'They left',
+      button: 'Close the account',
       confirm: 'Close the account',
       done: 'The account is closed',
       body: (name) =>

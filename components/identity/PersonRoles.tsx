@@ -35,11 +35,7 @@ export function PersonRoles({ id, name, held }: { id: string; name: string; held
       <ConfirmDialog
         open={change !== null}
         onOpenChange={(open) => (open ? undefined : setChange(null))}
-        title={
-          change?.held
-            ? `Make ${name} ${ROLE_NAMES[change.role].toLowerCase()}`
-            : `Take the role ${change ? ROLE_NAMES[change.role].toLowerCase() : ''} from ${name}`
-        }
+        title={change ? titleOf(change, name) : ''}
         confirmLabel={change?.held ? 'Give the role' : 'Take the role away'}
         danger={!change?.held}
         onConfirm={async () => {
@@ -58,6 +54,11 @@ export function PersonRoles({ id, name, held }: { id: string; name: string; held
     </>
   );
 }
+
+const titleOf = (change: { role: Role; held: boolean }, name: string): string =>
+  change.held
+    ? `Give ${name} the role “${ROLE_NAMES[change.role]}”`
+    : `Take the role “${ROLE_NAMES[change.role]}” from ${name}`;
 
 interface RoleLineProps {
   role: Role;
