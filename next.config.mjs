@@ -5,7 +5,6 @@ export default {
   serverExternalPackages: [
     '@libsql/client',
     '@node-rs/argon2',
-    'audio-decode',
     '@wasm-audio-decoders/ogg-vorbis',
     'opus-decoder',
     'mpg123-decoder',

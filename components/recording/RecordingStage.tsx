@@ -27,7 +27,7 @@ export interface RecordingStageProps {
   selection: Stretch | null;
   onSelect: (selection: Stretch | null) => void;
   playhead: Playhead;
-  /** Colours of two recordings side by side mean the same when both get one scale (see commonScale). */
+  /** Colours of two recordings side by side mean the same when both get one scale. */
   scale?: DbScale;
   /** Held outside, for two stages that move together; else the stage holds it. */
   view?: Stretch;
@@ -35,15 +35,6 @@ export interface RecordingStageProps {
   /** Highest frequency at first; 2 kHz, or what there is. */
   topHz?: number;
 }
-
-/** One scale that fits several spectrograms. */
-export const commonScale = (spectrograms: readonly Spectrogram[]): DbScale => {
-  const scales = spectrograms.map(scaleOf);
-  return {
-    lowDb: Math.min(...scales.map(({ lowDb }) => lowDb)),
-    highDb: Math.max(...scales.map(({ highDb }) => highDb)),
-  };
-};
 
 /** Waveform and spectrogram on one time axis, with findings and places where they are. */
 export function RecordingStage(props: RecordingStageProps) {

@@ -27,6 +27,3 @@ export function ToastRegion() {
 
 /** Something was done. Never the only place where it is said. */
 export const tell = (message: string, description?: string) => toast.success(message, { description });
-/** Something was not done: what happened, and what to do next. */
-export const tellFailure = (message: string, description?: string) =>
-  toast.error(message, { description, duration: 12_000 });

@@ -26,11 +26,6 @@ export const SelectionContext = createContext<TableSelection>(none);
 /** What is selected in the table around: for the buttons in its `actions`. */
 export const useTableSelection = (): TableSelection => useContext(SelectionContext);
 
-/** Hidden inputs with the selected ids, for a form in a table's `actions`. */
-export function SelectedIds({ name = 'id' }: { name?: string }) {
-  return useTableSelection().ids.map((id) => <input key={id} type="hidden" name={name} value={id} />);
-}
-
 export function useSelectionOf(rows: readonly TableRow[]): TableSelection {
   const [chosen, setChosen] = useState<ReadonlySet<string>>(new Set());
   return useMemo(() => {

@@ -1,6 +1,6 @@
 import { createHash } from 'node:crypto';
-import { and, eq, isNull, lt } from 'drizzle-orm';
-import { device, listeningSession, recording } from '@/db/schema';
+import { eq } from 'drizzle-orm';
+import { device, recording } from '@/db/schema';
 import { synthesise } from '@/devices/synth/chest';
 import { recipeOf, usualRecipe } from '@/devices/synth/recipes';
 import { encodeWav } from '@/devices/synth/wav';
@@ -113,19 +113,6 @@ export async function visit(
   clock.set(clock.now() + 20_000);
   if (!leaveOpen) await closeSession(services, listener.person, session.id);
   return clips;
-}
-
-/** Sessions that nobody ended are ended by the evening's round, as the ward does. */
-export async function endForgottenSessions(
-  services: Services,
-  before: number,
-  listener: Listener,
-): Promise<void> {
-  const open = await services.read
-    .select({ id: listeningSession.id })
-    .from(listeningSession)
-    .where(and(isNull(listeningSession.closedAt), lt(listeningSession.openedAt, before)));
-  for (const session of open) await closeSession(services, listener.person, session.id);
 }
 
 export { DAY_MS, MINUTE_MS };

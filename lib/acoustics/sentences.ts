@@ -1,4 +1,4 @@
-import type { Finding, Verdict } from './types';
+import type { Finding } from './types';
 
 /** A finding for people: what it is, what it means for listening, what to do. Made from the code, never stored. */
 export interface FindingSentence {
@@ -6,9 +6,6 @@ export interface FindingSentence {
   meaning: string;
   action: string;
 }
-
-export const verdictWord = (verdict: Verdict): string =>
-  ({ usable: 'Usable', care: 'Use with care', repeat: 'Record again' })[verdict];
 
 const percent = (fraction: number | undefined): string => {
   const value = (fraction ?? 0) * 100;

@@ -133,13 +133,3 @@ export async function countCredentials(
   const counts = await Promise.all(views.map(async (view) => [view, await count(view)] as const));
   return Object.fromEntries(counts) as Record<CredentialFilter['view'], number>;
 }
-
-/** One credential with its device's line; null when there is none. */
-export async function readCredential(
-  services: Pick<Services, 'read'>,
-  _by: Authorized<'credential.read'>,
-  id: string,
-): Promise<CredentialLine | null> {
-  const [row] = await joined(services).where(eq(credential.id, id)).limit(1);
-  return row ?? null;
-}

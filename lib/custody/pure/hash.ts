@@ -27,7 +27,3 @@ export const emptyRoot = (): Promise<Hash> => sha256(new Uint8Array(0));
 
 export const hex = (bytes: Uint8Array): string =>
   Array.from(bytes, (b) => b.toString(16).padStart(2, '0')).join('');
-
-export function sameBytes(a: Uint8Array, b: Uint8Array): boolean {
-  return a.length === b.length && a.every((byte, i) => byte === b[i]);
-}
