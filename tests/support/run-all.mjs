@@ -2,6 +2,7 @@ import { spawn, spawnSync } from 'node:child_process';
 import { existsSync, mkdirSync, readFileSync, rmSync } from 'node:fs';
 import { ensureBuilt } from '../../lib/launch/build.mjs';
 import { ensureInstalled } from '../../lib/launch/install.mjs';
+import { QUIET } from '../../lib/launch/processes.mjs';
 
 // npm test: everything, from a fresh clone. The last line counts what passed and failed over all suites.
 const DEBIAN = {
@@ -42,7 +43,7 @@ function run(command, args, env = {}) {
   return new Promise((resolve) => {
     const child = spawn(command, args, {
       stdio: ['ignore', 'inherit', 'inherit'],
-      env: { ...process.env, NEXT_TELEMETRY_DISABLED: '1', ...env },
+      env: { ...process.env, NEXT_TELEMETRY_DISABLED: '1', ...QUIET, ...env },
     });
     child.on('exit', (code) => resolve(code ?? 1));
   });
