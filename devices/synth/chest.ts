@@ -1,3 +1,4 @@
+import { addFaults, type Faults, loseSensitivity } from './faults';
 import { gaussian, onePole, seeded, withRms } from './noise';
 
 /** A continuous tone inside the breath: where it is, how high, how long. Amplitudes are of full scale. */
@@ -20,27 +21,22 @@ export interface Burst {
 export interface Recipe {
   seconds: number;
   sampleRateHz: number;
-  breath: { perMinute: number; kind: 'vesicular' | 'bronchial'; level: number } | null;
+  breath: {
+    perMinute: number;
+    kind: 'vesicular' | 'bronchial';
+    /** RMS of the noise before its envelope, of full scale. */
+    level: number;
+    /** Where in a breath the clip begins, 0 to 1; by the seed when it is not said. */
+    startPhase?: number;
+  } | null;
   heart: { perMinute: number; level: number } | null;
   tones: Tone[];
   bursts: Burst[];
   /** RMS of the instrument's own noise. */
   noise: number;
+  /** Of the chest's sound; the instrument's own noise comes after it. */
   gain: number;
   faults: Faults;
-}
-
-export interface Faults {
-  /** Cut at full scale after this gain. */
-  clipGain?: number;
-  /** Cut at this level, below full scale. */
-  flatTop?: number;
-  hum?: { frequencyHz: number; amplitude: number; harmonics?: number };
-  dc?: number;
-  dropouts?: { atSeconds: number; seconds: number; kind: 'zero' | 'held' }[];
-  handling?: { atSeconds: number; seconds: number; amplitude: number }[];
-  spikes?: number;
-  silence?: boolean;
 }
 
 export const CLEAN: Omit<Recipe, 'seconds' | 'sampleRateHz'> = {
@@ -53,25 +49,35 @@ export const CLEAN: Omit<Recipe, 'seconds' | 'sampleRateHz'> = {
   faults: {},
 };
 
-/** Envelope of one breath at phase 0 to 1: inspiration, a short rest, expiration, a longer rest. */
+/** Stretches of one breath as phases of 0 to 1: inspiration, a short rest, expiration, a longer rest. */
+export const BREATH_PHASES = {
+  inspiration: { from: 0, to: 0.36 },
+  expiration: { from: 0.44, to: 0.8 },
+} as const;
+
+/** Envelope at a phase of the breath. The rests are silent, so that an activity range can be told at all. */
 function breathEnvelope(phase: number, kind: 'vesicular' | 'bronchial'): number {
-  const out = kind === 'bronchial' ? 1 : 0.55;
-  if (phase < 0.36) return Math.sin((Math.PI * phase) / 0.36) ** 1.4;
-  if (phase < 0.44) return 0;
-  if (phase < 0.8) return out * Math.sin((Math.PI * (phase - 0.44)) / 0.36) ** 1.6;
-  return 0;
+  const { inspiration, expiration } = BREATH_PHASES;
+  if (phase < inspiration.to) return Math.sin((Math.PI * phase) / inspiration.to) ** 1.4;
+  if (phase < expiration.from || phase >= expiration.to) return 0;
+  const part = (phase - expiration.from) / (expiration.to - expiration.from);
+  return (kind === 'bronchial' ? 1 : 0.55) * Math.sin(Math.PI * part) ** 1.6;
 }
 
+/** Noise of the breath's band. The steep lower edge leaves the heart its own band, as over a lung field. */
 function addBreath(out: Float32Array, recipe: Recipe, random: () => number): void {
   if (!recipe.breath) return;
   const { perMinute, kind, level } = recipe.breath;
   const rate = recipe.sampleRateHz;
+  const [lowHz, highHz] = kind === 'bronchial' ? [150, 700] : [100, 350];
   const noise = gaussian(out.length, random);
-  onePole(noise, 'high', kind === 'bronchial' ? 150 : 90, rate);
-  onePole(noise, 'low', Math.min(kind === 'bronchial' ? 700 : 350, rate * 0.4), rate);
+  onePole(noise, 'high', lowHz, rate);
+  onePole(noise, 'high', lowHz, rate);
+  onePole(noise, 'low', Math.min(highHz, rate * 0.4), rate);
   withRms(noise, level);
   const period = 60 / perMinute;
-  const start = random() * 0.3;
+  const drawn = random() * 0.3;
+  const start = recipe.breath.startPhase ?? drawn;
   for (let i = 0; i < out.length; i++) {
     const phase = (i / rate / period + start) % 1;
     out[i] = (out[i] as number) + (noise[i] as number) * breathEnvelope(phase, kind);
@@ -86,7 +92,6 @@ function addHeart(out: Float32Array, recipe: Recipe, random: () => number): void
     const from = Math.round(at * rate);
     const length = Math.round(seconds * 4 * rate);
     for (let i = 0; i < length && from + i < out.length; i++) {
-      if (from + i < 0) continue;
       const t = i / rate;
       out[from + i] =
         (out[from + i] as number) +
@@ -102,81 +107,52 @@ function addHeart(out: Float32Array, recipe: Recipe, random: () => number): void
   }
 }
 
-function addEvents(out: Float32Array, { tones, bursts, sampleRateHz: rate }: Recipe): void {
-  for (const tone of tones) {
-    const from = Math.round(tone.atSeconds * rate);
-    const length = Math.round(tone.durationSeconds * rate);
-    let phase = 0;
-    for (let i = 0; i < length && from + i < out.length; i++) {
-      const part = i / length;
-      phase +=
-        (2 * Math.PI * (tone.frequencyHz + ((tone.toHz ?? tone.frequencyHz) - tone.frequencyHz) * part)) /
-        rate;
-      out[from + i] =
-        (out[from + i] as number) +
-        tone.amplitude * Math.sin(phase) * Math.min(1, part * 12, (1 - part) * 12);
-    }
-  }
-  for (const burst of bursts) {
-    const from = Math.round(burst.atSeconds * rate);
-    const length = Math.round((burst.twoCycleMs / 1000) * rate);
-    const power = Math.log(0.25) / Math.log(burst.initialDeflectionMs / burst.twoCycleMs);
-    for (let i = 0; i < length && from + i < out.length; i++) {
-      const w = i / length;
-      const window = 0.5 * (1 + Math.cos(2 * Math.PI * (Math.sqrt(w) - 0.5)));
-      out[from + i] =
-        (out[from + i] as number) + burst.amplitude * Math.sin(4 * Math.PI * w ** power) * window;
-    }
+function addTone(out: Float32Array, tone: Tone, rate: number): void {
+  const from = Math.round(tone.atSeconds * rate);
+  const length = Math.round(tone.durationSeconds * rate);
+  const glideHz = (tone.toHz ?? tone.frequencyHz) - tone.frequencyHz;
+  let phase = 0;
+  for (let i = 0; i < length && from + i < out.length; i++) {
+    const part = i / length;
+    phase += (2 * Math.PI * (tone.frequencyHz + glideHz * part)) / rate;
+    out[from + i] =
+      (out[from + i] as number) + tone.amplitude * Math.sin(phase) * Math.min(1, part * 12, (1 - part) * 12);
   }
 }
 
-function addFaults(out: Float32Array, recipe: Recipe, random: () => number): void {
-  const { faults, sampleRateHz: rate } = recipe;
-  if (faults.hum) {
-    for (let i = 0; i < out.length; i++) {
-      const angle = (2 * Math.PI * faults.hum.frequencyHz * i) / rate;
-      let hum = Math.sin(angle);
-      for (let h = 2; h <= (faults.hum.harmonics ?? 1); h++) hum += Math.sin(h * angle) / (2 * h);
-      out[i] = (out[i] as number) + faults.hum.amplitude * hum;
-    }
+/** y = sin(4 pi w^a) (1 + cos 2 pi (sqrt w - 1/2)) / 2 with w = t/2CD and a = ln(1/4) / ln(IDW/2CD). */
+function addBurst(out: Float32Array, burst: Burst, rate: number): void {
+  const from = Math.ceil(burst.atSeconds * rate);
+  const seconds = burst.twoCycleMs / 1000;
+  const power = Math.log(0.25) / Math.log(burst.initialDeflectionMs / burst.twoCycleMs);
+  for (let i = from; i < out.length; i++) {
+    const w = (i / rate - burst.atSeconds) / seconds;
+    if (w > 1) return;
+    const window = 0.5 * (1 + Math.cos(2 * Math.PI * (Math.sqrt(w) - 0.5)));
+    out[i] = (out[i] as number) + burst.amplitude * Math.sin(4 * Math.PI * w ** power) * window;
   }
-  for (const rub of faults.handling ?? []) {
-    const from = Math.round(rub.atSeconds * rate);
-    const length = Math.round(rub.seconds * rate);
-    const noise = onePole(gaussian(length, random), 'low', 60, rate);
-    withRms(noise, rub.amplitude);
-    for (let i = 0; i < length && from + i < out.length; i++)
-      out[from + i] = (out[from + i] as number) + (noise[i] as number) * Math.min(1, i / (rate * 0.005));
-  }
-  const cut = faults.flatTop ?? 1;
-  const gain = faults.clipGain ?? 1;
-  for (let i = 0; i < out.length; i++)
-    out[i] = Math.max(-cut, Math.min(cut, (out[i] as number) * gain + (faults.dc ?? 0)));
-  for (let s = 0; s < (faults.spikes ?? 0); s++)
-    out[Math.floor(random() * out.length)] = random() < 0.5 ? 0.9 : -0.9;
-  for (const hole of faults.dropouts ?? []) {
-    const from = Math.round(hole.atSeconds * rate);
-    const to = Math.min(out.length, from + Math.round(hole.seconds * rate));
-    out.fill(hole.kind === 'zero' ? 0 : (out[Math.max(0, from - 1)] ?? 0), from, to);
-  }
-  if (faults.silence) out.fill(0);
 }
+
+/** Above this the instrument hears little of itself; a fixed band keeps the floor alike at every sample rate. */
+const OWN_NOISE_BAND_HZ = 1600;
 
 /**
  * A chest through a stethoscope, one channel in units of full scale. Deterministic by seed.
- * Amplitudes are chosen so that a clean recipe peaks near -9 dBFS over a floor near -60 dBFS.
+ * Amplitudes are chosen so that a clean recipe peaks near -9 dBFS over own noise near -60 dBFS (sine-referenced).
  */
 export function synthesise(recipe: Recipe, seed: number): Float32Array {
   const random = seeded(seed);
-  const out = new Float32Array(Math.round(recipe.seconds * recipe.sampleRateHz));
+  const rate = recipe.sampleRateHz;
+  const out = new Float32Array(Math.round(recipe.seconds * rate));
   addBreath(out, recipe, random);
   addHeart(out, recipe, random);
-  addEvents(out, recipe);
-  const own = withRms(
-    onePole(gaussian(out.length, random), 'low', recipe.sampleRateHz * 0.35, recipe.sampleRateHz),
-    recipe.noise,
-  );
+  for (const tone of recipe.tones) addTone(out, tone, rate);
+  for (const burst of recipe.bursts) addBurst(out, burst, rate);
+  loseSensitivity(out, recipe.faults);
+  const own = gaussian(out.length, random);
+  onePole(own, 'low', Math.min(OWN_NOISE_BAND_HZ, rate * 0.35), rate);
+  withRms(own, recipe.noise);
   for (let i = 0; i < out.length; i++) out[i] = (out[i] as number) * recipe.gain + (own[i] as number);
-  addFaults(out, recipe, random);
+  addFaults(out, recipe.faults, rate, random);
   return out;
 }
