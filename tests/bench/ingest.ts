@@ -8,7 +8,7 @@ import { recipeOf } from '@/devices/synth/recipes';
 import { encodeWav } from '@/devices/synth/wav';
 import { analyseRecording } from '@/lib/acoustics/analyse';
 import { DEFAULT_LIMITS } from '@/lib/acoustics/judge';
-import type { Figure } from './run';
+import type { Figure } from './figure';
 
 const ROUNDS = 7;
 /** What one would script: the same four questions, each with the general-purpose tool that answers it. */

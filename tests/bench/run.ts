@@ -1,13 +1,5 @@
+import type { Figure } from './figure';
 import { ingest } from './ingest';
-
-/** One measured figure. `ok` is null where no target is set. */
-export interface Figure {
-  name: string;
-  value: number;
-  unit: string;
-  target: number | null;
-  ok: boolean | null;
-}
 
 const BENCHES: Record<string, () => Promise<Figure[]>> = { ingest };
 
