@@ -91,7 +91,16 @@ interface Line {
 }
 
 async function sendFile(device: Device, file: string, n: number): Promise<Line> {
-  const bytes = await readFile(file);
+  const bytes = await readFile(file).catch(() => null);
+  if (bytes === null) {
+    // Nothing was sent: there is no such file, or it may not be read.
+    return {
+      file,
+      accepted: false,
+      problem: { type: 'about:blank', title: 'The file could not be read', status: 0 },
+      sent: null,
+    };
+  }
   const mediaType = MEDIA_TYPES[extname(file).toLowerCase()] ?? 'application/octet-stream';
   try {
     const sent = await sendRecording(device, {
