@@ -61,7 +61,7 @@ export function DeviceClips({ clips, linked }: { clips: readonly Clip[]; linked:
   });
   return (
     <DataTable
-      caption="Latest recordings"
+      caption="Recordings of this device"
       {...table}
       empty={
         <EmptyState title="No recordings yet">
