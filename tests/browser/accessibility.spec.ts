@@ -79,7 +79,7 @@ async function check(page: Page, address: string): Promise<void> {
 
 for (const [who, paths] of Object.entries(PAGES)) {
   test(`every page of ${who} can be used by everybody, day and night`, async ({ as }) => {
-    test.setTimeout(240_000);
+    test.setTimeout(600_000);
     const page = await as(who);
     for (const path of paths) await check(page, await addressOf(page, path));
   });
