@@ -12,7 +12,7 @@ import type {
 import { WavReader } from './wav';
 
 export { mediaTypesOf, sniffContainer } from './sniff';
-export type { AudioDecoder, DecodeFailure, DecodeLimits, DecodeResult, Sniffed } from './types';
+export type { AudioDecoder, DecodeResult } from './types';
 
 /** Tags that follow on each other in front of the sound: beyond so many there is none. */
 const MOST_TAGS = 8;

@@ -1,24 +1,11 @@
 import { GAVE_UP } from './askDecoder';
+import type { OggCodec } from './oggCodec';
 import { OggFlacCodec } from './oggFlac';
 import { OggPackets } from './oggPackets';
 import { type OggPage, OggPages } from './oggPages';
 import { OpusCodec } from './opus';
 import { type DecoderOptions, type Reader, type ReaderResult, Unreadable } from './types';
 import { VorbisCodec } from './vorbis';
-
-/** What makes sound of one logical stream's packets. */
-export interface OggCodec {
-  /** Longer packets are not put together, but given as null. */
-  readonly mostPacketBytes: number;
-  /** Every packet but the first, which the codec was made of; null: it is not whole. */
-  packet(packet: Uint8Array | null): void | Promise<void>;
-  /** All packets of a page were given. */
-  pageEnd(granule: number | null, last: boolean, bytesSoFar: number): void | Promise<void>;
-  /** The file ends within a page of this position. */
-  cut(granule: number | null): void;
-  end(failure: Unreadable | null): ReaderResult;
-  free(): void;
-}
 
 /** First packets are short: a longer one is none that is known. */
 const MOST_FIRST_PACKET_BYTES = 4096;
@@ -58,9 +45,12 @@ export class OggReader implements Reader {
       await this.#choose(page);
       return;
     }
-    if (page.first && this.#over) this.#oddities.add('chained-streams');
-    if (page.serial !== this.#serial || this.#over) {
-      if (!page.first || !this.#over) this.#oddities.add('other-streams');
+    if (this.#over) {
+      if (page.first) this.#oddities.add('chained-streams');
+      return;
+    }
+    if (page.serial !== this.#serial) {
+      this.#oddities.add('other-streams');
       return;
     }
     await this.#take(page);

@@ -1,7 +1,7 @@
 import { FlacFrameDecoder, SLACK_BYTES } from './flacFrame';
 import { readFrameHeader, readStreamInfo, STREAMINFO_BYTES, type StreamInfo } from './flacHeader';
 import { FlacOutput } from './flacOutput';
-import type { OggCodec } from './ogg';
+import type { OggCodec } from './oggCodec';
 import { type DecoderOptions, type ReaderResult, Unreadable } from './types';
 
 /** The mapping's own head, then the marker and a block header, before STREAMINFO (RFC 9639, 10.1). */

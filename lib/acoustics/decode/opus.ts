@@ -2,7 +2,7 @@ import { OpusDecoder } from 'opus-decoder';
 import { askDecoder, freeDecoder } from './askDecoder';
 import { BlockSink } from './blocks';
 import { Granules } from './granules';
-import type { OggCodec } from './ogg';
+import type { OggCodec } from './oggCodec';
 import { type DecoderOptions, MOST_CHANNELS, type ReaderResult, Unreadable } from './types';
 
 /** Opus is decoded at the rate its own clock runs at (RFC 7845, 5.1). */
@@ -111,6 +111,10 @@ export class OpusCodec implements OggCodec {
   pageEnd(granule: number | null, last: boolean, bytesSoFar: number): void {
     const packets = this.#packets;
     this.#packets = [];
+    if (packets.length === 0) {
+      this.#granules.page(0, granule, last);
+      return;
+    }
     const decoded = askDecoder(() => this.decoder.decodeFrames(packets));
     if (decoded.errors.length > 0) this.oddities.add('packets-damaged');
     const { from, to } = this.#granules.page(decoded.samplesDecoded, granule, last);

@@ -2,7 +2,7 @@ import { OggVorbisDecoder } from '@wasm-audio-decoders/ogg-vorbis';
 import { askDecoder, freeDecoder, GAVE_UP } from './askDecoder';
 import { BlockSink } from './blocks';
 import { Granules } from './granules';
-import type { OggCodec } from './ogg';
+import type { OggCodec } from './oggCodec';
 import { checkFormat, type DecoderOptions, type ReaderResult, Unreadable } from './types';
 
 /** What the decoder has room for. */
