@@ -1,5 +1,6 @@
 import { FilterChain, highPass, lowPass } from '../dsp/biquad';
 import { percentile } from '../dsp/percentile';
+import type { Probe } from '../types';
 import { Envelope } from './envelope';
 import { rmsToDbfsSine } from './levels';
 
@@ -17,7 +18,7 @@ export interface ActivityMeasures {
  * stream divided to about 5 kHz. Steady breathing without pauses has range 0 by construction: it is an activity range,
  * not a signal-to-noise ratio.
  */
-export class ActivityProbe {
+export class ActivityProbe implements Probe<ActivityMeasures> {
   readonly #band: Envelope;
   readonly #filter: FilterChain;
 

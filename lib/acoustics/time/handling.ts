@@ -1,4 +1,4 @@
-import { FilterChain, highPass, lowPass } from '../dsp/biquad';
+import { type Biquad, FilterChain, highPass, lowPass } from '../dsp/biquad';
 import { percentile } from '../dsp/percentile';
 import type { Span } from '../types';
 import { Envelope } from './envelope';
@@ -13,11 +13,19 @@ const LEAST_RMS = 0.002;
 const OVER_MEDIAN = 10;
 const LEAST_RISE = 10 ** (15 / 20);
 const RISE_FRAMES = 12;
-/** Holds a beat down to 60 a minute, and four times in five down to 48. */
-const BEAT_WINDOW_SECONDS = 1;
+/** Holds a beat down to 50 a minute. */
+const BEAT_WINDOW_SECONDS = 1.2;
 /** So many windows may be without a beat; the others may be handled and the beat is still known. */
-const BEAT_QUANTILE = 0.2;
-const OVER_BEAT = 2;
+const BEAT_QUANTILE = 0.15;
+const OVER_BEAT = 2.5;
+/** With a crack of the band above the heart to go with it, less will do. */
+const OVER_BEAT_WITH_CRACK = 1.4;
+const CRACK_RISE = 10 ** (8 / 20);
+const CRACK_FRAMES = 20;
+/** A crack against the low band: heart sounds reach 0.3. */
+const LEAST_CRACK = 0.4;
+/** The low band against 20-400 Hz: breath that leaks into it stays below 0.1. */
+const LEAST_LOW_SHARE = 0.2;
 /** A click rings this long in the low band. */
 const CLICK_SECONDS = 0.06;
 /** A burst that stays this long below half its threshold is over. */
@@ -32,24 +40,34 @@ export interface HandlingMeasures {
 }
 
 /**
- * Handling and contact, on the stream divided to about 5 kHz: the envelope below 40 Hz above 10 times its median for 20 ms
- * or more, begun by a rise of more than 15 dB within 120 ms. Heart sounds do the same at every
- * beat, so a burst must also stand well above the beats: above twice the lowest fifth of the largest values in each
- * second. Cough and speech look the same; a device that filters out the low band shows nothing here; knocks
- * louder than none of the beats are not told from them. Limits ours, tried on synthetic sounds.
+ * Handling and contact, on the stream divided to about 5 kHz: the envelope below 40 Hz above 10 times its median for
+ * 20 ms or more, begun by a rise of more than 15 dB within 120 ms. Heart sounds do the same at every beat, so a burst
+ * must also stand well above the beats: above 2.5 times the lowest sixth of the largest values in each 1.2 s, or 1.4
+ * times where the band above the heart (200-1000 Hz) cracks at the same moment. Cough and speech look the same; a
+ * device that filters out the low band shows nothing here; knocks as regular as a beat are not told from one. Limits
+ * ours, tried on synthetic sounds.
  */
 export class HandlingProbe {
-  readonly #low: Envelope;
-  readonly #lowBand: FilterChain;
+  readonly #bands: Record<'low' | 'broad' | 'high', { filter: FilterChain; envelope: Envelope }>;
 
   constructor(rateHz: number) {
     const frame = Math.max(1, Math.round(rateHz * FRAME_SECONDS));
-    this.#low = new Envelope(frame);
-    this.#lowBand = new FilterChain([highPass(5, rateHz), lowPass(40, rateHz), lowPass(40, rateHz)]);
+    const band = (...sections: Biquad[]) => ({
+      filter: new FilterChain(sections),
+      envelope: new Envelope(frame),
+    });
+    this.#bands = {
+      low: band(highPass(5, rateHz), lowPass(40, rateHz), lowPass(40, rateHz)),
+      broad: band(highPass(20, rateHz), lowPass(400, rateHz)),
+      high: band(highPass(200, rateHz), highPass(200, rateHz), lowPass(1000, rateHz)),
+    };
   }
 
   push(samples: Float32Array): void {
-    this.#low.push(this.#lowBand.run(samples), samples.length);
+    const { low, broad, high } = this.#bands;
+    low.envelope.push(low.filter.run(samples), samples.length);
+    broad.envelope.push(broad.filter.run(samples), samples.length);
+    high.envelope.push(high.filter.run(samples), samples.length);
   }
 
   /** @param holes the edges of these, and of @param clicks, ring in the low band without any contact */
@@ -63,9 +81,10 @@ export class HandlingProbe {
   }
 
   #bursts(): Span[] {
-    const low = this.#low.values.view();
+    const low = this.#bands.low.envelope.values.view();
     if (low.length * FRAME_SECONDS < SHORTEST_CLIP_SECONDS) return [];
-    const threshold = Math.max(OVER_MEDIAN * percentile(low, 0.5), OVER_BEAT * beatLevel(low), LEAST_RMS);
+    const beat = beatLevel(low);
+    const threshold = Math.max(OVER_MEDIAN * percentile(low, 0.5), OVER_BEAT_WITH_CRACK * beat, LEAST_RMS);
     const bursts: Span[] = [];
     for (let i = RISE_FRAMES; i < low.length; i++) {
       if ((low[i] as number) < threshold) continue;
@@ -75,11 +94,29 @@ export class HandlingProbe {
         if ((low[i] as number) >= threshold / 2) end = i + 1;
       const seconds = (end - start) * FRAME_SECONDS;
       if (seconds < SHORTEST_BURST_SECONDS || seconds > LONGEST_BURST_SECONDS) continue;
-      if (risesAt(low, start)) bursts.push({ startSeconds: start * FRAME_SECONDS, durationSeconds: seconds });
+      if (risesAt(low, start) && this.#isContact(start, end, beat))
+        bursts.push({ startSeconds: start * FRAME_SECONDS, durationSeconds: seconds });
     }
     return bursts;
   }
+
+  #isContact(start: number, end: number, beat: number): boolean {
+    const { low, broad, high } = this.#bands;
+    const loudest = largestOf(low.envelope.values.view().subarray(start, end));
+    const breath = largestOf(broad.envelope.values.view().subarray(start, end));
+    if (loudest < LEAST_LOW_SHARE * breath) return false;
+    if (loudest >= OVER_BEAT * beat) return true;
+    const crack = largestOf(high.envelope.values.view().subarray(start, end));
+    const before = high.envelope.values.view().subarray(Math.max(0, start - CRACK_FRAMES), start);
+    return crack >= LEAST_CRACK * loudest && crack >= CRACK_RISE * percentile(before, 0.5);
+  }
 }
+
+const largestOf = (values: Float32Array): number => {
+  let largest = 0;
+  for (const value of values) if (value > largest) largest = value;
+  return largest;
+};
 
 const touches = (burst: Span, place: Span): boolean =>
   burst.startSeconds < place.startSeconds + place.durationSeconds + 0.1 &&

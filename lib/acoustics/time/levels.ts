@@ -1,5 +1,5 @@
 import { FloatList, percentile } from '../dsp/percentile';
-import type { Encoding } from '../types';
+import type { Encoding, Probe } from '../types';
 
 /** 0 dBFS is the RMS of a full-scale sine (AES17): a full-scale sine reads 0, a full-scale square wave +3.01. */
 export const rmsToDbfsSine = (rms: number): number => 20 * Math.log10(rms * Math.SQRT2);
@@ -37,7 +37,7 @@ export type StretchListener = (
  * Sums of one channel in one pass: extremes, mean and mean square, and the same a 100 ms block and a 10 ms block.
  * DC is removed afterwards from the sums, in double precision: mean square less square of mean.
  */
-export class LevelProbe {
+export class LevelProbe implements Probe<LevelMeasures> {
   min = Number.POSITIVE_INFINITY;
   max = Number.NEGATIVE_INFINITY;
   frames = 0;

@@ -14,6 +14,10 @@ const LEAST_MAD = 20;
 const MOST_STEP = 0.4;
 const AT_RAIL = 0.999;
 
+/** Within this many samples behind and before a spike nothing swings as far as it: a burst does, to the other side. */
+const BESIDE = 6;
+const MOST_BESIDE = 0.45;
+
 /** Frames of one click: where it is, and whether it is one sample or two. */
 interface Spike {
   frame: number;
@@ -103,8 +107,21 @@ export class SpikeProbe {
     if (Math.max(Math.abs(at(i - 1)), Math.abs(at(i + width))) >= AT_RAIL) return;
     if (Math.abs(at(i - 1) - at(i + width)) > MOST_STEP * height) return;
     if (width === 2 && Math.abs(at(i) - at(i + 1)) > MOST_STEP * height) return;
+    if (this.#swings(x, i, width) > MOST_BESIDE * height) return;
     if (height <= LEAST_MAD * Math.max(this.#usualBend(x, i, width), this.step / 2)) return;
     this.#note({ frame: offset + i, height });
+  }
+
+  /** Furthest that the samples beside a spike go from the middle of its two neighbours. */
+  #swings(x: Float32Array, i: number, width: number): number {
+    const middle = ((x[i - 1] as number) + (x[i + width] as number)) / 2;
+    let furthest = 0;
+    for (let k = 1; k <= BESIDE; k++) {
+      const before = Math.abs((x[i - k] as number) - middle);
+      const after = Math.abs((x[i + width - 1 + k] as number) - middle);
+      furthest = Math.max(furthest, before, after);
+    }
+    return furthest;
   }
 
   /** Median distance of the samples around from the line between their neighbours. */
