@@ -130,7 +130,8 @@ function ofTheRate(m: Measures, limits: JudgingLimits): Finding[] {
   if (m.bandwidthHz !== null && (m.brickWall || m.upsampled)) {
     found.push({
       code: 'bandwidth-limited',
-      severity: m.bandwidthHz < limits.bandwidthCareHz ? 'care' : 'note',
+      // Above a noise floor of its own a steep edge may be the sound's.
+      severity: m.upsampled && m.bandwidthHz < limits.bandwidthCareHz ? 'care' : 'note',
       value: m.bandwidthHz,
       unit: 'Hz',
       threshold: limits.bandwidthCareHz,

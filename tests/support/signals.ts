@@ -28,7 +28,7 @@ export function noise(rms: number, seconds: number, rateHz: number, seed: number
 }
 
 /** Noise of one band: complex one-pole resonators would ring, so it is a sum of many random sines, flat in the band. */
-export function bandNoise(
+function bandNoise(
   fromHz: number,
   toHz: number,
   rms: number,
@@ -98,8 +98,17 @@ export function heartSounds(
   });
 }
 
-/** A clean recording: breath and heart over the instrument's own noise near -66 dBFS. */
+const chests = new Map<string, Signal>();
+
+/** A clean recording: breath and heart over the instrument's own noise near -66 dBFS. Made once, handed out as copies. */
 export function chest(seconds: number, rateHz: number, seed = 1): Signal {
+  const name = `${seconds} ${rateHz} ${seed}`;
+  const made = chests.get(name) ?? makeChest(seconds, rateHz, seed);
+  chests.set(name, made);
+  return made.slice();
+}
+
+function makeChest(seconds: number, rateHz: number, seed: number): Signal {
   return add(
     breaths({ perMinute: 15, level: 0.08, seconds, seed }, rateHz),
     heartSounds({ perMinute: 72, level: 0.12, seconds }, rateHz),
