@@ -45,10 +45,9 @@ test('from the bench to the bedside: a device is added, enrols, and its clip is 
   // Bedside: open a session with it.
   const ward = await as('solveig');
   await ward.goto(`${origin}/bedside/sessions/new`);
-  const patient = ward.getByLabel('Patient', { exact: true });
-  await patient.selectOption({ index: 1 });
-  await ward.getByLabel('Stethoscope').fill('HM-7001');
-  await ward.getByRole('button', { name: 'Open the session' }).click();
+  await ward.getByRole('list', { name: 'Encounters' }).getByRole('radio').first().click();
+  await ward.getByLabel('Stethoscope', { exact: true }).fill('HM-7001');
+  await ward.getByRole('button', { name: /^Open the session/ }).click();
   await ward.waitForURL(/\/bedside\/sessions\/[\w-]+$/);
   await expect(ward.getByText('Waiting for the first clip')).toBeVisible();
 
@@ -98,24 +97,25 @@ test('a stray clip is filed from the tray in three interactions, after two ident
   await expect(ward.getByRole('link', { name: 'To Bedside' })).toBeVisible();
   const { answer } = await sendRecording(device, clip('stray-1', wav(43)));
   await ward.goto(`${origin}/bedside/tray`);
-  const row = ward
-    .getByRole('listitem')
-    .filter({ has: ward.getByRole('link', { name: answer.recording }) })
-    .first();
+  const row = ward.getByRole('article', { name: `Clip ${answer.recording}` });
   await expect(row).toContainText('with this device');
-  await row.getByRole('button', { name: 'File here…' }).first().click();
+  await row.getByRole('button', { name: /^File/ }).first().click();
   const dialog = ward.getByRole('dialog');
   // The wristband's text, as the person reads it: taken from the encounter's own page here.
-  const candidate = await row.locator('ol li').first().textContent();
+  const candidate = await row
+    .getByRole('list', { name: 'Where it may belong' })
+    .getByRole('listitem')
+    .first()
+    .textContent();
   const number = /E-\d+/.exec(candidate ?? '')?.[0] ?? '';
   const who = await (await ward.request.get(`${origin}/api/encounters?q=${number}`)).json();
   await dialog.getByLabel('Record number').fill('HGH-000-0000');
   await dialog.getByLabel('Date of birth or family name').fill('Nobody');
-  await dialog.getByRole('button', { name: `File ${answer.recording}` }).click();
+  await dialog.getByRole('button', { name: /^File to/ }).click();
   await expect(dialog.getByRole('alert')).toBeVisible();
   await dialog.getByLabel('Record number').fill(who.rows[0].recordNumber);
   await dialog.getByLabel('Date of birth or family name').fill(who.rows[0].familyName);
-  await dialog.getByRole('button', { name: `File ${answer.recording}` }).click();
+  await dialog.getByRole('button', { name: /^File to/ }).click();
   await expect(dialog).toBeHidden();
   await expect(ward.getByRole('link', { name: answer.recording })).toBeHidden();
 });

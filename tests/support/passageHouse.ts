@@ -165,27 +165,23 @@ export async function openPassageHouse(options: HouseOptions = {}): Promise<Pass
       await services.write(async (tx) => {
         const now = services.clock.now();
         await tx.insert(ward).values({ id: made.wardId, name: `Ward ${serial}`, createdAt: now });
-        await tx
-          .insert(patient)
-          .values({
-            id: made.patientId,
-            recordNumber: made.recordNumber,
-            familyName: made.familyName,
-            givenName: 'Freya',
-            birthDate: made.birthDate,
-            updatedAt: now,
-          });
-        await tx
-          .insert(encounter)
-          .values({
-            id: made.id,
-            number: made.number,
-            patientId: made.patientId,
-            wardId: made.wardId,
-            status: 'in-progress',
-            startedAt: now - 86_400_000,
-            updatedAt: now,
-          });
+        await tx.insert(patient).values({
+          id: made.patientId,
+          recordNumber: made.recordNumber,
+          familyName: made.familyName,
+          givenName: 'Freya',
+          birthDate: made.birthDate,
+          updatedAt: now,
+        });
+        await tx.insert(encounter).values({
+          id: made.id,
+          number: made.number,
+          patientId: made.patientId,
+          wardId: made.wardId,
+          status: 'in-progress',
+          startedAt: now - 86_400_000,
+          updatedAt: now,
+        });
       });
       return made;
     },
@@ -194,16 +190,14 @@ export async function openPassageHouse(options: HouseOptions = {}): Promise<Pass
       const id = newId();
       const stamp = new Date();
       await services.write(async (tx) => {
-        await tx
-          .insert(user)
-          .values({
-            id,
-            name: `Dr Number ${serial}`,
-            email: `d${serial}@harrowmere.example`,
-            emailVerified: true,
-            createdAt: stamp,
-            updatedAt: stamp,
-          });
+        await tx.insert(user).values({
+          id,
+          name: `Dr Number ${serial}`,
+          email: `d${serial}@harrowmere.example`,
+          emailVerified: true,
+          createdAt: stamp,
+          updatedAt: stamp,
+        });
       });
       return {
         id,

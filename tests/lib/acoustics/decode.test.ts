@@ -29,11 +29,9 @@ afterAll(() => room.close());
 
 const interleave = (channels: Float32Array[]) => {
   const out = new Float32Array(channels.length * (channels[0]?.length ?? 0));
-  channels.forEach((channel, c) =>
-    channel.forEach((x, i) => {
-      out[i * channels.length + c] = x;
-    }),
-  );
+  for (const [c, channel] of channels.entries()) {
+    for (const [i, x] of channel.entries()) out[i * channels.length + c] = x;
+  }
   return out;
 };
 
