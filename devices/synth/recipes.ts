@@ -107,7 +107,6 @@ const SEASONS = {
 } satisfies Record<string, Season>;
 
 export type RecipeName = keyof typeof SEASONS;
-export const RECIPE_NAMES = Object.keys(SEASONS) as RecipeName[];
 
 /** One of the named sounds, varied by seed as patients and hands vary. */
 export function recipeOf(name: RecipeName, seed: number, sampleRateHz: number, seconds = 15): Recipe {

@@ -1,5 +1,3 @@
-import { type Recipe, synthesise } from './chest';
-
 export interface WavFormat {
   sampleRateHz: number;
   bitDepth: 8 | 16 | 24 | 32 | 'float32';
@@ -71,10 +69,3 @@ export function encodeWav(channels: readonly Float32Array[], format: WavFormat):
   });
   return bytes;
 }
-
-/** The file a device makes of a recipe, with the rate its header claims. */
-export const recordWav = (recipe: Recipe, seed: number, bitDepth: WavFormat['bitDepth'] = 16): Uint8Array =>
-  encodeWav([synthesise(recipe, seed)], {
-    sampleRateHz: recipe.faults.declaredRateHz ?? recipe.sampleRateHz,
-    bitDepth,
-  });
