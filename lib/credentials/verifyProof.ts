@@ -3,7 +3,7 @@ import { calculateJwkThumbprint, decodeProtectedHeader, EmbeddedJWK, errors, jwt
 import { PublicJwk } from '@/lib/contract/device';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
-import { currentNonce, isFreshNonce } from './nonce';
+import { isFreshNonce } from './nonce';
 
 export interface ProofFor {
   proof: string;
@@ -72,7 +72,8 @@ export async function verifyProof(
       undefined,
       {},
       {
-        headers: { 'DPoP-Nonce': currentNonce(services), 'WWW-Authenticate': 'DPoP error="use_dpop_nonce"' },
+        // The nonce itself stands in every answer of the device API; twice in one it would be no nonce.
+        headers: { 'www-authenticate': 'DPoP error="use_dpop_nonce"' },
       },
     );
   }

@@ -94,7 +94,8 @@ test('a stray clip is filed from the tray in three interactions, after two ident
   await ward.getByRole('link', { name: /with HM-7001/ }).click();
   await ward.getByRole('button', { name: 'End session' }).click();
   await ward.getByRole('button', { name: 'End the session' }).click();
-  await expect(ward.getByRole('link', { name: 'To Bedside' })).toBeVisible();
+  await expect(ward.getByRole('button', { name: 'End session' })).toBeHidden();
+  await expect(ward.getByText(/was with this patient/)).toBeVisible();
   const { answer } = await sendRecording(device, clip('stray-1', wav(43)));
   await ward.goto(`${origin}/bedside/tray`);
   const row = ward.getByRole('article', { name: `Clip ${answer.recording}` });

@@ -11,6 +11,7 @@ import {
 } from 'jose';
 import { afterAll, beforeAll, expect, test } from 'vitest';
 import { credential, device } from '@/db/schema';
+import { createApi } from '@/devices/agent/api';
 import { createDevice, type Device } from '@/devices/agent/device';
 import { renew } from '@/devices/agent/enrol';
 import { makeKeys } from '@/devices/agent/keys';
@@ -300,4 +301,25 @@ test('bodies are strict, small and JSON', async () => {
   });
   const unknown = await createDevice({ origin: house.origin, serialNumber: 'x', stateFolder: null });
   await expect(unknown.call(PATH, {})).rejects.toThrow('not enrolled');
+});
+
+test('a device that wakes without a nonce is given one, and its second try goes well', async () => {
+  const { agent } = await house.enrolled();
+  const asked: (string | null)[] = [];
+  const awake = createApi({
+    origin: house.origin,
+    clock: { now: () => Date.now() },
+    fetch: async (...args) => {
+      const response = await fetch(...args);
+      asked.push(response.headers.get('dpop-nonce'));
+      return response;
+    },
+  });
+  if (!agent.credential) throw new Error('not enrolled');
+  await expect(
+    awake.call(PATH, { deviceTime: Date.now() }, { keys: agent.keys, credential: agent.credential }),
+  ).resolves.toMatchObject({ state: 'in-service' });
+  expect(asked).toHaveLength(2);
+  // RFC 9449, 8.1: one nonce, not a list of them.
+  expect(asked[0]).toMatch(/^[\w-]+$/);
 });
