@@ -1,89 +1,140 @@
-import { readFile } from 'node:fs/promises';
-import { basename } from 'node:path';
-import { parseArgs } from 'node:util';
-import { NoAnswer, ServiceProblem } from './agent/api';
-import { createDevice } from './agent/device';
-import { enrol, renew } from './agent/enrol';
+import { NoAnswer, ServiceProblem } from './agent/answers';
+import { createDevice, type Device } from './agent/device';
+import { type Disk, folderDisk } from './agent/disk';
+import { enrol } from './agent/enrol';
 import { heartbeat } from './agent/heartbeat';
-import { sendRecording } from './agent/upload';
+import { FolderHeld, holdFolder } from './agent/hold';
+import { openQueue } from './agent/queue';
+import { renew } from './agent/renew';
+import { readState, StateUnreadable } from './agent/state';
+import { type Arguments, HELP, readArguments, WrongUse } from './command/arguments';
+import { keepRunning } from './command/run';
+import { sendWaiting, takeFiles } from './command/send';
+import { showStatus } from './command/status';
 
-const HELP = `npm run device -- COMMAND --origin URL --serial NUMBER --state FOLDER
-
-  enrol CODE            exchange the code of the enrolment sheet for a credential
-  send FILE...          send recordings (--type MEDIA, --site ID, --identifier TEXT)
-  heartbeat             say how the device is, hear the time
-  renew                 renew the credential
-  status                what the state folder holds`;
-
-const { values, positionals } = parseArgs({
-  allowPositionals: true,
-  options: {
-    origin: { type: 'string' },
-    serial: { type: 'string' },
-    state: { type: 'string' },
-    type: { type: 'string', default: 'audio/wav' },
-    site: { type: 'string' },
-    identifier: { type: 'string' },
-    help: { type: 'boolean', default: false },
-  },
-});
-const [command, ...rest] = positionals;
-if (values.help || !command || !values.origin || !values.serial || !values.state) {
-  console.log(HELP);
-  process.exit(values.help ? 0 : 2);
+/** The device of the state folder; a new one only for enrolment. */
+async function wake(args: Arguments, disk: Disk): Promise<Device> {
+  const state = await readState(disk);
+  const origin = args.origin ?? state?.origin;
+  const serialNumber = args.serial ?? state?.serialNumber;
+  if (!origin) throw new WrongUse('--origin URL is needed');
+  if (!serialNumber) throw new WrongUse('--serial NUMBER is needed');
+  if (!state && args.command !== 'enrol') throw new WrongUse('the device is not enrolled: enrol it first');
+  const device = await createDevice({
+    origin,
+    serialNumber,
+    stateFolder: args.state,
+    disk,
+    keyType: args.keyType,
+  });
+  if (!device.credential && args.command !== 'enrol')
+    throw new WrongUse(`the device is not enrolled at ${origin}: enrol it first`);
+  return device;
 }
 
-const device = await createDevice({
-  origin: values.origin.replace(/\/+$/, ''),
-  serialNumber: values.serial,
-  stateFolder: values.state,
-});
-try {
-  switch (command) {
+async function withDevice(args: Arguments, disk: Disk): Promise<number> {
+  const queue = await openQueue(disk);
+  if (args.command === 'send') await takeFiles(queue, args.rest, args);
+  const device = await wake(args, disk);
+  switch (args.command) {
     case 'enrol': {
-      const answer = await enrol(device, rest[0] ?? '');
+      if (args.rest.length !== 1) throw new WrongUse('enrol takes the code of the enrolment sheet');
+      const answer = await enrol(device, args.rest[0] ?? '', args.firmware ?? undefined);
       console.log(
-        `${answer.assetTag} is enrolled with ${answer.credentialId}, until ${new Date(answer.expiresAt).toISOString()}`,
+        `${answer.assetTag} is enrolled with ${answer.credentialId} until ${new Date(answer.expiresAt).toISOString()}`,
       );
-      break;
+      return 0;
     }
     case 'send':
-      for (const file of rest) {
-        const { answer } = await sendRecording(device, {
-          recordingNumber: `${Date.now().toString(36)}-${basename(file)}`.slice(0, 64),
-          bytes: await readFile(file),
-          mediaType: values.type,
-          recordedAt: device.clock.now(),
-          ...(values.site ? { site: values.site as never } : {}),
-          ...(values.identifier ? { scannedIdentifier: values.identifier } : {}),
-        });
-        console.log(
-          `${file}: ${answer.verdict}, ${answer.recording}${answer.reasons[0] ? `. ${answer.reasons[0].meaning} ${answer.reasons[0].action}` : ''}`,
-        );
-      }
-      break;
-    case 'heartbeat':
-      console.log(JSON.stringify(await heartbeat(device)));
-      break;
+      return await sendWaiting(device, queue);
+    case 'heartbeat': {
+      const answer = await heartbeat(device, {
+        ...(args.batteryPercent === null ? {} : { batteryPercent: Math.round(args.batteryPercent) }),
+        ...(args.firmware === null ? {} : { firmware: args.firmware }),
+      });
+      console.log(JSON.stringify(answer));
+      return 0;
+    }
     case 'renew':
       console.log(`renewed: ${(await renew(device)).credentialId}`);
-      break;
-    case 'status':
-      console.log(
-        device.credential
-          ? `${device.credential.assetTag}, ${device.credential.credentialId} until ${new Date(device.credential.expiresAt).toISOString()}`
-          : 'not enrolled',
-      );
-      break;
-    default:
-      console.log(HELP);
-      process.exitCode = 2;
+      return 0;
+    default: {
+      const ending = new AbortController();
+      for (const signal of ['SIGINT', 'SIGTERM'] as const) process.once(signal, () => ending.abort());
+      await keepRunning(device, queue, args, ending.signal);
+      return 0;
+    }
   }
-} catch (error) {
-  if (error instanceof ServiceProblem)
-    console.error(`${error.problem.title} (${error.code}). ${error.problem.detail ?? ''}`);
-  else if (error instanceof NoAnswer)
-    console.error(`No answer from ${values.origin}. Try again; nothing is lost.`);
-  else throw error;
-  process.exitCode = 1;
 }
+
+/** Refused clips in line again, or one given up. */
+async function sortOut(args: Arguments, disk: Disk): Promise<number> {
+  const queue = await openQueue(disk);
+  const [number] = args.rest;
+  const wanted = (await queue.list()).filter(
+    ({ recordingNumber, place, journal }) =>
+      journal.state !== 'completed' && (number === undefined || [recordingNumber, place].includes(number)),
+  );
+  if (number !== undefined && wanted.length === 0)
+    throw new WrongUse(`no unsent recording is called ${number}`);
+  if (args.command === 'drop' && number === undefined) throw new WrongUse('drop takes one number');
+  for (const { place, journal } of wanted) {
+    if (args.command === 'drop') await queue.drop(place);
+    else if (journal.state === 'refused') await queue.tryAgain(place);
+  }
+  console.log(`${wanted.length} ${args.command === 'drop' ? 'given up' : 'in line'}`);
+  return 0;
+}
+
+const HOLDING = ['enrol', 'send', 'run', 'heartbeat', 'renew', 'retry', 'drop'];
+
+async function main(): Promise<number> {
+  const args = readArguments(process.argv.slice(2));
+  if (!args) {
+    console.log(HELP);
+    return 0;
+  }
+  const disk = folderDisk(args.state);
+  if (args.command === 'status') {
+    await showStatus(disk, args.json);
+    return 0;
+  }
+  // Taking into the queue is safe beside a running device, which finds the clips in its next round.
+  if (args.command === 'send' && args.later) {
+    await takeFiles(await openQueue(disk), args.rest, args);
+    return 0;
+  }
+  if (!HOLDING.includes(args.command)) throw new WrongUse(`${args.command} is no command`);
+  const letGo = await holdFolder(args.state);
+  try {
+    return ['retry', 'drop'].includes(args.command)
+      ? await sortOut(args, disk)
+      : await withDevice(args, disk);
+  } finally {
+    await letGo();
+  }
+}
+
+function complain(error: unknown): number {
+  if (error instanceof WrongUse) {
+    console.error(`${error.message}\n\nnpm run device -- --help tells more.`);
+    return 2;
+  }
+  if (error instanceof ServiceProblem) {
+    const { title, detail } = error.problem;
+    const call = error.requestId ? ` Request ${error.requestId}.` : '';
+    console.error(`${title} (${error.code || error.status}). ${detail ?? ''}${call}`);
+    return 1;
+  }
+  if (error instanceof NoAnswer) {
+    console.error('No answer from the service. Try again; nothing is lost.');
+    return 3;
+  }
+  if (error instanceof FolderHeld || error instanceof StateUnreadable) {
+    console.error(error.message);
+    return 4;
+  }
+  throw error;
+}
+
+process.exitCode = await main().catch(complain);

@@ -1,24 +1,9 @@
-import type { ProblemDocument } from '@/lib/contract/problems';
+import { NoAnswer, problemOf } from './answers';
 import type { DeviceClock } from './clock';
 import type { DeviceKeys } from './keys';
 import { dpopProof } from './proofs';
 
-/** A refusal of the service, as its problem document says. */
-export class ServiceProblem extends Error {
-  constructor(
-    readonly status: number,
-    readonly problem: ProblemDocument,
-    readonly retryAfterMs: number | null,
-  ) {
-    super(problem.title);
-  }
-  get code(): string {
-    return this.problem.type.split('/').at(-1) ?? '';
-  }
-}
-
-/** No answer: the line broke, or the time was over. The call may have happened all the same. */
-export class NoAnswer extends Error {}
+export { ServiceProblem } from './answers';
 
 export interface Credential {
   token: string;
@@ -32,9 +17,14 @@ export interface ApiOptions {
   timeoutMs?: number;
 }
 
+interface Caller {
+  keys: DeviceKeys;
+  credential: Credential;
+}
+
 export interface ServiceApi {
   /** Call the service as this device. @throws ServiceProblem, NoAnswer */
-  call<T>(path: string, body: unknown, as?: { keys: DeviceKeys; credential: Credential }): Promise<T>;
+  call<T>(path: string, body: unknown, as?: Caller): Promise<T>;
 }
 
 /** The device API over HTTP: signs each request, keeps the server's nonce, and repeats once when it needs a new one. */
@@ -42,49 +32,48 @@ export function createApi(options: ApiOptions): ServiceApi {
   const send = options.fetch ?? fetch;
   let nonce: string | null = null;
 
-  async function once(
-    path: string,
-    body: unknown,
-    as?: { keys: DeviceKeys; credential: Credential },
-  ): Promise<Response> {
-    const url = options.origin + path;
+  async function headersFor(url: string, as?: Caller): Promise<Record<string, string>> {
     const headers: Record<string, string> = {
       'content-type': 'application/json',
-      accept: 'application/json',
+      accept: 'application/json, application/problem+json',
     };
-    if (as) {
-      headers.authorization = `${as.credential.tokenType} ${as.credential.token}`;
-      if (as.credential.tokenType === 'DPoP') {
-        headers.dpop = await dpopProof(as.keys, {
-          method: 'POST',
-          url,
-          token: as.credential.token,
-          nonce,
-          nowMs: options.clock.now(),
-        });
-      }
+    if (!as) return headers;
+    headers.authorization = `${as.credential.tokenType} ${as.credential.token}`;
+    if (as.credential.tokenType === 'DPoP') {
+      headers.dpop = await dpopProof(as.keys, {
+        method: 'POST',
+        url,
+        token: as.credential.token,
+        nonce,
+        nowMs: options.clock.now(),
+      });
     }
+    return headers;
+  }
+
+  async function once(path: string, body: unknown, as?: Caller): Promise<Response> {
+    const url = options.origin + path;
+    const headers = await headersFor(url, as);
     let response: Response;
     try {
       response = await send(url, {
         method: 'POST',
         headers,
         body: JSON.stringify(body),
+        // A credential is never carried to another address.
+        redirect: 'manual',
         signal: AbortSignal.timeout(options.timeoutMs ?? 60_000),
       });
     } catch (cause) {
       throw new NoAnswer('no answer', { cause });
     }
+    // Any answer may bring the next nonce (RFC 9449, 8.2).
     nonce = response.headers.get('dpop-nonce') ?? nonce;
     return response;
   }
 
   return {
-    async call<T>(
-      path: string,
-      body: unknown,
-      as?: { keys: DeviceKeys; credential: Credential },
-    ): Promise<T> {
+    async call<T>(path: string, body: unknown, as?: Caller): Promise<T> {
       let response = await once(path, body, as);
       let failure = response.ok ? null : await problemOf(response);
       if (failure?.code === 'use-dpop-nonce') {
@@ -99,21 +88,4 @@ export function createApi(options: ApiOptions): ServiceApi {
       }
     },
   };
-}
-
-async function problemOf(response: Response): Promise<ServiceProblem> {
-  const text = await response.text().catch(() => '');
-  let document: ProblemDocument;
-  try {
-    document = JSON.parse(text) as ProblemDocument;
-    if (typeof document.type !== 'string') throw new SyntaxError('no problem document');
-  } catch {
-    document = { type: 'about:blank', title: `HTTP ${response.status}`, status: response.status };
-  }
-  const after = Number(response.headers.get('retry-after'));
-  return new ServiceProblem(
-    response.status,
-    document,
-    Number.isFinite(after) && after > 0 ? after * 1000 : null,
-  );
 }

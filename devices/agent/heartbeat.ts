@@ -1,16 +1,22 @@
 import { HeartbeatAnswer, type HeartbeatRequest } from '@/lib/contract/device';
+import { understood } from './answers';
+import { deviceTime } from './clock';
 import type { Device } from './device';
-import { renew } from './enrol';
+import { renew } from './renew';
 import { withRetry } from './retry';
 
-/** Say how the device is and hear the time; renew when the service asks for it. */
+/** Say how the device is and hear the time; renew when the service asks for it. @throws ServiceProblem, NoAnswer */
 export async function heartbeat(
   device: Device,
   report: Omit<HeartbeatRequest, 'deviceTime'> = {},
 ): Promise<HeartbeatAnswer> {
-  const answer = HeartbeatAnswer.parse(
-    await withRetry(device, () =>
-      device.call('/api/device/v1/heartbeat', { ...report, deviceTime: device.clock.now() }),
+  const answer = await withRetry(device, async () =>
+    understood(
+      HeartbeatAnswer,
+      await device.call('/api/device/v1/heartbeat', {
+        ...report,
+        deviceTime: deviceTime(device.clock.now()),
+      } satisfies HeartbeatRequest),
     ),
   );
   if (answer.renew) await renew(device);

@@ -1,4 +1,11 @@
-import { type CryptoKey, exportJWK, generateKeyPair, importJWK, type JWK } from 'jose';
+import {
+  type CryptoKey,
+  calculateJwkThumbprint,
+  exportJWK,
+  generateKeyPair,
+  importJWK,
+  type JWK,
+} from 'jose';
 import type { PublicJwk } from '@/lib/contract/device';
 
 export type KeyType = 'Ed25519' | 'P-256';
@@ -15,6 +22,7 @@ export interface DeviceKeys {
 const publicMembers = ({ kty, crv, x, y }: JWK): PublicJwk =>
   (kty === 'EC' ? { kty, crv, x, y } : { kty, crv, x }) as PublicJwk;
 
+/** A fresh pair: Ed25519 (RFC 8037), or P-256 (RFC 7518, 6.2) for hardware that has nothing else. */
 export async function makeKeys(type: KeyType = 'Ed25519'): Promise<DeviceKeys> {
   const algorithm = type === 'Ed25519' ? 'EdDSA' : 'ES256';
   const pair = await generateKeyPair(algorithm, {
@@ -29,6 +37,7 @@ export async function makeKeys(type: KeyType = 'Ed25519'): Promise<DeviceKeys> {
   };
 }
 
+/** The pair of a private JWK, as the state folder holds it. */
 export async function loadKeys(privateJwk: JWK): Promise<DeviceKeys> {
   const algorithm = privateJwk.kty === 'EC' ? 'ES256' : 'EdDSA';
   return {
@@ -38,3 +47,6 @@ export async function loadKeys(privateJwk: JWK): Promise<DeviceKeys> {
     privateJwk,
   };
 }
+
+/** RFC 7638 SHA-256 thumbprint, base64url: what the engineer compares at the bench. */
+export const thumbprintOf = (key: PublicJwk): Promise<string> => calculateJwkThumbprint(key, 'sha256');

@@ -1,31 +1,31 @@
-import { createHash } from 'node:crypto';
-import type { z } from 'zod';
-import { CompleteAnswer, SlotAnswer, type SlotRequest, type UploadTarget } from '@/lib/contract/device';
-import { NoAnswer, ServiceProblem } from './api';
+import { CompleteAnswer, SlotAnswer, type SlotRequest } from '@/lib/contract/device';
+import { ServiceProblem, understood } from './answers';
+import type { Clip } from './clip';
+import { deviceTime } from './clock';
 import type { Device } from './device';
-import { withRetry } from './retry';
+import { sha256Hex } from './entry';
+import { putBytes } from './put';
+import { backoffMs, withRetry } from './retry';
 
-export interface Clip {
-  /** The device's own number: the same clip always goes under the same one. */
-  recordingNumber: string;
-  bytes: Uint8Array;
-  mediaType: string;
-  /** By the device's clock, UTC ms. */
-  recordedAt: number;
-  site?: SlotRequest['site'];
-  chestpieceSide?: SlotRequest['chestpieceSide'];
-  gainStep?: number;
-  filter?: string;
-  scannedIdentifier?: string;
-}
+export type { Clip } from './clip';
 
 export interface Sent {
   answer: CompleteAnswer;
+  /** How long each step took, with its repetitions and waits. */
   milliseconds: { slot: number; put: number; complete: number };
 }
 
-/** How often a slot that has ended is asked for anew. */
+export interface SendOptions {
+  /** The recording's number at the service, when its bytes were put before: completing is tried first. */
+  putAs?: string;
+  /** Told after each step, and waited for: where a queue writes its journal. */
+  onStep?(step: 'slotted' | 'put', recording: string): Promise<void>;
+}
+
+/** How often a slot that has ended, or lost its bytes, is asked for anew. */
 const SLOT_TRIES = 4;
+/** A fresh slot may heal these; a number that is not found may be one of a service that was restored. */
+const NEEDS_SLOT = new Set(['bytes-missing', 'slot-ended', 'not-found']);
 
 /**
  * Send one clip: slot, presigned PUT, complete. Every step may be repeated, so whatever broke, the whole is tried
@@ -33,80 +33,72 @@ const SLOT_TRIES = 4;
  *
  * @throws ServiceProblem when the service refuses it for good; NoAnswer when it could not be reached
  */
-export async function sendRecording(device: Device, clip: Clip): Promise<Sent> {
+export async function sendRecording(device: Device, clip: Clip, options: SendOptions = {}): Promise<Sent> {
   const request = slotRequest(device, clip);
   const milliseconds = { slot: 0, put: 0, complete: 0 };
   const timed = async <T>(step: keyof typeof milliseconds, work: () => Promise<T>): Promise<T> => {
     const from = performance.now();
     try {
-      return await work();
+      return await withRetry(device, work);
     } finally {
       milliseconds[step] += performance.now() - from;
     }
   };
-  for (let attempt = 1; ; attempt++) {
-    const slot = await timed('slot', async () =>
-      SlotAnswer.parse(
-        await withRetry(device, () =>
-          device.call('/api/device/v1/recordings', { ...request, deviceTime: device.clock.now() }),
-        ),
-      ),
-    );
+  let recording = options.putAs ?? null;
+  for (let attempt = 0; ; attempt++) {
     try {
-      const { upload } = slot;
-      if (upload) await timed('put', () => withRetry(device, () => put(device, upload, clip.bytes)));
+      recording ??= await bringBytes(device, clip, request, timed, options);
+      const number = recording;
       const answer = await timed('complete', async () =>
-        CompleteAnswer.parse(
-          await withRetry(device, () =>
-            device.call(`/api/device/v1/recordings/${slot.recording}/complete`, {}),
-          ),
+        understood(
+          CompleteAnswer,
+          await device.call(`/api/device/v1/recordings/${encodeURIComponent(number)}/complete`, {}),
         ),
       );
       return { answer, milliseconds };
     } catch (error) {
-      const again = error instanceof ServiceProblem && ['bytes-missing', 'slot-ended'].includes(error.code);
-      if (!again || attempt >= SLOT_TRIES) throw error;
+      const again = error instanceof ServiceProblem && NEEDS_SLOT.has(error.code);
+      if (!again || attempt + 1 >= SLOT_TRIES) throw error;
+      // Where the number of an earlier life was tried, nothing is wrong yet; otherwise not in a storm.
+      if (recording !== options.putAs) await device.sleep(backoffMs(attempt, device.random));
+      recording = null;
     }
   }
+}
+
+type Timed = <T>(step: 'slot' | 'put', work: () => Promise<T>) => Promise<T>;
+
+/** Slot and PUT. @returns the service's number for the recording, whose bytes are there */
+async function bringBytes(
+  device: Device,
+  clip: Clip,
+  request: SlotRequest,
+  timed: Timed,
+  options: SendOptions,
+): Promise<string> {
+  const slot = await timed('slot', async () =>
+    understood(
+      SlotAnswer,
+      await device.call('/api/device/v1/recordings', {
+        ...request,
+        deviceTime: deviceTime(device.clock.now()),
+      }),
+    ),
+  );
+  await options.onStep?.('slotted', slot.recording);
+  const { upload } = slot;
+  if (upload) await timed('put', () => putBytes(device, upload, clip.bytes));
+  await options.onStep?.('put', slot.recording);
+  return slot.recording;
 }
 
 function slotRequest(device: Device, clip: Clip): SlotRequest {
   const { bytes, ...facts } = clip;
   return {
     ...facts,
-    sha256: createHash('sha256').update(bytes).digest('hex'),
+    recordedAt: deviceTime(facts.recordedAt),
+    sha256: sha256Hex(bytes),
     bytes: bytes.length,
-    deviceTime: device.clock.now(),
+    deviceTime: deviceTime(device.clock.now()),
   };
-}
-
-/** Put the bytes to storage, exactly as the slot says. */
-async function put(device: Device, target: z.infer<typeof UploadTarget>, bytes: Uint8Array): Promise<void> {
-  // fetch computes Content-Length from the body itself and refuses to be told.
-  const headers = Object.fromEntries(
-    Object.entries(target.headers).filter(
-      ([name]) => !['content-length', 'host'].includes(name.toLowerCase()),
-    ),
-  );
-  let response: Response;
-  try {
-    response = await device.fetch(target.url, {
-      method: target.method,
-      headers,
-      body: bytes as Uint8Array<ArrayBuffer>,
-      signal: AbortSignal.timeout(300_000),
-    });
-    await response.arrayBuffer();
-  } catch (cause) {
-    throw new NoAnswer('storage gave no answer', { cause });
-  }
-  // Precondition failed: bytes of an earlier try are there. Whether they are the right ones, completing tells.
-  if (response.ok || response.status === 412) return;
-  if (response.status >= 500 || response.status === 409)
-    throw new NoAnswer(`storage answered ${response.status}`);
-  throw new ServiceProblem(
-    response.status,
-    { type: 'about:blank/slot-ended', title: 'Storage refused the upload', status: response.status },
-    null,
-  );
 }
