@@ -100,8 +100,6 @@ test('a stray clip is filed from the tray in three interactions, after two ident
   await ward.goto(`${origin}/bedside/tray`);
   const row = ward.getByRole('article', { name: `Clip ${answer.recording}` });
   await expect(row).toContainText('with this device');
-  await row.getByRole('button', { name: /^File/ }).first().click();
-  const dialog = ward.getByRole('dialog');
   // The wristband's text, as the person reads it: taken from the encounter's own page here.
   const candidate = await row
     .getByRole('list', { name: 'Where it may belong' })
@@ -110,6 +108,8 @@ test('a stray clip is filed from the tray in three interactions, after two ident
     .textContent();
   const number = /E-\d+/.exec(candidate ?? '')?.[0] ?? '';
   const who = await (await ward.request.get(`${origin}/api/encounters?q=${number}`)).json();
+  await row.getByRole('button', { name: /^File/ }).first().click();
+  const dialog = ward.getByRole('dialog');
   await dialog.getByLabel('Record number').fill('HGH-000-0000');
   await dialog.getByLabel('Date of birth or family name').fill('Nobody');
   await dialog.getByRole('button', { name: /^File to/ }).click();
