@@ -58,7 +58,7 @@ export function DataTable(props: DataTableProps) {
       <div
         ref={box}
         className={cx(wide && 'relative overflow-x-auto')}
-        {...(wide ? { role: 'region', 'aria-label': caption, tabIndex: 0 } : {})}
+        {...(wide ? { role: 'region', 'aria-label': `${caption}, table`, tabIndex: 0 } : {})}
       >
         <table className="table" aria-busy={props.loading || undefined}>
           <caption className="sr-only">{caption}</caption>
