@@ -36,3 +36,41 @@ export const custodySubject = sqliteTable(
   },
   (t) => [primaryKey({ columns: [t.subjectKind, t.subjectId, t.sequence] })],
 );
+
+/**
+ * Hashes of complete subtrees of the Merkle log, so that a proof is a few reads however long the log is: `position`
+ * counts the subtrees of 2^level entries from 0. Level 0 are the leaf hashes of the entries themselves and not here.
+ * Dense on each level and append-only by triggers; it can be made again from the entries.
+ */
+export const custodyNode = sqliteTable(
+  'custody_node',
+  {
+    level: integer('level').notNull(),
+    position: integer('position').notNull(),
+    hash: hash('hash').notNull(),
+  },
+  (t) => [primaryKey({ columns: [t.level, t.position] })],
+);
+
+/** Signed tree heads, each of a larger tree than the one before. Triggers refuse UPDATE, DELETE and REPLACE. */
+export const custodyHead = sqliteTable('custody_head', {
+  /** Entries in the tree. */
+  size: integer('size').primaryKey(),
+  root: hash('root').notNull(),
+  /** The signed note (C2SP checkpoint), as it is kept everywhere. */
+  note: text('note').notNull(),
+  kid: text('kid').notNull(),
+  madeAt: at('made_at').notNull(),
+});
+
+/** That the auditors were sent heads on a day: one row a day, append-only, so that several processes send one letter. */
+export const custodyHeadMail = sqliteTable('custody_head_mail', {
+  /** YYYY-MM-DD in the hospital's zone. */
+  day: text('day').primaryKey(),
+  /** Size of the newest head in it. */
+  size: integer('size')
+    .notNull()
+    .references(() => custodyHead.size),
+  recipients: integer('recipients').notNull(),
+  madeAt: at('made_at').notNull(),
+});

@@ -1,6 +1,7 @@
 export * from './credential';
 export * from './custody';
 export * from './device';
+export * from './evidence';
 export * from './identity';
 export * from './patient';
 export * from './policy';

@@ -1,12 +1,13 @@
-import { createHash } from 'node:crypto';
 import { sql } from 'drizzle-orm';
 import { custodyEntry, custodySubject } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { canonicalEntry, type Entry, type NewEntry } from './entry';
+import { growTree } from './tree/grow';
+import { leafHashNow } from './tree/hashes';
 
 /**
- * Append to the custody log in the caller's transaction: the entry and the change it tells of commit together or
- * not at all. Sequence numbers are dense because the transaction is immediate and there is one writer at a time.
+ * Append to the custody log in the caller's transaction: the entry, its place in the tree and the change it tells of
+ * commit together or not at all. Sequence numbers are dense because the transaction is immediate and there is one writer at a time.
  *
  * @param nowMs UTC milliseconds; a clock set back is written as it is, the order is the log's
  * @returns the sequence number of the last entry appended
@@ -15,16 +16,15 @@ export async function appendEntries(tx: Tx, nowMs: number, entries: NewEntry[]):
   const [row] = await tx
     .select({ next: sql<number>`coalesce(max(${custodyEntry.sequence}) + 1, 0)` })
     .from(custodyEntry);
-  let sequence = row?.next ?? 0;
+  const first = row?.next ?? 0;
+  let sequence = first;
+  const leaves: Uint8Array[] = [];
   const at = new Date(nowMs).toISOString();
   for (const fresh of entries) {
     const entry: Entry = { ...fresh, sequence, at };
     const canonical = canonicalEntry(entry);
-    // RFC 6962, 2.1: leaf = SHA-256(0x00 || entry)
-    const leafHash = createHash('sha256')
-      .update(Buffer.from([0]))
-      .update(canonical, 'utf8')
-      .digest();
+    const leafHash = leafHashNow(canonical);
+    leaves.push(leafHash);
     await tx.insert(custodyEntry).values({
       sequence,
       at: nowMs,
@@ -45,5 +45,6 @@ export async function appendEntries(tx: Tx, nowMs: number, entries: NewEntry[]):
     }
     sequence++;
   }
+  await growTree(tx, first, leaves);
   return sequence - 1;
 }
