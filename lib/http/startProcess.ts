@@ -1,4 +1,5 @@
 import { applyMigrations } from '@/db/migrate';
+import { bringTreeUp } from '@/lib/custody/tree/grow';
 import { endForgottenSessions } from '@/lib/filing/endForgottenSessions';
 import { forgetExpired } from '@/lib/identity/forgetExpired';
 import { sweepRecordings } from '@/lib/ingest/sweep';
@@ -17,6 +18,7 @@ export async function startProcess(): Promise<void> {
   recordPeerAddresses();
   const services = await getServices();
   await applyMigrations(services.database);
+  await bringTreeUp(services);
   await currentSigningKey(services, 'device-token');
   startOutbox(services, { mail: (payload) => services.mail.send(Message.parse(payload)) });
 

@@ -126,11 +126,7 @@ async function hashesOf(tx: Tx, level: number, from: number, to: number): Promis
           .select({ hash: custodyNode.hash })
           .from(custodyNode)
           .where(
-            and(
-              eq(custodyNode.level, level),
-              gte(custodyNode.position, from),
-              lt(custodyNode.position, to),
-            ),
+            and(eq(custodyNode.level, level), gte(custodyNode.position, from), lt(custodyNode.position, to)),
           )
           .orderBy(asc(custodyNode.position));
   return rows.map(({ hash }) => hash);
