@@ -46,6 +46,8 @@ export const credential = sqliteTable(
     state: text('state', { enum: CREDENTIAL_STATES }).notNull(),
     issuedAt: at('issued_at').notNull(),
     expiresAt: at('expires_at').notNull(),
+    /** From here on the device is told to renew, by the policy of the day it was issued. */
+    renewAfter: at('renew_after'),
     firstUsedAt: at('first_used_at'),
     lastUsedAt: at('last_used_at'),
     /** Overlap: works until its successor is first used, at the latest until here. */

@@ -1,5 +1,5 @@
 import { index, integer, primaryKey, sqliteTable, text, uniqueIndex } from 'drizzle-orm/sqlite-core';
-import { at } from './columns';
+import { at, hash } from './columns';
 
 const stamp = (name: string) => integer(name, { mode: 'timestamp_ms' });
 
@@ -128,6 +128,44 @@ export const passwordReset = sqliteTable(
     usedAt: at('used_at'),
   },
   (t) => [index('password_reset_by_person').on(t.personId)],
+);
+
+/** A key of a person's own device or security key (WebAuthn, level 3). */
+export const passkey = sqliteTable(
+  'passkey',
+  {
+    /** Credential id, base64url. */
+    id: text('id').primaryKey(),
+    personId: text('person_id')
+      .notNull()
+      .references(() => user.id),
+    name: text('name').notNull(),
+    /** COSE key (RFC 9052). */
+    publicKey: hash('public_key').notNull(),
+    counter: integer('counter').notNull(),
+    /** Comma-separated hints of how the browser reaches it. */
+    transports: text('transports').notNull(),
+    /** Copied to other devices of its holder by whoever made it. */
+    backedUp: integer('backed_up', { mode: 'boolean' }).notNull(),
+    createdAt: at('created_at').notNull(),
+    lastUsedAt: at('last_used_at'),
+  },
+  (t) => [index('passkey_by_person').on(t.personId)],
+);
+
+/** What is under way at a browser and works once: a challenge to a passkey, a way through single sign-on. */
+export const signInAttempt = sqliteTable(
+  'sign_in_attempt',
+  {
+    /** SHA-256 of the handle that the browser holds, hex. */
+    keyHash: text('key_hash').primaryKey(),
+    purpose: text('purpose', { enum: ['passkey-add', 'passkey-sign-in', 'single-sign-on'] }).notNull(),
+    personId: text('person_id'),
+    /** Sealed: challenge, nonce, code verifier. */
+    sealedState: text('sealed_state').notNull(),
+    expiresAt: at('expires_at').notNull(),
+  },
+  (t) => [index('sign_in_attempt_by_end').on(t.expiresAt)],
 );
 
 /** Roles are ours: a person may hold several. */

@@ -1,4 +1,4 @@
-import { index, integer, sqliteTable, text } from 'drizzle-orm/sqlite-core';
+import { index, integer, primaryKey, sqliteTable, text } from 'drizzle-orm/sqlite-core';
 import { z } from 'zod';
 import { at, id, json } from './columns';
 
@@ -10,6 +10,20 @@ export const policy = sqliteTable('policy', {
   madeAt: at('made_at').notNull(),
   note: text('note'),
 });
+
+/** What the hospital has decided, by kind (lib/policy/kinds.ts). A change is a new row; triggers refuse to rewrite one. */
+export const policyVersion = sqliteTable(
+  'policy_version',
+  {
+    kind: text('kind').notNull(),
+    version: integer('version').notNull(),
+    settings: json('settings', z.record(z.string(), z.unknown())).notNull(),
+    reason: text('reason').notNull(),
+    madeBy: text('made_by').notNull(),
+    madeAt: at('made_at').notNull(),
+  },
+  (t) => [primaryKey({ columns: [t.kind, t.version] })],
+);
 
 /** A write's answer by its idempotency key, so that a repeat gets the same answer and changes nothing. */
 export const idempotencyKey = sqliteTable(
