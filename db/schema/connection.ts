@@ -19,7 +19,10 @@ export const connectionSetting = sqliteTable('connection_setting', {
 export const connectionCheck = sqliteTable('connection_check', {
   kind: text('kind', { enum: ['storage', 'mail', 'record-system', 'single-sign-on'] }).primaryKey(),
   ok: integer('ok', { mode: 'boolean' }).notNull(),
-  steps: json('steps', z.array(z.object({ name: z.string(), ok: z.boolean(), detail: z.string() }))).notNull(),
+  steps: json(
+    'steps',
+    z.array(z.object({ name: z.string(), ok: z.boolean(), detail: z.string() })),
+  ).notNull(),
   checkedBy: text('checked_by')
     .notNull()
     .references(() => user.id),

@@ -37,6 +37,7 @@ export async function insertCredential(tx: Tx, wanted: CredentialFor): Promise<C
     overlapEndsAt: null,
     successorId: null,
     predecessorId: wanted.predecessor?.id ?? null,
+    renewAfter: null,
     renewalAskedAt: null,
     revokedAt: null,
     endReason: null,
