@@ -9,6 +9,7 @@ import { startOutbox } from '@/lib/platform/outbox';
 import { recordPeerAddresses } from './clientAddress';
 import { ingestServices } from './passage';
 import { getServices } from './services';
+import { headWork, startHeads } from './treeHeads';
 
 const SWEEP_EVERY_MS = 30_000;
 const TIDY_EVERY_MS = 3_600_000;
@@ -20,7 +21,11 @@ export async function startProcess(): Promise<void> {
   await applyMigrations(services.database);
   await bringTreeUp(services);
   await currentSigningKey(services, 'device-token');
-  startOutbox(services, { mail: (payload) => services.mail.send(Message.parse(payload)) });
+  startOutbox(services, {
+    mail: (payload) => services.mail.send(Message.parse(payload)),
+    ...headWork(services),
+  });
+  startHeads(services);
 
   let sweeping = false;
   const sweep = setInterval(async () => {

@@ -11,17 +11,22 @@ export async function streamObject(
   key: string,
   headers: Record<string, string>,
 ): Promise<Response> {
+  const object = await fromStorage(() => storage.getStream(key));
+  return new Response(Readable.toWeb(Readable.from(object.body)) as ReadableStream<Uint8Array>, {
+    headers: {
+      'content-length': String(object.contentLength),
+      'x-content-type-options': 'nosniff',
+      'content-security-policy': "default-src 'none'; sandbox",
+      'cross-origin-resource-policy': 'same-origin',
+      ...headers,
+    },
+  });
+}
+
+/** What is asked of the store, with its failures as refusals. @throws Refusal `not-found`, `storage-unavailable` */
+export async function fromStorage<T>(ask: () => Promise<T>): Promise<T> {
   try {
-    const object = await storage.getStream(key);
-    return new Response(Readable.toWeb(Readable.from(object.body)) as ReadableStream<Uint8Array>, {
-      headers: {
-        'content-length': String(object.contentLength),
-        'x-content-type-options': 'nosniff',
-        'content-security-policy': "default-src 'none'; sandbox",
-        'cross-origin-resource-policy': 'same-origin',
-        ...headers,
-      },
-    });
+    return await ask();
   } catch (error) {
     if (!(error instanceof StorageError)) throw error;
     throw new Refusal(

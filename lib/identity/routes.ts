@@ -39,8 +39,10 @@ export const ROUTES = {
   'PAGE /ledger': { permission: 'thread.read' },
   'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
   'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },
+  'PAGE /ledger/heads': { permission: 'ledger.read' },
 
   'GET /.well-known/jwks.json': { public: true },
+  'GET /.well-known/custody-keys.txt': { public: true },
   'GET /api/health': { public: true },
   'POST /api/auth/sign-in': { public: true },
   'POST /api/auth/authenticator': { public: true },
@@ -83,6 +85,11 @@ export const ROUTES = {
   'GET /api/recordings/[id]/sound': { permission: 'recording.read' },
   'GET /api/recordings/[id]/peaks': { permission: 'recording.read' },
   'GET /api/recordings/[id]/spectrogram': { permission: 'recording.read' },
+
+  'GET /api/ledger/heads': { permission: 'thread.read' },
+  'GET /api/ledger/heads/[size]/locked': { permission: 'thread.read' },
+  'GET /api/ledger/proofs/inclusion': { permission: 'thread.read' },
+  'GET /api/ledger/proofs/consistency': { permission: 'thread.read' },
 
   'GET /api/credentials': { permission: 'credential.read' },
   'POST /api/credentials/[id]/rotate': { permission: 'credential.write' },
