@@ -169,6 +169,7 @@ const SENTENCES: Record<string, Sentence> = {
       typeof d.from === 'number' && typeof d.to === 'number' && `${text(d.from)} to ${text(d.to)} s`,
       typeof d.seconds === 'number' && `for ${text(d.seconds)} s`,
     ),
+  downloaded: (d, e) => join(actorWords(e.actor), d.why === 'verification' && 'to hash it in the browser'),
   'access-outside-wards': (d, e) => `${actorWords(e.actor)}. Reason given: “${text(d.reason)}”`,
   'session-opened': (d, e) =>
     join(

@@ -88,6 +88,7 @@ export const ROUTES = {
 
   'GET /api/ledger/heads': { permission: 'thread.read' },
   'GET /api/ledger/heads/[size]/locked': { permission: 'thread.read' },
+  'GET /api/ledger/recordings/[number]/original': { permission: 'recording.read' },
   'GET /api/ledger/proofs/inclusion': { permission: 'thread.read' },
   'GET /api/ledger/proofs/consistency': { permission: 'thread.read' },
 

@@ -4,6 +4,7 @@ import { EntriesTable } from '@/components/custody/EntriesTable';
 import { KindFilter } from '@/components/custody/KindFilter';
 import { LiveRefresh } from '@/components/shell/LiveEvents';
 import { hrefWith } from '@/components/ui/address';
+import { ButtonLink } from '@/components/ui/Button';
 import { Chip, Filters } from '@/components/ui/Chip';
 import { EmptyState } from '@/components/ui/EmptyState';
 import { PageHead } from '@/components/ui/PageHead';
@@ -44,7 +45,10 @@ export default async function LedgerPage({
   return (
     <>
       <LiveRefresh subjects={[{ kind: 'recording' }, { kind: 'device' }, { kind: 'person' }]} />
-      <PageHead title="Ledger">
+      <PageHead
+        title="Ledger"
+        action={whole ? <ButtonLink href="/ledger/heads">Tree heads</ButtonLink> : null}
+      >
         {whole
           ? `The log holds ${size.toLocaleString('en-GB')} entries. Each is one line of what happened; none can be changed, removed or moved.`
           : 'What you did yourself. A recording’s whole thread is reached from its own page.'}

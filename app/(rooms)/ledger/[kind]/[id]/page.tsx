@@ -1,7 +1,7 @@
 import type { Metadata } from 'next';
 import { notFound } from 'next/navigation';
 import { EntriesTable } from '@/components/custody/EntriesTable';
-import { LeafChecks } from '@/components/custody/LeafChecks';
+import { VerifyThread } from '@/components/custody/VerifyThread';
 import { EmptyState } from '@/components/ui/EmptyState';
 import { PageHead } from '@/components/ui/PageHead';
 import { Time } from '@/components/ui/Time';
@@ -53,8 +53,17 @@ export default async function SubjectThreadPage({ params, searchParams }: Props)
       />
       {page.rows.length > 0 ? (
         <div className="mt-6 max-w-[480px]">
-          <LeafChecks
-            lines={page.rows.map(({ sequence, canonical, leafHash }) => ({ sequence, canonical, leafHash }))}
+          <VerifyThread
+            number={null}
+            mayOpen={false}
+            thread={{
+              sha256: null,
+              entries: page.rows.map(({ sequence, canonical, leafHash }) => ({
+                sequence,
+                canonical,
+                leafHash,
+              })),
+            }}
           />
         </div>
       ) : null}

@@ -3,7 +3,7 @@ import Link from 'next/link';
 import { notFound } from 'next/navigation';
 import { CustodyThread } from '@/components/custody/CustodyThread';
 import { wordedEntry } from '@/components/custody/entryWords';
-import { LeafChecks } from '@/components/custody/LeafChecks';
+import { VerifyThread } from '@/components/custody/VerifyThread';
 import { LiveRefresh } from '@/components/shell/LiveEvents';
 import { ButtonLink } from '@/components/ui/Button';
 import { DefinitionList } from '@/components/ui/DefinitionList';
@@ -59,7 +59,7 @@ export default async function ThreadPage({ params, searchParams }: Props) {
           'Nothing in it stands out.'
         )}
       </PageHead>
-      <div className="grid gap-x-10 gap-y-8 plate:grid-cols-[minmax(0,1fr)_minmax(300px,420px)]">
+      <div className="grid gap-x-10 gap-y-8 plate:grid-cols-[minmax(0,1fr)_minmax(300px,470px)]">
         <div>
           <CustodyThread lines={page.rows} />
           {page.next !== null || before !== undefined ? (
@@ -70,8 +70,17 @@ export default async function ThreadPage({ params, searchParams }: Props) {
           ) : null}
         </div>
         <aside className="grid content-start gap-6">
-          <LeafChecks
-            lines={page.rows.map(({ sequence, canonical, leafHash }) => ({ sequence, canonical, leafHash }))}
+          <VerifyThread
+            number={recording.number}
+            mayOpen={may(person.roles, 'recording.read') && recording.sealedAt !== null}
+            thread={{
+              sha256: recording.declaredSha256,
+              entries: page.rows.map(({ sequence, canonical, leafHash }) => ({
+                sequence,
+                canonical,
+                leafHash,
+              })),
+            }}
           />
           <Section title="The original">
             <DefinitionList
