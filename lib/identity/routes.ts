@@ -18,7 +18,9 @@ export const ROUTES = {
   'PAGE /forgot': { public: true },
   'PAGE /reset/[token]': { public: true },
   'PAGE /invite/[token]': { public: true },
+  'PAGE /problems': { public: true },
   'PAGE /problems/[type]': { public: true },
+  'PAGE /device-api': { public: true },
   'PAGE /account': { permission: 'self', beforeSecondFactor: true },
   'PAGE /bench': { permission: 'fleet.read' },
   'PAGE /bench/add': { permission: 'fleet.write' },
@@ -51,6 +53,7 @@ export const ROUTES = {
   'POST /api/auth/reset': { public: true },
   'POST /api/invitations/accept': { public: true },
 
+  'GET /api/device/v1/openapi.json': { public: true },
   'POST /api/device/v1/enrol': { public: true },
   'POST /api/device/v1/token': { device: true },
   'POST /api/device/v1/heartbeat': { device: true },

@@ -1,4 +1,5 @@
 import type { Metadata } from 'next';
+import Link from 'next/link';
 import { notFound } from 'next/navigation';
 import { DefinitionList } from '@/components/ui/DefinitionList';
 import { PROBLEMS, type ProblemCode, type ProblemKind } from '@/lib/contract/problems';
@@ -29,6 +30,11 @@ export default async function ProblemPage({ params }: Props) {
           { term: 'Next step', value: kind.next },
         ]}
       />
+      <p className="mt-6">
+        <Link href="/problems" className="link">
+          All problems
+        </Link>
+      </p>
     </>
   );
 }
