@@ -51,7 +51,7 @@ test.each(['p-256', 'ed25519'])(
         cwd: folder,
         env: {
           NODE_ENV: 'test',
-        PATH: process.env.PATH ?? '',
+          PATH: process.env.PATH ?? '',
           ORIGIN: house.origin,
           SERIAL: listed.serialNumber,
           CODE: listed.code,
