@@ -1,6 +1,6 @@
 // Who may import whom. The folders tell the story of a recording; the arrows may only run one way.
 const PASSAGE = 'enrolment|credentials|upload|ingest|filing';
-const below = 'custody|acoustics|storage|contract|platform|keys';
+const below = 'custody|acoustics|storage|contract|platform|keys|policy';
 
 /** @type {import('dependency-cruiser').IConfiguration} */
 export default {

@@ -116,6 +116,12 @@ const plainList = (value: unknown): string =>
 const roleList = (value: unknown): string =>
   Array.isArray(value) ? value.map((role) => ROLE_WORDS[text(role)] ?? text(role)).join(', ') : '';
 
+/** What was changed: each member before and after. */
+const changeWords = (e: EntryLike): string =>
+  Object.entries(e.after ?? {})
+    .map(([name, after]) => `${name} ${String(e.before?.[name])} to ${String(after)}`)
+    .join(', ');
+
 type Sentence = (d: Record<string, unknown>, entry: EntryLike) => string;
 
 const clockWords = (offset: unknown): string | false => {
@@ -222,6 +228,11 @@ const SENTENCES: Record<string, Sentence> = {
   'second-factor-removed': (d, e) =>
     join(`By ${actorWords(e.actor)}`, d.reason ? `reason: “${text(d.reason)}”` : false),
   'password-reset': (d, e) => `${e.actor.label}, ${text(d.how)}`,
+  'policy-changed': (d, e) =>
+    join(
+      `${text(d.policy)}, version ${text(d.version)}, by ${actorWords(e.actor)}: ${changeWords(e)}`,
+      d.reason ? `reason: “${text(d.reason)}”` : false,
+    ),
   'credential-misused': (d, e) => `By ${e.actor.label} or whoever holds its key: ${text(d.why)}`,
 };
 

@@ -8,9 +8,7 @@ import { insertCredential } from '@/lib/keys/issueCredential';
 import { currentSigningKey } from '@/lib/keys/signingKeys';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
-
-/** The old credential lives until the new one is first used, at the longest this. */
-export const OVERLAP_MS = 24 * 3_600_000;
+import { currentPolicy } from '@/lib/policy/currentPolicy';
 
 type Needs = Pick<Services, 'read' | 'write' | 'clock' | 'env' | 'secrets'>;
 
@@ -43,7 +41,9 @@ export async function renewCredential(
       nowMs: now,
       predecessor: old,
     });
-    const overlapEndsAt = Math.min(old.expiresAt, now + OVERLAP_MS);
+    // The old one lives until the new one is first used, at the longest this.
+    const { settings } = await currentPolicy(tx, 'credentials');
+    const overlapEndsAt = Math.min(old.expiresAt, now + settings.overlapHours * 3_600_000);
     await tx
       .update(credential)
       .set({

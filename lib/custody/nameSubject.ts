@@ -45,6 +45,8 @@ export async function nameSubject(
       );
     case 'person':
       return await first(read.select({ label: user.name }).from(user).where(eq(user.id, id)).limit(1));
+    case 'policy':
+      return { kind, id, label: `Policy: ${id}` };
     default:
       return null;
   }

@@ -38,6 +38,8 @@ export const ROUTES = {
   'PAGE /keyroom/people': { permission: 'people.read' },
   'PAGE /keyroom/people/[id]': { permission: 'people.read' },
   'PAGE /keyroom/people/invitations': { permission: 'people.read' },
+  'PAGE /keyroom/policies': { permission: 'policy.read' },
+  'PAGE /keyroom/policies/[kind]': { permission: 'policy.read' },
   'PAGE /ledger': { permission: 'thread.read' },
   'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
   'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },
@@ -98,6 +100,9 @@ export const ROUTES = {
   'GET /api/credentials': { permission: 'credential.read' },
   'POST /api/credentials/[id]/rotate': { permission: 'credential.write' },
   'POST /api/credentials/[id]/revoke': { permission: 'credential.write' },
+
+  'POST /api/policies/[kind]': { permission: 'policy.write' },
+  'POST /api/policies/[kind]/preview': { permission: 'policy.write' },
 
   'GET /api/me': { permission: 'self', beforeSecondFactor: true },
   'POST /api/account/sign-out': { permission: 'self', beforeSecondFactor: true },

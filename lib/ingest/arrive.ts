@@ -75,7 +75,7 @@ async function quarantine(services: IngestServices, row: RecordingRow, arrived: 
   await services.storage.seal({
     from: row.slotKey,
     to: key,
-    retainUntilMs: retentionEnd(services, services.clock.now()),
+    retainUntilMs: await retentionEnd(services, services.clock.now()),
     contentType: 'application/octet-stream',
     expectedEtag: arrived.etag,
     contentLength: arrived.bytes,

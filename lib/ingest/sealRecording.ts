@@ -3,14 +3,20 @@ import { recording } from '@/db/schema';
 import { appendEntries } from '@/lib/custody/append';
 import { SERVICE_ACTOR } from '@/lib/custody/entry';
 import { Refusal } from '@/lib/platform/errors';
+import { currentPolicy } from '@/lib/policy/currentPolicy';
 import { StorageError } from '@/lib/storage/port';
 import type { IngestServices, RecordingRow } from './types';
 
 const YEAR_MS = 365.25 * 86_400_000;
 
-/** Until when what is kept now is locked in storage, UTC ms. */
-export const retentionEnd = (services: Pick<IngestServices, 'env'>, now: number): number =>
-  Math.floor(now + services.env.RETENTION_YEARS * YEAR_MS);
+/** Until when what is kept now is locked in storage, UTC ms: by policy, or by the environment until there is one. */
+export async function retentionEnd(
+  services: Pick<IngestServices, 'env' | 'read'>,
+  now: number,
+): Promise<number> {
+  const { settings } = await currentPolicy(services.read, 'retention', services.env);
+  return Math.floor(now + settings.originalYears * YEAR_MS);
+}
 
 /** Where an original lies for good: its hash is part of its name, so the name says what must be in it. */
 export const originalKeyOf = (row: Pick<RecordingRow, 'id' | 'declaredSha256'>): string =>
@@ -30,7 +36,7 @@ export async function sealRecording(
 ): Promise<void> {
   const now = services.clock.now();
   const key = originalKeyOf(row);
-  const retainUntilMs = retentionEnd(services, now);
+  const retainUntilMs = await retentionEnd(services, now);
   let lock: 'compliance' | 'none';
   try {
     const sealed = await services.storage.seal({

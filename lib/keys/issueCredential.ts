@@ -1,15 +1,13 @@
 import { credential } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { newId, readableCode } from '@/lib/platform/ids';
+import { currentPolicy } from '@/lib/policy/currentPolicy';
 import type { CredentialRow } from './token';
 
 const DAY_MS = 86_400_000;
-/** How long a credential lives, and how long before its end a device is told to renew. Hospital policy may shorten it. */
-export const CREDENTIAL_LIFETIME_MS = 90 * DAY_MS;
-export const RENEW_BEFORE_END_MS = 21 * DAY_MS;
-/** Plain bearer credentials live shorter: whoever copies one has all of it. */
-export const BEARER_LIFETIME_MS = 14 * DAY_MS;
-export const BEARER_RENEW_BEFORE_END_MS = 5 * DAY_MS;
+/** How long before its end a credential of before there was a policy is renewed. */
+const RENEW_BEFORE_END_MS = 21 * DAY_MS;
+const BEARER_RENEW_BEFORE_END_MS = 5 * DAY_MS;
 
 export interface CredentialFor {
   deviceId: string;
@@ -19,9 +17,14 @@ export interface CredentialFor {
   predecessor?: CredentialRow;
 }
 
-/** Write a new credential's row; the caller writes the custody entry that says why, in the same transaction. */
+/** Write a new credential's row, with the lifetime that policy gives it; the caller writes the custody entry that says why, in the same transaction. */
 export async function insertCredential(tx: Tx, wanted: CredentialFor): Promise<CredentialRow> {
   const code = readableCode(6);
+  const { settings } = await currentPolicy(tx, 'credentials');
+  const [lifetimeDays, renewBeforeDays] = wanted.boundThumbprint
+    ? [settings.boundLifetimeDays, settings.boundRenewBeforeDays]
+    : [settings.bearerLifetimeDays, settings.bearerRenewBeforeDays];
+  const expiresAt = wanted.nowMs + lifetimeDays * DAY_MS;
   const row: CredentialRow = {
     id: newId(),
     label: `c-${code.slice(0, 4)}-${code.slice(4)}`,
@@ -31,13 +34,13 @@ export async function insertCredential(tx: Tx, wanted: CredentialFor): Promise<C
     boundThumbprint: wanted.boundThumbprint,
     state: 'issued',
     issuedAt: wanted.nowMs,
-    expiresAt: wanted.nowMs + (wanted.boundThumbprint ? CREDENTIAL_LIFETIME_MS : BEARER_LIFETIME_MS),
+    expiresAt,
     firstUsedAt: null,
     lastUsedAt: null,
     overlapEndsAt: null,
     successorId: null,
     predecessorId: wanted.predecessor?.id ?? null,
-    renewAfter: null,
+    renewAfter: expiresAt - renewBeforeDays * DAY_MS,
     renewalAskedAt: null,
     revokedAt: null,
     endReason: null,
@@ -48,8 +51,10 @@ export async function insertCredential(tx: Tx, wanted: CredentialFor): Promise<C
 }
 
 /** From when on the device should renew, UTC ms. */
-export const renewAfter = (row: Pick<CredentialRow, 'expiresAt' | 'boundThumbprint'>): number =>
-  row.expiresAt - (row.boundThumbprint ? RENEW_BEFORE_END_MS : BEARER_RENEW_BEFORE_END_MS);
+export const renewAfter = (
+  row: Pick<CredentialRow, 'expiresAt' | 'boundThumbprint' | 'renewAfter'>,
+): number =>
+  row.renewAfter ?? row.expiresAt - (row.boundThumbprint ? RENEW_BEFORE_END_MS : BEARER_RENEW_BEFORE_END_MS);
 
 export const shouldRenew = (row: CredentialRow, nowMs: number): boolean =>
   row.renewalAskedAt !== null || nowMs >= renewAfter(row);
