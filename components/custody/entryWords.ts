@@ -76,6 +76,18 @@ const TITLES: Record<string, string> = {
   'second-factor-removed': 'Second factor removed',
   'password-reset': 'Password reset',
   'policy-changed': 'Policy changed',
+  'connection-changed': 'Connection changed',
+  'connection-tested': 'Connection tested',
+  'passkey-added': 'Passkey added',
+  'passkey-removed': 'Passkey removed',
+  'sign-on-linked': 'Single sign-on linked',
+  'client-created': 'API client made',
+  'client-rotated': 'API client’s secret rotated',
+  'client-revoked': 'API client revoked',
+  'webhook-added': 'Webhook added',
+  'webhook-changed': 'Webhook changed',
+  'webhook-removed': 'Webhook removed',
+  'delivery-repeated': 'Delivery repeated',
 };
 
 /** Why a clip went to the tray, in words. */
@@ -233,6 +245,24 @@ const SENTENCES: Record<string, Sentence> = {
       `${text(d.policy)}, version ${text(d.version)}, by ${actorWords(e.actor)}: ${changeWords(e)}`,
       d.reason ? `reason: “${text(d.reason)}”` : false,
     ),
+  'connection-changed': (d, e) =>
+    join(`${text(d.connection)} by ${actorWords(e.actor)}`, d.reason ? `reason: “${text(d.reason)}”` : false),
+  'connection-tested': (d, e) =>
+    join(
+      `${text(d.connection)} by ${actorWords(e.actor)}`,
+      d.ok === true ? 'it works' : `failed at ${text(d.failed)}: ${text(d.why)}`,
+    ),
+  'passkey-added': (d, e) => join(text(d.name), `by ${actorWords(e.actor)}`),
+  'passkey-removed': (d, e) => join(text(d.name), `by ${actorWords(e.actor)}`),
+  'sign-on-linked': (d, e) => `${e.actor.label} at ${text(d.issuer)}`,
+  'client-created': (d, e) => join(text(d.name), plainList(d.scopes), `by ${actorWords(e.actor)}`),
+  'client-rotated': (d, e) => join(text(d.name), `by ${actorWords(e.actor)}`),
+  'client-revoked': (d, e) =>
+    join(text(d.name), `by ${actorWords(e.actor)}`, d.reason ? `reason: “${text(d.reason)}”` : false),
+  'webhook-added': (d, e) => join(text(d.name), plainList(d.events), `by ${actorWords(e.actor)}`),
+  'webhook-changed': (d, e) => join(text(d.name), text(d.change), `by ${actorWords(e.actor)}`),
+  'webhook-removed': (d, e) => join(text(d.name), `by ${actorWords(e.actor)}`),
+  'delivery-repeated': (d, e) => join(text(d.type), `by ${actorWords(e.actor)}`),
   'credential-misused': (d, e) => `By ${e.actor.label} or whoever holds its key: ${text(d.why)}`,
 };
 

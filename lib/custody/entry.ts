@@ -53,6 +53,18 @@ export const ENTRY_KINDS = [
   'second-factor-removed',
   'password-reset',
   'policy-changed',
+  'connection-changed',
+  'connection-tested',
+  'passkey-added',
+  'passkey-removed',
+  'sign-on-linked',
+  'client-created',
+  'client-rotated',
+  'client-revoked',
+  'webhook-added',
+  'webhook-changed',
+  'webhook-removed',
+  'delivery-repeated',
 ] as const;
 export type EntryKind = (typeof ENTRY_KINDS)[number];
 
@@ -76,7 +88,10 @@ export interface Subject {
     | 'session'
     | 'signing-key'
     | 'policy'
-    | 'invitation';
+    | 'invitation'
+    | 'connection'
+    | 'client'
+    | 'webhook';
   id: string;
 }
 

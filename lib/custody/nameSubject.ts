@@ -47,6 +47,8 @@ export async function nameSubject(
       return await first(read.select({ label: user.name }).from(user).where(eq(user.id, id)).limit(1));
     case 'policy':
       return { kind, id, label: `Policy: ${id}` };
+    case 'connection':
+      return { kind, id, label: `Connection: ${id}` };
     default:
       return null;
   }

@@ -48,6 +48,10 @@ export function audibleTo(services: Pick<Services, 'read' | 'clock'>, person: Pe
       case 'person':
       case 'invitation':
         return has.people || has.ledger;
+      case 'connection':
+      case 'client':
+      case 'webhook':
+        return has.credentials;
       case 'policy':
         return true;
     }

@@ -33,6 +33,7 @@ export const PERMISSIONS = {
   'people.read': ['itadmin'],
   'people.write': ['itadmin'],
   'connections.read': ['itadmin'],
+  'connections.write': ['itadmin'],
   'policy.read': ['itadmin', 'auditor', 'biomed'],
   'policy.write': ['itadmin'],
   'health.read': ['itadmin'],

@@ -40,6 +40,7 @@ export const ROUTES = {
   'PAGE /keyroom/people/invitations': { permission: 'people.read' },
   'PAGE /keyroom/policies': { permission: 'policy.read' },
   'PAGE /keyroom/policies/[kind]': { permission: 'policy.read' },
+  'PAGE /keyroom/connections': { permission: 'connections.read' },
   'PAGE /ledger': { permission: 'thread.read' },
   'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
   'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },
@@ -103,6 +104,9 @@ export const ROUTES = {
 
   'POST /api/policies/[kind]': { permission: 'policy.write' },
   'POST /api/policies/[kind]/preview': { permission: 'policy.write' },
+
+  'POST /api/connections/[kind]': { permission: 'connections.write' },
+  'POST /api/connections/[kind]/test': { permission: 'connections.write' },
 
   'GET /api/me': { permission: 'self', beforeSecondFactor: true },
   'POST /api/account/sign-out': { permission: 'self', beforeSecondFactor: true },

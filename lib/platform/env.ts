@@ -1,3 +1,4 @@
+import ipaddr from 'ipaddr.js';
 import { z } from 'zod';
 
 const bytes32 = (name: string) =>
@@ -57,6 +58,22 @@ export const EnvSchema = z.object({
   DEVICE_REQUESTS_PER_MINUTE: z.coerce.number().int().min(1).default(600),
   /** Proxies between people and Bellkeep whose X-Forwarded-For is believed. 0: none. */
   TRUSTED_PROXIES: z.coerce.number().int().min(0).max(5).default(0),
+  /** Ranges inside that connections and webhooks may lead to all the same, such as 10.20.0.0/16. */
+  PRIVATE_ADDRESSES_ALLOWED: z
+    .string()
+    .default('')
+    .transform((text) => text.split(/[\s,]+/).filter(Boolean))
+    .refine((ranges) => ranges.every((range) => ipaddr.isValidCIDR(range)), 'ranges such as 10.20.0.0/16'),
+  /** FHIR R4 base address, unless one is set in the Key room. */
+  RECORD_SYSTEM_URL: httpUrl.optional(),
+  RECORD_SYSTEM_TOKEN: z.string().optional(),
+  /** OpenID Connect, unless it is set in the Key room. */
+  SIGN_ON_ISSUER: httpUrl.optional(),
+  SIGN_ON_CLIENT_ID: z.string().optional(),
+  SIGN_ON_CLIENT_SECRET: z.string().optional(),
+  SIGN_ON_NAME: z.string().min(1).max(60).default('the hospital’s account'),
+  /** `provider`: its second factor is believed. `own`: ours is asked for too. */
+  SIGN_ON_SECOND_FACTOR: z.enum(['own', 'provider']).default('own'),
   LOG_LEVEL: z.enum(['trace', 'debug', 'info', 'warn', 'error', 'fatal', 'silent']).default('info'),
 });
 

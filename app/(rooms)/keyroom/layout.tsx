@@ -8,6 +8,7 @@ const PAGES = [
   { href: '/keyroom', label: 'Credentials', permission: 'credential.read' },
   { href: '/keyroom/people', label: 'People', permission: 'people.read' },
   { href: '/keyroom/policies', label: 'Policies', permission: 'policy.read' },
+  { href: '/keyroom/connections', label: 'Connections', permission: 'connections.read' },
 ] as const satisfies { href: string; label: string; permission: Permission }[];
 
 /** Above every page of the Key room: the way to the others. */

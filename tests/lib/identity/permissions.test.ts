@@ -29,6 +29,7 @@ const MAY: Record<Role, Permission[]> = {
   ],
   itadmin: [
     'connections.read',
+    'connections.write',
     'credential.read',
     'credential.write',
     'device.read',
