@@ -137,6 +137,7 @@ const measuredEntry = (
       severity,
       ...(value === undefined ? {} : { value }),
     })),
+    input: row.declaredSha256,
     derived: Object.fromEntries(pictures.map((picture) => [picture.kind, picture.sha256])),
   },
 });
