@@ -1,7 +1,8 @@
 import type { Figure } from './figure';
 import { ingest } from './ingest';
+import { log } from './log';
 
-const BENCHES: Record<string, () => Promise<Figure[]>> = { ingest };
+const BENCHES: Record<string, () => Promise<Figure[]>> = { ingest, log };
 
 const [name, ...rest] = process.argv.slice(2);
 const bench = BENCHES[name ?? ''];
