@@ -1,8 +1,11 @@
 import { ChannelAnalysis } from './channel';
 import { cleanStretch } from './cleanStretch';
+import { BLOCK_FRAMES } from './decode/blocks';
 import { createDecoder } from './decode/decode';
 import type { DecodeResult } from './decode/types';
 import { type JudgingFacts, judge, verdictOf } from './judge';
+import { giveKernels, takeKernels } from './kernels/kernels';
+import type { Kernels } from './kernels/types';
 import { PeaksProbe } from './pictures/peaks';
 import type {
   AudioBlock,
@@ -29,6 +32,8 @@ export interface AnalysisOptions {
   declaredMediaType?: string;
   limits: JudgingLimits;
   totalBytes?: number;
+  /** Which implementation of the inner loops; WebAssembly where there is any, unless said otherwise. */
+  kernels?: Kernels['kind'];
 }
 
 /**
@@ -41,15 +46,24 @@ export async function analyseRecording(
   bytes: AsyncIterable<Uint8Array> | Iterable<Uint8Array>,
   options: AnalysisOptions,
 ): Promise<RecordingAnalysis> {
-  const clip = new ClipAnalysis();
-  const decoder = createDecoder({
-    onFormat: (format) => clip.begin(format),
-    onBlock: (block) => clip.push(block),
-    ...(options.declaredMediaType === undefined ? {} : { declaredMediaType: options.declaredMediaType }),
-  });
-  for await (const piece of bytes) await decoder.push(piece);
-  const decode = await decoder.end();
-  return clip.finish(decode, options.limits);
+  const clip = new ClipAnalysis(options.kernels);
+  try {
+    const decoder = createDecoder({
+      onFormat: (format) => clip.begin(format),
+      onBlock: (block) => clip.push(block),
+      roomFor: (channel, frames) => clip.kernelsOf(channel).arena.floats(frames),
+      ...(options.declaredMediaType === undefined ? {} : { declaredMediaType: options.declaredMediaType }),
+      ...(options.totalBytes === undefined ? {} : { totalBytes: options.totalBytes }),
+    });
+    for await (const piece of bytes) {
+      // Most pushes are done when they return: only those that are not are waited for.
+      const done = decoder.push(piece);
+      if (done) await done;
+    }
+    return clip.finish(await decoder.end(), options.limits);
+  } finally {
+    clip.release();
+  }
 }
 
 /** The measuring of one clip: one analysis a channel, one waveform for all. */
@@ -58,11 +72,27 @@ class ClipAnalysis {
   #channels: ChannelAnalysis[] = [];
   #peaks: PeaksProbe | null = null;
   #identical = true;
+  readonly #kernels: Kernels[] = [];
+
+  constructor(private readonly kind: Kernels['kind'] | undefined) {}
+
+  kernelsOf(channel: number): Kernels {
+    const kernels = this.#kernels[channel] ?? takeKernels(this.kind);
+    this.#kernels[channel] = kernels;
+    return kernels;
+  }
+
+  /** Nothing of the clip is used any more but what `finish` gave. */
+  release(): void {
+    for (const kernels of this.#kernels) giveKernels(kernels);
+    this.#kernels.length = 0;
+  }
 
   begin(format: AudioFormat): void {
     this.#format = format;
-    this.#channels = Array.from({ length: format.channels }, () => new ChannelAnalysis(format));
-    this.#peaks = new PeaksProbe(format.sampleRateHz);
+    const kernels = Array.from({ length: format.channels }, (_, c) => this.kernelsOf(c));
+    this.#channels = kernels.map((own) => new ChannelAnalysis(format, own));
+    this.#peaks = new PeaksProbe(kernels, format.sampleRateHz, BLOCK_FRAMES);
   }
 
   push(block: AudioBlock): void {

@@ -1,75 +1,100 @@
-import { Decimator, decimationFor } from './dsp/decimate';
-import { SpectrogramProbe } from './pictures/spectrogram';
+import { BLOCK_FRAMES } from './decode/blocks';
+import { Decimator } from './dsp/decimate';
+import { Lookaround } from './dsp/lookaround';
+import { ratesOf } from './dsp/rates';
+import type { Kernels } from './kernels/types';
+import { SpectrogramPicture } from './pictures/spectrogram';
 import { BandProbe } from './spectral/bands';
 import { BandwidthProbe } from './spectral/bandwidth';
+import { SpectrumColumns } from './spectral/columns';
 import { ExplosiveProbe } from './spectral/explosive';
 import { TonalProbe } from './spectral/tonal';
-import { ActivityProbe } from './time/activity';
 import { DropoutProbe } from './time/dropouts';
 import { HandlingProbe } from './time/handling';
 import { dbfsSineToRms, LevelProbe, stepOf } from './time/levels';
 import { RailProbe } from './time/rails';
-import { SpikeProbe } from './time/spikes';
+import { REACH, SpikeProbe } from './time/spikes';
+import { TruePeakProbe } from './time/truePeak';
 import type { AudioFormat, Span } from './types';
 
-/** All probes of one channel. What lives below 2 kHz listens to the stream divided to about 5 kHz. */
+/** All probes of one channel, each on the stream of the lowest rate that holds what it listens for. */
 export class ChannelAnalysis {
   readonly #rateHz: number;
   readonly #levels: LevelProbe;
   readonly #rails: RailProbe;
   readonly #dropouts: DropoutProbe;
+  readonly #around: Lookaround;
   readonly #spikes: SpikeProbe;
-  readonly #decimator: Decimator;
-  readonly #activity: ActivityProbe;
-  readonly #handling: HandlingProbe;
-  readonly #spectrogram: SpectrogramProbe;
-  readonly #tonal: TonalProbe;
-  readonly #bands: BandProbe;
+  readonly #truePeak: TruePeakProbe;
   readonly #bandwidth: BandwidthProbe;
+  readonly #toEvents: Decimator;
   readonly #explosive: ExplosiveProbe;
+  readonly #toLow: Decimator;
+  readonly #handling: HandlingProbe;
+  readonly #columns: SpectrumColumns;
+  readonly #picture: SpectrogramPicture;
+  readonly #tonal: TonalProbe;
+  readonly #toDeep: Decimator;
+  readonly #bands: BandProbe;
 
-  constructor(format: AudioFormat) {
+  /** @param kernels whose arena this channel has to itself; its blocks of at most BLOCK_FRAMES lie there too */
+  constructor(format: AudioFormat, kernels: Kernels) {
     const rate = format.sampleRateHz;
     this.#rateHz = rate;
     const step = stepOf(format.encoding, format.bitDepth);
     const coarse = (format.bitDepth ?? 16) <= 8;
     const rails = new RailProbe(format.encoding, format.bitDepth, rate);
     this.#rails = rails;
-    this.#levels = new LevelProbe(rate, (samples, from, to, min, max) =>
+    this.#levels = new LevelProbe(kernels, rate, BLOCK_FRAMES, (samples, from, to, min, max) =>
       rails.look(samples, from, to, min, max),
     );
     this.#dropouts = new DropoutProbe(rate, step, coarse);
-    this.#spikes = new SpikeProbe(rate, step);
-    this.#decimator = new Decimator(decimationFor(rate));
-    const lowRate = rate / this.#decimator.factor;
-    this.#activity = new ActivityProbe(lowRate);
-    this.#handling = new HandlingProbe(lowRate);
-    this.#spectrogram = new SpectrogramProbe(lowRate, (power, scale) => this.#tonal.push(power, scale));
-    const { binHz, bins, columnSeconds, windowSeconds } = this.#spectrogram.layout;
-    this.#tonal = new TonalProbe(binHz, bins, columnSeconds, windowSeconds);
-    this.#bands = new BandProbe(lowRate);
-    this.#bandwidth = new BandwidthProbe(rate, format.bitDepth);
-    // Widths of a millisecond want the file's own rate, up to where it no longer matters.
-    this.#explosive = new ExplosiveProbe(rate);
+    this.#around = new Lookaround(kernels, REACH, BLOCK_FRAMES);
+    this.#spikes = new SpikeProbe(kernels, this.#around, rate, step);
+    this.#truePeak = new TruePeakProbe(kernels, this.#around);
+    this.#bandwidth = new BandwidthProbe(kernels, rate, format.bitDepth);
+
+    const rates = ratesOf(rate);
+    const mostEvents = Math.ceil(BLOCK_FRAMES / rates.eventsFactor) + 2;
+    const mostLow = Math.ceil(mostEvents / rates.lowFactor) + 2;
+    const mostDeep = Math.ceil(mostLow / rates.deepFactor) + 2;
+    this.#toEvents = new Decimator(kernels, rates.eventsFactor, BLOCK_FRAMES);
+    this.#explosive = new ExplosiveProbe(kernels, rates.eventsHz, mostEvents);
+    this.#toLow = new Decimator(kernels, rates.lowFactor, mostEvents);
+    this.#handling = new HandlingProbe(kernels, rates.lowHz, mostLow);
+    this.#columns = new SpectrumColumns(kernels, rates.lowHz, mostLow, (power, columns) => {
+      this.#picture.push(power, columns);
+      this.#tonal.push(power, columns);
+      this.#bands.pushColumns(power, columns);
+    });
+    const { layout } = this.#columns;
+    const mostColumns = Math.ceil(mostLow / layout.hop) + 4;
+    this.#picture = new SpectrogramPicture(kernels, layout);
+    this.#tonal = new TonalProbe(kernels, layout, mostColumns);
+    this.#toDeep = new Decimator(kernels, rates.deepFactor, mostLow);
+    this.#bands = new BandProbe(kernels, layout, rates.deepHz, { columns: mostColumns, deep: mostDeep });
   }
 
   push(samples: Float32Array): void {
     this.#levels.push(samples);
     this.#dropouts.push(samples);
-    this.#spikes.push(samples);
+    this.#around.push(samples);
+    this.#spikes.look();
+    this.#truePeak.look(Math.max(this.#levels.max, -this.#levels.min));
     this.#bandwidth.push(samples);
-    this.#explosive.push(samples);
-    const low = this.#decimator.push(samples);
-    this.#activity.push(low);
+    const events = this.#toEvents.push(samples);
+    this.#explosive.push(events);
+    const low = this.#toLow.push(events);
     this.#handling.push(low);
-    this.#spectrogram.push(low);
-    this.#bands.push(low);
+    this.#columns.push(low);
+    this.#bands.pushDeep(this.#toDeep.push(low));
   }
 
   finish(durationSeconds: number, minimumSecondsForRates: number) {
     const { min, max } = this.#levels;
-    const levels = this.#levels.finish();
-    const bands = this.#bands.finish(minimumSecondsForRates);
+    const levels = this.#levels.finish(this.#truePeak.finish({ min, max }));
+    this.#columns.finish();
+    const { activity, ...bands } = this.#bands.finish(durationSeconds, minimumSecondsForRates);
     // Harmonics that are too weak to be told of as hum still draw a line.
     const lines = bands.hum ? [1, 2, 3, 4, 5, 6].map((n) => n * (bands.hum?.frequencyHz ?? 0)) : [];
     const dropouts = this.#dropouts.finish(this.#levels.shortVariance.view(), { min, max });
@@ -88,8 +113,8 @@ export class ChannelAnalysis {
       spikes: clicks
         .filter((click) => !isNear(click, handling.handling))
         .map(({ startSeconds }) => ({ startSeconds })),
-      activity: { ...this.#activity.finish(), ...handling },
-      spectrogram: this.#spectrogram.finish(),
+      activity: { ...activity, ...handling },
+      spectrogram: this.#picture.finish(),
       spectral: {
         ...bands,
         ...this.#bandwidth.finish(),

@@ -125,6 +125,8 @@ export interface Explosive {
 /** Levels, clipping, DC and dropouts of one channel. dBFS values are null for digital silence. */
 export interface ChannelMeasures {
   peakDbfs: number | null;
+  /** Of the sound between the samples too, at four times the rate (ITU-R BS.1770-4, Annex 2). */
+  truePeakDbfs: number | null;
   rmsDbfsSine: number | null;
   activeLevelDbfsSine: number | null;
   crestDb: number | null;
@@ -164,13 +166,6 @@ export interface Measures extends ChannelMeasures {
   cleanStretch: { from: number; to: number } | null;
   /** Present for more than one channel. */
   perChannel?: ChannelMeasures[];
-}
-
-/** A measurement that listens to one channel, block by block, in bounded memory. */
-export interface Probe<Result> {
-  /** @param samples full-scale units, DC not removed; the array is reused by the caller. */
-  push(samples: Float32Array): void;
-  finish(): Result;
 }
 
 /** Multi-resolution waveform peaks of one clip (all channels folded to min/max over channels). */

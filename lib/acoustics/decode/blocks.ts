@@ -26,7 +26,8 @@ export class BlockSink {
   ) {
     this.#limits = { ...DEFAULT_LIMITS, ...options.limits };
     this.#mostFrames = this.#limits.longestSeconds * format.sampleRateHz;
-    this.channels = Array.from({ length: format.channels }, () => new Float32Array(BLOCK_FRAMES));
+    const { roomFor = (_: number, frames: number) => new Float32Array(frames) } = options;
+    this.channels = Array.from({ length: format.channels }, (_, c) => roomFor(c, BLOCK_FRAMES));
   }
 
   get room(): number {

@@ -69,6 +69,8 @@ export interface DecoderOptions {
   /** Length of the file where it is known: tells a size that was left open from a real one near the same number. */
   totalBytes?: number;
   limits?: Partial<DecodeLimits>;
+  /** Where a channel's blocks are to be written: an array of the length asked for. Asked for once a channel. */
+  roomFor?: (channel: number, frames: number) => Float32Array;
 }
 
 /**

@@ -1,85 +1,77 @@
+import type { Kernels } from '../kernels/types';
+
 /** Taps for each input sample skipped: sets the width of the transition. */
 const TAPS_PER_PHASE = 16;
 
-/**
- * How far a rate may be divided for the measures that live below 2 kHz: the result stays at 4.4 kHz or above.
- *
- * @returns 1: not at all
- */
-export const decimationFor = (sampleRateHz: number): number => Math.max(1, Math.floor(sampleRateHz / 4400));
+/** Taps of a low-pass for division by `factor`: windowed sinc (Blackman), pass band to 0.42 of the new rate, gain 1. */
+function lowPassTaps(factor: number): Float32Array {
+  const length = factor * TAPS_PER_PHASE + 1;
+  const middle = (length - 1) / 2;
+  const cutoff = 0.46 / factor;
+  const taps = Float64Array.from({ length }, (_, i) => {
+    const t = i - middle;
+    const sinc = t === 0 ? 2 * cutoff : Math.sin(2 * Math.PI * cutoff * t) / (Math.PI * t);
+    const turn = (2 * Math.PI * i) / (length - 1);
+    return sinc * (0.42 - 0.5 * Math.cos(turn) + 0.08 * Math.cos(2 * turn));
+  });
+  const sum = taps.reduce((a, b) => a + b, 0);
+  return Float32Array.from(taps, (tap) => tap / sum);
+}
+
+const made = new Map<number, Float32Array>();
+function tapsOf(factor: number): Float32Array {
+  const taps = made.get(factor) ?? lowPassTaps(factor);
+  made.set(factor, taps);
+  return taps;
+}
 
 /**
- * Divide the sample rate by a whole factor behind a windowed-sinc low-pass (Blackman; pass band to 0.42 of the new
- * rate). Streaming: each push gives as many samples as are complete.
+ * Divide the sample rate by a whole factor behind a low-pass. Streaming: each push gives as many samples as are
+ * complete. Output sample k stands for input sample k * factor.
  */
 export class Decimator {
   readonly #taps: Float32Array;
-  #history: Float32Array;
-  #kept = 0;
+  readonly #length: number;
+  readonly #history: Float32Array;
+  readonly #out: Float32Array;
+  #kept: number;
   #skip = 0;
   #begun = false;
-  #out = new Float32Array(4096);
 
-  constructor(readonly factor: number) {
-    const length = factor === 1 ? 1 : factor * TAPS_PER_PHASE + 1;
-    this.#taps = new Float32Array(length);
-    const middle = (length - 1) / 2;
-    const cutoff = 0.46 / factor;
-    let sum = 0;
-    for (let i = 0; i < length; i++) {
-      const t = i - middle;
-      const sinc = t === 0 ? 2 * cutoff : Math.sin(2 * Math.PI * cutoff * t) / (Math.PI * t);
-      const window =
-        length === 1
-          ? 1
-          : 0.42 -
-            0.5 * Math.cos((2 * Math.PI * i) / (length - 1)) +
-            0.08 * Math.cos((4 * Math.PI * i) / (length - 1));
-      this.#taps[i] = sinc * window;
-      sum += this.#taps[i] as number;
-    }
-    for (let i = 0; i < length; i++) this.#taps[i] = (this.#taps[i] as number) / sum;
-    this.#history = new Float32Array(length);
-    // Half a filter of the first sample stands before it, so that an offset makes no step; output sample k stands for
-    // input sample k * factor.
-    this.#kept = Math.floor(middle);
+  /** @param mostSamples that a push will bring */
+  constructor(
+    private readonly kernels: Kernels,
+    readonly factor: number,
+    mostSamples: number,
+  ) {
+    const taps = factor === 1 ? new Float32Array(1) : tapsOf(factor);
+    this.#length = taps.length;
+    // A multiple of four, with zeros at the end.
+    this.#taps = kernels.arena.floats(Math.ceil(taps.length / 4) * 4);
+    this.#taps.set(taps);
+    this.#history = kernels.arena.floats(factor === 1 ? 4 : mostSamples + taps.length + factor + 4);
+    this.#out = kernels.arena.floats(factor === 1 ? 4 : Math.ceil(mostSamples / factor) + 2);
+    // Half a filter of the first sample stands before it, so that an offset makes no step.
+    this.#kept = Math.floor((taps.length - 1) / 2);
   }
 
-  /** @returns a view that the next push writes over */
+  /** @returns a view that the next push writes over; with a factor of 1 the samples themselves */
   push(samples: Float32Array): Float32Array {
     if (this.factor === 1) return samples;
-    const length = this.#taps.length;
-    const total = this.#kept + samples.length;
-    if (this.#history.length < total) {
-      const grown = new Float32Array(total + 4096);
-      grown.set(this.#history.subarray(0, this.#kept));
-      this.#history = grown;
-    }
     const x = this.#history;
+    const total = this.#kept + samples.length;
     if (!this.#begun && samples.length > 0) {
       x.fill(samples[0] as number, 0, this.#kept);
       this.#begun = true;
     }
     x.set(samples, this.#kept);
-    const outputs = Math.max(0, Math.floor((total - length - this.#skip) / this.factor) + 1);
-    if (this.#out.length < outputs) this.#out = new Float32Array(outputs + 1024);
-    let at = this.#skip;
-    for (let k = 0; k < outputs; k++, at += this.factor) this.#out[k] = this.#dot(x, at);
+    const outputs = Math.max(0, Math.floor((total - this.#length - this.#skip) / this.factor) + 1);
+    if (outputs > 0) this.kernels.dots(this.#taps, x, this.#skip, this.factor, outputs, this.#out);
+    const at = this.#skip + outputs * this.factor;
     const keepFrom = Math.min(total, at);
     this.#skip = at - keepFrom;
     x.copyWithin(0, keepFrom, total);
     this.#kept = total - keepFrom;
     return this.#out.subarray(0, outputs);
-  }
-
-  /** The taps are symmetric: each pair of samples is added before it is weighed. */
-  #dot(x: Float32Array, at: number): number {
-    const taps = this.#taps;
-    const last = taps.length - 1;
-    const middle = last >> 1;
-    let sum = (taps[middle] as number) * (x[at + middle] as number);
-    for (let i = 0; i < middle; i++)
-      sum += (taps[i] as number) * ((x[at + i] as number) + (x[at + last - i] as number));
-    return sum;
   }
 }

@@ -2,7 +2,7 @@
  * Power spectrum of real frames of one size, by a complex FFT of half the size (Cooley and Tukey 1965; the real-input
  * split as in Press et al., Numerical Recipes, 12.3; both from memory). Tables are made once; nothing is allocated a frame.
  */
-export class PowerSpectrum {
+class PowerSpectrum {
   readonly #half: number;
   readonly #cos: Float64Array;
   readonly #sin: Float64Array;
@@ -83,6 +83,13 @@ export class PowerSpectrum {
   }
 }
 
-/** Periodic Hann window (Harris 1978): coherent gain 0.5, ENBW 1.5 bins. */
-export const hann = (size: number): Float64Array =>
-  Float64Array.from({ length: size }, (_, i) => 0.5 - 0.5 * Math.cos((2 * Math.PI * i) / size));
+const made = new Map<number, PowerSpectrum>();
+
+/** |X|^2 of a frame whose length is a power of two, 8 or more; `length / 2 + 1` values. Tables are kept between calls. */
+export function powerSpectrumOf(frame: Float64Array): Float64Array {
+  const spectrum = made.get(frame.length) ?? new PowerSpectrum(frame.length);
+  made.set(frame.length, spectrum);
+  const power = new Float64Array(frame.length / 2 + 1);
+  spectrum.of(frame, power);
+  return power;
+}

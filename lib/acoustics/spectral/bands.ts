@@ -1,48 +1,30 @@
-import { type Biquad, passFilter } from '../dsp/biquad';
-import { Decimator } from '../dsp/decimate';
+import { FilterChain, highPass, lowPass } from '../dsp/biquad';
+import { Framer } from '../dsp/framer';
 import { FloatList } from '../dsp/percentile';
+import type { Kernels } from '../kernels/types';
+import { ACTIVITY_BAND_HZ, ACTIVITY_BLOCK_SECONDS, type ActivityMeasures, activityOf } from '../time/activity';
 import type { Hum, Rate } from '../types';
+import { BandLevels, Means } from './bandLevels';
+import type { ColumnLayout } from './columns';
 import { findHum } from './hum';
 import { rateOf } from './rates';
 
-/** Rate at which hum and heart are looked at. */
-const LOW_RATE_HZ = 640;
-/** Hum is steady by definition and a heart rate is of the moment: no more than this is kept of a long clip. */
+/** Hum is steady by definition and a rate is of the moment: no more than this is kept of a long clip. */
 const KEPT_SECONDS = 300;
-const BREATH_ENVELOPE_HZ = 50;
+const BREATH_BAND_HZ = { low: 150, high: 700 };
+const BREATH_ENVELOPE_HZ = 25;
+/** What hum is held against. */
+const NOTE_BAND_HZ = { low: 100, high: 600 };
+const HEART_BAND_HZ = { low: 25, high: 150 };
 const HEART_ENVELOPE_HZ = 100;
-/** Autocorrelation grows with the square of what it is given. */
-const LONGEST_ENVELOPE_SECONDS = 300;
 
 export interface BandMeasures {
+  activity: ActivityMeasures;
   hum: Hum | null;
   breathRate: Rate | null;
   /** Breaths that the clip holds, from the rate and its length. */
   breaths: number | null;
   heartRate: Rate | null;
-}
-
-/** Mean of the rectified signal a block: an envelope at a low rate. */
-class Rectifier {
-  readonly values = new FloatList();
-  #sum = 0;
-  #n = 0;
-  #due: number;
-  constructor(private readonly samplesPerValue: number) {
-    this.#due = samplesPerValue;
-  }
-
-  push(samples: Float32Array, length: number): void {
-    for (let i = 0; i < length; i++) {
-      this.#sum += Math.abs(samples[i] as number);
-      // A fractional block length keeps the envelope's rate exact.
-      if (++this.#n < this.#due) continue;
-      this.values.push(this.#sum / this.#n);
-      this.#due += this.samplesPerValue - this.#n;
-      this.#sum = 0;
-      this.#n = 0;
-    }
-  }
 }
 
 /** One-pole low-pass of an envelope, forwards and backwards so that nothing shifts in time. */
@@ -55,74 +37,121 @@ function smooth(values: Float32Array, cutoffHz: number, rateHz: number): Float32
   return out;
 }
 
+/** Mean of the rectified deep stream at the heart's envelope rate. */
+class HeartEnvelope {
+  readonly values = new FloatList();
+  readonly #filter: FilterChain;
+  readonly #filtered: Float32Array;
+  readonly #framer: Framer;
+  #sum = 0;
+  readonly rateHz: number;
+
+  constructor(kernels: Kernels, deepHz: number, mostSamples: number) {
+    const { low, high } = HEART_BAND_HZ;
+    this.#filter = new FilterChain(kernels, [
+      highPass(low, deepHz),
+      highPass(low, deepHz),
+      lowPass(high, deepHz),
+    ]);
+    this.#filtered = kernels.arena.floats(mostSamples);
+    const block = Math.max(1, Math.round(deepHz / HEART_ENVELOPE_HZ));
+    this.#framer = new Framer(block);
+    this.rateHz = deepHz / block;
+  }
+
+  push(deep: Float32Array): void {
+    const out = this.#filtered.subarray(0, deep.length);
+    this.#filter.run(deep, out);
+    const { length } = this.#framer;
+    const add = (x: Float32Array, from: number, to: number) => {
+      for (let i = from; i < to; i++) this.#sum += Math.abs(x[i] as number);
+    };
+    const close = () => {
+      this.values.push(this.#sum / length);
+      this.#sum = 0;
+    };
+    this.#framer.push(
+      out,
+      (part, ends) => {
+        add(part, 0, part.length);
+        if (ends) close();
+      },
+      (frames, count) => {
+        for (let k = 0; k < count; k++) {
+          add(frames, k * length, (k + 1) * length);
+          close();
+        }
+      },
+    );
+  }
+}
+
 /**
- * Hum, breath rate and heart rate of one channel, on the stream divided to about 5 kHz. Breath: 150-700 Hz, above most
- * of the heart; heart: 25-150 Hz. Only envelopes and five minutes of the low band are kept.
+ * What the levels of bands tell: activity, hum, breath rate (150-700 Hz, above most of the heart) and heart rate (25-150
+ * Hz). Bands above 100 Hz come from the columns of the spectrum; hum and heart from the stream divided to about 640 Hz.
  */
 export class BandProbe {
-  readonly #low: Decimator;
-  readonly #lowRateHz: number;
-  readonly #kept = new FloatList();
-  readonly #breathBand: Biquad[];
-  readonly #heartBand: Biquad[];
-  readonly #wideBand: Biquad[];
-  readonly #breath: Rectifier;
-  readonly #heart: Rectifier;
-  #squares = 0;
-  #frames = 0;
-  #buffer = new Float32Array(0);
+  readonly #levels: BandLevels;
+  readonly #bands: Record<'activity' | 'breath' | 'note', ReturnType<BandLevels['band']>>;
+  readonly #activity: Means;
+  readonly #breath: Means;
+  readonly #heart: HeartEnvelope;
+  readonly #deep = new FloatList();
+  #noteSum = 0;
+  #columns = 0;
 
-  constructor(private readonly rateHz: number) {
-    this.#low = new Decimator(Math.max(1, Math.floor(rateHz / LOW_RATE_HZ)));
-    this.#lowRateHz = rateHz / this.#low.factor;
-    const band = (from: number, to: number, rate: number): Biquad[] => [
-      passFilter('high', from, rate),
-      passFilter('high', from, rate),
-      passFilter('low', to, rate),
-    ];
-    this.#breathBand = band(150, 700, rateHz);
-    this.#wideBand = band(100, 600, rateHz);
-    this.#heartBand = band(25, 150, this.#lowRateHz);
-    this.#breath = new Rectifier(rateHz / BREATH_ENVELOPE_HZ);
-    this.#heart = new Rectifier(this.#lowRateHz / HEART_ENVELOPE_HZ);
+  /** @param most columns, and deep samples, that a push will bring */
+  constructor(
+    private readonly kernels: Kernels,
+    private readonly layout: ColumnLayout,
+    private readonly deepHz: number,
+    most: { columns: number; deep: number },
+  ) {
+    this.#levels = new BandLevels(kernels, layout);
+    const band = ({ low, high }: { low: number; high: number }) =>
+      this.#levels.band(low, high, most.columns);
+    this.#bands = {
+      activity: band(ACTIVITY_BAND_HZ),
+      breath: band(BREATH_BAND_HZ),
+      note: band(NOTE_BAND_HZ),
+    };
+    this.#activity = new Means(layout, ACTIVITY_BLOCK_SECONDS);
+    this.#breath = new Means(layout, 1 / BREATH_ENVELOPE_HZ);
+    this.#heart = new HeartEnvelope(kernels, deepHz, most.deep);
   }
 
-  push(samples: Float32Array): void {
-    if (this.#buffer.length < samples.length) this.#buffer = new Float32Array(samples.length);
-    this.#run(this.#breathBand, samples);
-    this.#breath.push(this.#buffer, samples.length);
-    this.#run(this.#wideBand, samples);
-    for (let i = 0; i < samples.length; i++) this.#squares += (this.#buffer[i] as number) ** 2;
-    this.#frames += samples.length;
-    const low = this.#low.push(samples);
-    if (this.#kept.length < KEPT_SECONDS * this.#lowRateHz) for (const x of low) this.#kept.push(x);
-    this.#run(this.#heartBand, low);
-    this.#heart.push(this.#buffer, low.length);
+  pushColumns(power: Float32Array, columns: number): void {
+    this.#activity.push(this.#levels.of(this.#bands.activity, power, columns));
+    const note = this.#levels.of(this.#bands.note, power, columns);
+    for (let i = 0; i < columns; i++) this.#noteSum += note[i] as number;
+    if (this.#columns * this.layout.columnSeconds < KEPT_SECONDS)
+      this.#breath.push(this.#levels.of(this.#bands.breath, power, columns));
+    this.#columns += columns;
   }
 
-  #run(filters: Biquad[], samples: Float32Array): void {
-    let input = samples;
-    for (const filter of filters) {
-      filter.run(input, this.#buffer, samples.length);
-      input = this.#buffer;
-    }
+  /** @param deep the stream at `deepHz`, in the kernels' arena */
+  pushDeep(deep: Float32Array): void {
+    if (this.#deep.length >= KEPT_SECONDS * this.deepHz) return;
+    this.#deep.append(deep);
+    this.#heart.push(deep);
   }
 
-  finish(minimumSecondsForRates: number): BandMeasures {
-    const seconds = this.#frames / this.rateHz;
-    const bandRms = this.#frames > 0 ? Math.sqrt(this.#squares / this.#frames) : 0;
-    const hum = findHum(this.#kept.view(), this.#lowRateHz, bandRms);
-    if (seconds < minimumSecondsForRates) return { hum, breathRate: null, breaths: null, heartRate: null };
-    const longest = (rate: number, values: Float32Array) =>
-      values.subarray(0, LONGEST_ENVELOPE_SECONDS * rate);
-    const breath = smooth(longest(BREATH_ENVELOPE_HZ, this.#breath.values.view()), 1, BREATH_ENVELOPE_HZ);
-    const heart = smooth(longest(HEART_ENVELOPE_HZ, this.#heart.values.view()), 8, HEART_ENVELOPE_HZ);
-    const breathRate = rateOf(breath, BREATH_ENVELOPE_HZ, { slowest: 5, fastest: 60 });
+  finish(seconds: number, minimumSecondsForRates: number): BandMeasures {
+    const noteRms = this.#columns > 0 ? Math.sqrt(this.#noteSum / this.#columns) : 0;
+    const still = {
+      activity: activityOf(this.#activity.values.view()),
+      hum: findHum(this.#deep.view(), this.deepHz, noteRms),
+    };
+    if (seconds < minimumSecondsForRates)
+      return { ...still, breathRate: null, breaths: null, heartRate: null };
+    const breath = smooth(this.#breath.values.view().map(Math.sqrt), 1, BREATH_ENVELOPE_HZ);
+    const heart = smooth(this.#heart.values.view(), 8, this.#heart.rateHz);
+    const breathRate = rateOf(this.kernels, breath, BREATH_ENVELOPE_HZ, { slowest: 5, fastest: 60 });
     return {
-      hum,
+      ...still,
       breathRate,
       breaths: breathRate ? Math.round((breathRate.perMinute * seconds) / 60) : null,
-      heartRate: rateOf(heart, HEART_ENVELOPE_HZ, { slowest: 40, fastest: 200 }),
+      heartRate: rateOf(this.kernels, heart, this.#heart.rateHz, { slowest: 40, fastest: 200 }),
     };
   }
 }

@@ -1,6 +1,10 @@
-import { hann, PowerSpectrum } from '../dsp/fft';
+import { planSpectrum, type SpectrumPlan } from '../kernels/plan';
+import type { Kernels } from '../kernels/types';
 
 const SIZE = 2048;
+const BINS = SIZE / 2 + 1;
+/** Spectra are made four at a time. */
+const TOGETHER = 4;
 /** Segments looked at in a long clip: enough for a steady estimate, few enough to cost little. */
 const EVERY_SECONDS = 0.25;
 const LEAST_FALL_DB = 30;
@@ -23,21 +27,25 @@ export interface Bandwidth {
  * 10 lg(fs/2). Heart-only clips fall 55 dB at 113 Hz, hence the 300 Hz. Not seen: MP3 in disguise.
  */
 export class BandwidthProbe {
-  readonly #spectrum = new PowerSpectrum(SIZE);
-  readonly #window = hann(SIZE);
-  readonly #sum = new Float64Array(SIZE / 2 + 1);
-  readonly #power = new Float64Array(SIZE / 2 + 1);
-  readonly #frame = new Float64Array(SIZE);
+  readonly #plan: SpectrumPlan;
+  readonly #sum = new Float64Array(BINS);
+  readonly #frames: Float32Array;
+  readonly #power: Float32Array;
   readonly #every: number;
+  /** Samples gathered of the next four segments. */
   #filled = 0;
   #skip = 0;
   #segments = 0;
 
   constructor(
+    private readonly kernels: Kernels,
     private readonly rateHz: number,
     private readonly bitDepth: number | null,
   ) {
     this.#every = Math.max(0, Math.round(EVERY_SECONDS * rateHz) - SIZE);
+    this.#plan = planSpectrum(kernels.arena, SIZE, BINS);
+    this.#frames = kernels.arena.floats(TOGETHER * SIZE);
+    this.#power = kernels.arena.floats(TOGETHER * BINS);
   }
 
   push(samples: Float32Array): void {
@@ -48,26 +56,27 @@ export class BandwidthProbe {
         at += skipped;
         continue;
       }
-      const taken = Math.min(SIZE - this.#filled, samples.length - at);
-      for (let i = 0; i < taken; i++)
-        this.#frame[this.#filled + i] =
-          (samples[at + i] as number) * (this.#window[this.#filled + i] as number);
+      const taken = Math.min(SIZE - (this.#filled % SIZE), samples.length - at);
+      this.#frames.set(samples.subarray(at, at + taken), this.#filled);
       this.#filled += taken;
       at += taken;
-      if (this.#filled === SIZE) this.#close();
+      if (this.#filled % SIZE === 0) this.#skip = this.#every;
+      if (this.#filled === TOGETHER * SIZE) this.#transform(TOGETHER);
     }
   }
 
-  #close(): void {
-    this.#spectrum.of(this.#frame, this.#power);
-    for (let k = 0; k < this.#sum.length; k++)
-      this.#sum[k] = (this.#sum[k] as number) + (this.#power[k] as number);
-    this.#segments++;
+  #transform(count: number): void {
+    this.kernels.spectra(this.#plan, this.#frames, SIZE, count, this.#power);
+    for (let s = 0; s < count; s++)
+      for (let k = 0; k < BINS; k++)
+        this.#sum[k] = (this.#sum[k] as number) + (this.#power[s * BINS + k] as number);
+    this.#segments += count;
     this.#filled = 0;
-    this.#skip = this.#every;
   }
 
   finish(): Bandwidth {
+    const whole = Math.floor(this.#filled / SIZE);
+    if (whole > 0) this.#transform(whole);
     if (this.#segments === 0) return { bandwidthHz: null, brickWall: false, upsampled: false };
     // Periodogram density, doubled for the negative frequencies; sum of squared Hann is 3/8 of its length.
     const scale = 2 / (this.#segments * this.rateHz * SIZE * 0.375);
@@ -110,9 +119,21 @@ function contentEnd(db: Float64Array, binHz: number, quantisation: number): numb
   return last * binHz;
 }
 
+/** Median of each value and `half` neighbours on both sides, by a window that is kept sorted. */
 function medianFiltered(values: Float64Array, half: number): Float64Array {
-  return values.map((_, k) => {
-    const around = Array.from(values.subarray(Math.max(0, k - half), k + half + 1)).sort((a, b) => a - b);
-    return around[around.length >> 1] as number;
-  });
+  const window: number[] = [];
+  const place = (value: number): number => {
+    let at = 0;
+    while (at < window.length && (window[at] as number) < value) at++;
+    return at;
+  };
+  const out = new Float64Array(values.length);
+  for (let k = -half; k < values.length; k++) {
+    const enters = values[k + half];
+    if (enters !== undefined) window.splice(place(enters), 0, enters);
+    const leaves = values[k - half - 1];
+    if (leaves !== undefined) window.splice(place(leaves), 1);
+    if (k >= 0) out[k] = window[window.length >> 1] as number;
+  }
+  return out;
 }

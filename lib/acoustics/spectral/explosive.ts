@@ -1,8 +1,13 @@
-import { type Biquad, passFilter } from '../dsp/biquad';
+import { FilterChain, highPass } from '../dsp/biquad';
 import { percentile } from '../dsp/percentile';
+import type { Kernels } from '../kernels/types';
 import type { Explosive } from '../types';
 
 const THRESHOLD = 6;
+/** Of a normal distribution: its standard deviation over its median absolute deviation. */
+const MAD_TO_DEVIATION = 1.4826;
+/** Full scale: nothing below it is heard as a burst. */
+const LEAST_HEIGHT = 0.004;
 /** Above the heart: its first sound would pass for a burst at 100 Hz. */
 const HIGH_PASS_HZ = 150;
 /** Deviation is estimated from every so many samples: it is a median of hundreds either way. */
@@ -22,35 +27,46 @@ const MOST = 500;
  * friends: hair, gown, contact, dropouts; in a second with more than thirty it is not these, and nothing is told.
  */
 export class ExplosiveProbe {
-  readonly #filters: Biquad[];
+  readonly #filter: FilterChain;
   readonly #block: number;
   readonly #found: Explosive[] = [];
-  #work = new Float32Array(0);
+  readonly #work: Float32Array;
+  readonly #largest: Float32Array;
   #kept = 0;
   #frames = 0;
 
-  constructor(private readonly rateHz: number) {
-    this.#filters = [passFilter('high', HIGH_PASS_HZ, rateHz), passFilter('high', HIGH_PASS_HZ, rateHz)];
+  /** @param mostSamples that a push will bring */
+  constructor(
+    private readonly kernels: Kernels,
+    private readonly rateHz: number,
+    mostSamples: number,
+  ) {
+    this.#filter = new FilterChain(kernels, [highPass(HIGH_PASS_HZ, rateHz), highPass(HIGH_PASS_HZ, rateHz)]);
     this.#block = Math.round(CONTEXT_SECONDS * rateHz);
+    this.#work = kernels.arena.floats(mostSamples + 3 * this.#block);
+    this.#largest = kernels.arena.floats(Math.ceil(mostSamples / this.#block) + 4);
   }
 
+  /** @param samples in the kernels' arena */
   push(samples: Float32Array): void {
+    const block = this.#block;
     const total = this.#kept + samples.length;
-    if (this.#work.length < total) {
-      const grown = new Float32Array(total + 4096);
-      grown.set(this.#work.subarray(0, this.#kept));
-      this.#work = grown;
-    }
-    const fresh = this.#work.subarray(this.#kept, total);
-    this.#filters[0]?.run(samples, fresh, samples.length);
-    this.#filters[1]?.run(fresh, fresh, samples.length);
+    this.#filter.run(samples, this.#work.subarray(this.#kept, total));
     const offset = this.#frames - this.#kept;
-    let at = 0;
-    // Each block is looked at with the one after it, so that an event is whole.
-    for (; at + 3 * this.#block <= total; at += this.#block)
-      this.#look(this.#work.subarray(at, at + 3 * this.#block), offset + at);
-    this.#work.copyWithin(0, at, total);
-    this.#kept = total - at;
+    // Each block is looked at with the one before and the one after it, so that an event is whole.
+    const looks = Math.max(0, Math.floor(total / block) - 2);
+    if (looks > 0)
+      this.kernels.magnitudes(this.#work.subarray(block, (looks + 1) * block), looks, block, this.#largest);
+    for (let k = 0; k < looks; k++) {
+      const largest = this.#largest[k] as number;
+      if (largest < LEAST_HEIGHT) continue;
+      const x = this.#work.subarray(k * block, (k + 3) * block);
+      // The deviation cannot be so small that the largest stands out, unless half lies that far below it.
+      const half = this.kernels.countBelow(x, largest / (0.9 * THRESHOLD * MAD_TO_DEVIATION));
+      if (half > x.length / 2) this.#look(x, offset + k * block);
+    }
+    this.#work.copyWithin(0, looks * block, total);
+    this.#kept = total - looks * block;
     this.#frames += samples.length;
   }
 
@@ -58,8 +74,8 @@ export class ExplosiveProbe {
   #look(x: Float32Array, offset: number): void {
     const sampled: number[] = [];
     for (let i = 0; i < x.length; i += SAMPLED) sampled.push(Math.abs(x[i] as number));
-    const deviation = percentile(sampled, 0.5) * 1.4826;
-    const limit = Math.max(THRESHOLD * deviation, 0.004);
+    const deviation = percentile(sampled, 0.5) * MAD_TO_DEVIATION;
+    const limit = Math.max(THRESHOLD * deviation, LEAST_HEIGHT);
     const longest = Math.round(LONGEST_SECONDS * this.rateHz);
     for (let i = this.#block; i < 2 * this.#block; i++) {
       if (Math.abs(x[i] as number) < limit) continue;

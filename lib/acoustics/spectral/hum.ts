@@ -1,5 +1,6 @@
-import { hann, PowerSpectrum } from '../dsp/fft';
-import { percentile } from '../dsp/percentile';
+import { powerSpectrumOf } from '../dsp/fft';
+import { percentile, percentiles } from '../dsp/percentile';
+import { hann } from '../kernels/plan';
 import type { Hum } from '../types';
 
 const MAINS_HZ = [50, 60] as const;
@@ -13,7 +14,6 @@ const HARMONICS = [2, 3, 5] as const;
 
 interface Line {
   frequencyHz: number;
-  prominenceDb: number;
   steadiness: number;
   amplitude: number;
 }
@@ -53,8 +53,7 @@ export function findHum(samples: Float32Array, rateHz: number, bandRms: number):
   };
 }
 
-const isHum = (line: Line): boolean =>
-  line.prominenceDb >= LEAST_PROMINENCE_DB && line.steadiness >= LEAST_STEADINESS;
+const isHum = (line: Line): boolean => line.steadiness >= LEAST_STEADINESS;
 
 interface LongSpectrum {
   power: Float64Array;
@@ -63,15 +62,19 @@ interface LongSpectrum {
 
 function longSpectrum(samples: Float32Array): LongSpectrum {
   const size = 2 ** Math.ceil(Math.log2(samples.length));
-  const window = hann(samples.length);
   const frame = new Float64Array(size);
   let mean = 0;
-  for (const x of samples) mean += x;
+  for (let i = 0; i < samples.length; i++) mean += samples[i] as number;
   mean /= samples.length;
-  for (let i = 0; i < samples.length; i++) frame[i] = ((samples[i] as number) - mean) * (window[i] as number);
-  const power = new Float64Array(size / 2 + 1);
-  new PowerSpectrum(size).of(frame, power);
-  return { power, size };
+  // Hann over the length of the clip; its cosine by turning, which is as exact as it need be.
+  const turn = (2 * Math.PI) / samples.length;
+  const [c, s] = [Math.cos(turn), Math.sin(turn)];
+  let [cos, sin] = [1, 0];
+  for (let i = 0; i < samples.length; i++) {
+    frame[i] = ((samples[i] as number) - mean) * (0.5 - 0.5 * cos);
+    [cos, sin] = [c * cos - s * sin, s * cos + c * sin];
+  }
+  return { power: powerSpectrumOf(frame), size };
 }
 
 function lineNear(
@@ -87,15 +90,15 @@ function lineNear(
   if (high + 1 >= power.length) return null;
   let peak = low;
   for (let k = low; k <= high; k++) if ((power[k] as number) > (power[peak] as number)) peak = k;
-  const around: number[] = [];
-  for (const side of [-1, 1]) {
-    for (let hz = 2; hz <= 8; hz += binHz) {
-      const value = power[bin(nominalHz + side * hz)];
-      if (value !== undefined) around.push(value);
-    }
-  }
+  const below = power.subarray(bin(nominalHz - 8), bin(nominalHz - 2) + 1);
+  const above = power.subarray(bin(nominalHz + 2), bin(nominalHz + 8) + 1);
+  const around = new Float64Array(below.length + above.length);
+  around.set(below);
+  around.set(above, below.length);
   const median = percentile(around, 0.5);
   const prominenceDb = 10 * Math.log10((power[peak] as number) / Math.max(median, 1e-30));
+  // Most clips have no hum: what follows costs more than all before it.
+  if (prominenceDb < LEAST_PROMINENCE_DB) return null;
   // The true frequency between bins, by a parabola through the logarithms of three of them.
   const [a, b, c] = [-1, 0, 1].map((d) => Math.log(Math.max(power[peak + d] ?? 1e-30, 1e-30))) as [
     number,
@@ -105,28 +108,25 @@ function lineNear(
   const shift = a - 2 * b + c === 0 ? 0 : (0.5 * (a - c)) / (a - 2 * b + c);
   const frequencyHz = (peak + Math.max(-0.5, Math.min(0.5, shift))) * binHz;
   const amplitudes = demodulate(samples, rateHz, frequencyHz);
-  const middle = percentile(amplitudes, 0.5);
-  return {
-    frequencyHz,
-    prominenceDb,
-    steadiness: middle > 0 ? percentile(amplitudes, 0.1) / middle : 0,
-    amplitude: percentile(amplitudes, 0.25),
-  };
+  const [low10, low25, middle] = percentiles(amplitudes, [0.1, 0.25, 0.5]) as [number, number, number];
+  return { frequencyHz, steadiness: middle > 0 ? low10 / middle : 0, amplitude: low25 };
 }
 
 /** Amplitude of a line in successive 0.25 s Hann windows, half overlapping. */
 function demodulate(samples: Float32Array, rateHz: number, frequencyHz: number): number[] {
   const size = Math.round(WINDOW_SECONDS * rateHz);
-  const window = hann(size);
   const step = (2 * Math.PI * frequencyHz) / rateHz;
+  const window = hann(size);
+  const cos = window.map((w, i) => w * Math.cos(step * i));
+  const sin = window.map((w, i) => w * Math.sin(step * i));
   const amplitudes: number[] = [];
   for (let at = 0; at + size <= samples.length; at += size >> 1) {
     let re = 0;
     let im = 0;
     for (let i = 0; i < size; i++) {
-      const x = (samples[at + i] as number) * (window[i] as number);
-      re += x * Math.cos(step * (at + i));
-      im -= x * Math.sin(step * (at + i));
+      const x = samples[at + i] as number;
+      re += x * (cos[i] as number);
+      im += x * (sin[i] as number);
     }
     // Twice for the other half of the spectrum, and the Hann window passes one half (coherent gain 0.5).
     amplitudes.push((2 * Math.hypot(re, im)) / (0.5 * size));

@@ -1,4 +1,4 @@
-import { autocorrelation } from '../dsp/autocorrelation';
+import type { Kernels } from '../kernels/types';
 import type { Rate } from '../types';
 
 const LEAST_CONFIDENCE = 0.5;
@@ -13,13 +13,14 @@ const NEAR_BEST = 0.85;
  * @param envelope at `rateHz`; @param perMinute slowest and fastest rate looked for
  */
 export function rateOf(
+  kernels: Kernels,
   envelope: Float32Array,
   rateHz: number,
   perMinute: { slowest: number; fastest: number },
 ): Rate | null {
   const shortest = Math.max(2, Math.floor((60 / perMinute.fastest) * rateHz));
   const longest = Math.min(Math.ceil((60 / perMinute.slowest) * rateHz), Math.floor(envelope.length / 2));
-  const r = autocorrelation(envelope, shortest - 1, longest + 1 < envelope.length ? longest + 1 : longest);
+  const r = autocorrelation(kernels, envelope, shortest - 1, longest + 1 < envelope.length ? longest + 1 : longest);
   if (!r) return null;
   const peaks: number[] = [];
   for (let i = 1; i < r.length - 1; i++)
@@ -33,4 +34,35 @@ export function rateOf(
   if (lag > 0.97 * ((60 / perMinute.slowest) * rateHz)) return null;
   if (envelope.length < LEAST_PERIODS * lag || b < LEAST_CONFIDENCE) return null;
   return { perMinute: (60 * rateHz) / lag, confidence: Math.min(1, b) };
+}
+
+/**
+ * Unbiased autocorrelation, normalised to 1 at lag 0, of a series with its mean removed.
+ *
+ * @returns values for lags `from` to `to`, both included; null for a series without variance
+ */
+export function autocorrelation(
+  kernels: Kernels,
+  series: Float32Array,
+  from: number,
+  to: number,
+): Float32Array | null {
+  const n = series.length;
+  if (from > to || to >= n) return null;
+  let mean = 0;
+  for (let i = 0; i < n; i++) mean += series[i] as number;
+  mean /= n;
+  const centred = kernels.arena.room(n);
+  let power = 0;
+  for (let i = 0; i < n; i++) {
+    const d = (series[i] as number) - mean;
+    centred[i] = d;
+    power += d * d;
+  }
+  if (power === 0) return null;
+  const out = kernels.arena.room(to - from + 1);
+  kernels.lagged(centred, from, to, out);
+  for (let lag = from; lag <= to; lag++)
+    out[lag - from] = ((out[lag - from] as number) / (n - lag)) * (n / power);
+  return out;
 }

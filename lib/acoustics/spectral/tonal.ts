@@ -1,11 +1,24 @@
+import type { Kernels } from '../kernels/types';
 import type { Tonal } from '../types';
+import type { ColumnLayout } from './columns';
 
 const LEAST_PROMINENCE_DB = 10;
 const NEIGHBOURS_HZ = 150;
 const RANGE_HZ = { low: 80, high: 1600 };
+/** Nothing below this level is told. */
+const LOWEST_DBFS = -85;
+const LEAST_POWER = 1e-12;
+/** Maxima of one push; a sound with more is noise. */
+const MOST_STANDOUTS = 8192;
 /** Anything shorter is left to the ear. */
 const SHORTEST_SECONDS = 0.08;
 const MOST = 200;
+
+interface Peak {
+  bin: number;
+  hz: number;
+  prominence: number;
+}
 
 interface Track {
   first: number;
@@ -23,77 +36,59 @@ interface Track {
  * speech; lines of hum are taken out by the caller.
  */
 export class TonalProbe {
-  readonly #binHz: number;
-  readonly #low: number;
-  readonly #high: number;
-  readonly #reach: number;
-  readonly #db: Float64Array;
-  readonly #scratch: Float64Array;
+  readonly #search: { low: number; high: number; reach: number; least: number; over: number };
+  readonly #db: Float32Array;
+  readonly #found: Int32Array;
   #tracks: Track[] = [];
   readonly #done: Track[] = [];
   #column = 0;
 
+  /** @param mostColumns that a push will bring */
   constructor(
-    binHz: number,
-    bins: number,
-    private readonly columnSeconds: number,
-    private readonly windowSeconds: number,
+    private readonly kernels: Kernels,
+    private readonly layout: ColumnLayout,
+    mostColumns: number,
   ) {
-    this.#binHz = binHz;
-    this.#low = Math.max(2, Math.ceil(RANGE_HZ.low / binHz));
-    this.#high = Math.min(bins - 2, Math.floor(RANGE_HZ.high / binHz));
-    this.#reach = Math.max(3, Math.round(NEIGHBOURS_HZ / binHz));
-    this.#db = new Float64Array(bins);
-    this.#scratch = new Float64Array(2 * this.#reach + 1);
+    const { binHz, bins } = layout;
+    this.#search = {
+      low: Math.max(2, Math.ceil(RANGE_HZ.low / binHz)),
+      high: Math.min(bins - 2, Math.floor(RANGE_HZ.high / binHz)),
+      reach: Math.max(3, Math.round(NEIGHBOURS_HZ / binHz)),
+      least: LOWEST_DBFS,
+      over: LEAST_PROMINENCE_DB,
+    };
+    this.#db = kernels.arena.floats(mostColumns * bins);
+    this.#found = kernels.arena.ints(2 * MOST_STANDOUTS);
   }
 
-  /** @param power one column of the spectrum, linear, relative to a full-scale sine */
-  push(power: Float64Array, scale: number): void {
-    const peaks: { bin: number; hz: number; prominence: number }[] = [];
-    for (let k = 0; k < this.#db.length; k++)
-      this.#db[k] = 10 * Math.log10((power[k] as number) * scale + 1e-12);
-    for (let k = this.#low; k <= this.#high; k++) {
-      const here = this.#db[k] as number;
-      if (here < -85 || here < (this.#db[k - 1] as number) || here <= (this.#db[k + 1] as number)) continue;
-      if (here - this.#meanAround(k) < LEAST_PROMINENCE_DB - 4) continue;
-      const prominence = here - this.#medianAround(k);
-      if (prominence < LEAST_PROMINENCE_DB) continue;
-      const [a, c] = [this.#db[k - 1] as number, this.#db[k + 1] as number];
-      const shift = a - 2 * here + c === 0 ? 0 : (0.5 * (a - c)) / (a - 2 * here + c);
-      peaks.push({ bin: k, hz: (k + shift) * this.#binHz, prominence });
+  /** @param power columns of the spectrum */
+  push(power: Float32Array, columns: number): void {
+    const { bins, sineScale } = this.layout;
+    const db = this.#db.subarray(0, power.length);
+    this.kernels.decibels(power, sineScale, LEAST_POWER, db);
+    const count = this.kernels.standouts(db, columns, bins, this.#search, this.#found);
+    for (let row = 0, at = 0; row < columns; row++) {
+      const peaks: Peak[] = [];
+      for (; at < count && this.#found[2 * at] === row; at++)
+        peaks.push(this.#peak(db.subarray(row * bins, (row + 1) * bins), this.#found[2 * at + 1] as number));
+      if (peaks.length > 0 || this.#tracks.length > 0) this.#link(peaks);
+      this.#column++;
     }
-    this.#link(peaks);
-    this.#column++;
   }
 
-  /** Cheap, and never far above the median: most maxima are dismissed by it. */
-  #meanAround(k: number): number {
-    const from = Math.max(1, k - this.#reach);
-    const to = Math.min(this.#db.length, k + this.#reach + 1);
-    let sum = 0;
-    for (let i = from; i < to; i++) sum += this.#db[i] as number;
-    return sum / (to - from);
+  #peak(db: Float32Array, k: number): Peak {
+    const { reach } = this.#search;
+    const [a, here, c] = [db[k - 1] as number, db[k] as number, db[k + 1] as number];
+    const around = db.slice(Math.max(1, k - reach), k + reach + 1).sort();
+    const shift = a - 2 * here + c === 0 ? 0 : (0.5 * (a - c)) / (a - 2 * here + c);
+    return {
+      bin: k,
+      hz: (k + shift) * this.layout.binHz,
+      prominence: here - (around[around.length >> 1] as number),
+    };
   }
 
-  /** Median by insertion into a scratch array: two dozen values, thousands of times a second of sound. */
-  #medianAround(k: number): number {
-    const from = Math.max(1, k - this.#reach);
-    const to = Math.min(this.#db.length, k + this.#reach + 1);
-    const sorted = this.#scratch;
-    let n = 0;
-    for (let i = from; i < to; i++) {
-      const value = this.#db[i] as number;
-      let at = n++;
-      while (at > 0 && (sorted[at - 1] as number) > value) {
-        sorted[at] = sorted[at - 1] as number;
-        at--;
-      }
-      sorted[at] = value;
-    }
-    return sorted[n >> 1] as number;
-  }
-
-  #link(peaks: { bin: number; hz: number; prominence: number }[]): void {
+  #link(peaks: Peak[]): void {
     const open: Track[] = [];
     for (const track of this.#tracks) {
       const at = peaks.findIndex((peak) => Math.abs(peak.bin - track.bin) <= Math.max(1, 0.03 * track.bin));
@@ -131,16 +126,17 @@ export class TonalProbe {
 
   /** A tone shows in every window that holds half of it: what the window adds is taken off. */
   #lengthOf(track: Track): number {
-    return (track.last - track.first + 1) * this.columnSeconds;
+    return (track.last - track.first + 1) * this.layout.columnSeconds;
   }
 
   /** @param without lines of hum, Hz */
   finish(without: readonly number[]): Tonal[] {
+    const { columnSeconds, windowSeconds } = this.layout;
     for (const track of this.#tracks) this.#close(track);
     const middle = (values: number[]) => [...values].sort((a, b) => a - b)[values.length >> 1] as number;
     return this.#done
       .map((track) => ({
-        startSeconds: track.first * this.columnSeconds + this.windowSeconds / 2 - this.columnSeconds / 2,
+        startSeconds: track.first * columnSeconds + windowSeconds / 2 - columnSeconds / 2,
         durationSeconds: this.#lengthOf(track),
         frequencyHz: middle(track.frequencies),
         prominenceDb: middle(track.prominences),

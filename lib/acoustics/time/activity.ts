@@ -1,49 +1,28 @@
-import { FilterChain, highPass, lowPass } from '../dsp/biquad';
-import { percentile } from '../dsp/percentile';
-import type { Probe } from '../types';
-import { Envelope } from './envelope';
+import { percentiles } from '../dsp/percentile';
 import { rmsToDbfsSine } from './levels';
 
-const BLOCK_SECONDS = 0.1;
 const QUIETEST_DBFS = -120;
-const BAND_HZ = { low: 100, high: 1000 };
 
 export interface ActivityMeasures {
   noiseFloorDbfsSine: number | null;
   activityRangeDb: number | null;
 }
 
+/** Of what the activity is told: a band above most of the heart, in blocks of 100 ms. */
+export const ACTIVITY_BAND_HZ = { low: 100, high: 1000 };
+export const ACTIVITY_BLOCK_SECONDS = 0.1;
+
 /**
- * Noise floor and activity range: 10th percentile, and 90th less 10th, of 100 ms RMS of the 100-1000 Hz band, on the
- * stream divided to about 5 kHz. Steady breathing without pauses has range 0 by construction: it is an activity range,
- * not a signal-to-noise ratio.
+ * Noise floor and activity range: 10th percentile, and 90th less 10th, of the 100 ms levels of the 100-1000 Hz band.
+ * Steady breathing without pauses has range 0 by construction: it is an activity range, not a signal-to-noise ratio.
+ *
+ * @param meanSquares a block each, full scale squared
  */
-export class ActivityProbe implements Probe<ActivityMeasures> {
-  readonly #band: Envelope;
-  readonly #filter: FilterChain;
-
-  constructor(rateHz: number) {
-    this.#band = new Envelope(Math.max(1, Math.round(rateHz * BLOCK_SECONDS)));
-    this.#filter = new FilterChain([
-      highPass(BAND_HZ.low, rateHz),
-      highPass(BAND_HZ.low, rateHz),
-      ...(rateHz > 2.2 * BAND_HZ.high ? [lowPass(BAND_HZ.high, rateHz)] : []),
-    ]);
-  }
-
-  push(samples: Float32Array): void {
-    this.#band.push(this.#filter.run(samples), samples.length);
-  }
-
-  finish(): ActivityMeasures {
-    // The filters ring at the start: their first block says nothing of the room.
-    const blocks = this.#band.values.view().subarray(this.#band.values.length > 10 ? 1 : 0);
-    if (blocks.length === 0) return { noiseFloorDbfsSine: null, activityRangeDb: null };
-    const inDb = (fraction: number) => {
-      const rms = percentile(blocks, fraction);
-      return rms > 0 ? Math.max(QUIETEST_DBFS, rmsToDbfsSine(rms)) : QUIETEST_DBFS;
-    };
-    const floor = inDb(0.1);
-    return { noiseFloorDbfsSine: floor, activityRangeDb: inDb(0.9) - floor };
-  }
+export function activityOf(meanSquares: Float32Array): ActivityMeasures {
+  if (meanSquares.length === 0) return { noiseFloorDbfsSine: null, activityRangeDb: null };
+  const [quiet, loud] = percentiles(meanSquares, [0.1, 0.9]) as [number, number];
+  const inDb = (meanSquare: number) =>
+    meanSquare > 0 ? Math.max(QUIETEST_DBFS, rmsToDbfsSine(Math.sqrt(meanSquare))) : QUIETEST_DBFS;
+  const floor = inDb(quiet);
+  return { noiseFloorDbfsSine: floor, activityRangeDb: inDb(loud) - floor };
 }

@@ -1,27 +1,40 @@
+import { Framer } from '../dsp/framer';
 import { FloatList } from '../dsp/percentile';
+import type { Kernels } from '../kernels/types';
 
 /** RMS a block of a filtered stream, in units of full scale. */
 export class Envelope {
   readonly values = new FloatList();
-  #sum = 0;
-  #n = 0;
+  readonly #framer: Framer;
+  readonly #sums: Float32Array;
+  #begun = 0;
 
-  /** @param block samples a value */
-  constructor(private readonly block: number) {}
+  /** @param block samples a value; @param mostSamples that a push will bring */
+  constructor(
+    private readonly kernels: Kernels,
+    private readonly block: number,
+    mostSamples: number,
+  ) {
+    this.#framer = new Framer(block);
+    this.#sums = kernels.arena.floats(Math.ceil(mostSamples / block) + 1);
+  }
 
-  push(samples: Float32Array, length: number): void {
-    for (let at = 0; at < length; ) {
-      const end = Math.min(length, at + this.block - this.#n);
-      let sum = 0;
-      for (let i = at; i < end; i++) sum += (samples[i] as number) * (samples[i] as number);
-      this.#sum += sum;
-      this.#n += end - at;
-      at = end;
-      if (this.#n === this.block) {
-        this.values.push(Math.sqrt(this.#sum / this.#n));
-        this.#sum = 0;
-        this.#n = 0;
-      }
-    }
+  /** @param samples in the kernels' arena */
+  push(samples: Float32Array): void {
+    const sums = this.#sums;
+    this.#framer.push(
+      samples,
+      (part, ends) => {
+        this.kernels.energies(part, 1, part.length, sums);
+        this.#begun += sums[0] as number;
+        if (!ends) return;
+        this.values.push(Math.sqrt(this.#begun / this.block));
+        this.#begun = 0;
+      },
+      (frames, count) => {
+        this.kernels.energies(frames, count, this.block, sums);
+        for (let i = 0; i < count; i++) this.values.push(Math.sqrt((sums[i] as number) / this.block));
+      },
+    );
   }
 }

@@ -1,5 +1,6 @@
-import { type Biquad, FilterChain, highPass, lowPass } from '../dsp/biquad';
+import { FilterChain, highPass, lowPass, type Section } from '../dsp/biquad';
 import { percentile } from '../dsp/percentile';
+import type { Kernels } from '../kernels/types';
 import type { Span } from '../types';
 import { Envelope } from './envelope';
 
@@ -50,12 +51,16 @@ export interface HandlingMeasures {
 export class HandlingProbe {
   readonly #bands: Record<'low' | 'broad' | 'high', { filter: FilterChain; envelope: Envelope }>;
 
-  constructor(rateHz: number) {
+  readonly #filtered: Float32Array;
+
+  /** @param mostSamples that a push will bring */
+  constructor(kernels: Kernels, rateHz: number, mostSamples: number) {
     const frame = Math.max(1, Math.round(rateHz * FRAME_SECONDS));
-    const band = (...sections: Biquad[]) => ({
-      filter: new FilterChain(sections),
-      envelope: new Envelope(frame),
+    const band = (...sections: Section[]) => ({
+      filter: new FilterChain(kernels, sections),
+      envelope: new Envelope(kernels, frame, mostSamples),
     });
+    this.#filtered = kernels.arena.floats(mostSamples);
     this.#bands = {
       low: band(highPass(5, rateHz), lowPass(40, rateHz), lowPass(40, rateHz)),
       broad: band(highPass(20, rateHz), lowPass(400, rateHz)),
@@ -63,11 +68,13 @@ export class HandlingProbe {
     };
   }
 
+  /** @param samples in the kernels' arena */
   push(samples: Float32Array): void {
-    const { low, broad, high } = this.#bands;
-    low.envelope.push(low.filter.run(samples), samples.length);
-    broad.envelope.push(broad.filter.run(samples), samples.length);
-    high.envelope.push(high.filter.run(samples), samples.length);
+    const out = this.#filtered.subarray(0, samples.length);
+    for (const { filter, envelope } of [this.#bands.low, this.#bands.broad, this.#bands.high]) {
+      filter.run(samples, out);
+      envelope.push(out);
+    }
   }
 
   /** @param holes the edges of these, and of @param clicks, ring in the low band without any contact */

@@ -1,5 +1,7 @@
+import { Framer } from '../dsp/framer';
 import { FloatList, percentile } from '../dsp/percentile';
-import type { Encoding, Probe } from '../types';
+import type { Kernels } from '../kernels/types';
+import type { Encoding } from '../types';
 
 /** 0 dBFS is the RMS of a full-scale sine (AES17): a full-scale sine reads 0, a full-scale square wave +3.01. */
 export const rmsToDbfsSine = (rms: number): number => 20 * Math.log10(rms * Math.SQRT2);
@@ -19,6 +21,8 @@ export function stepOf(encoding: Encoding, bitDepth: number | null): number {
 export interface LevelMeasures {
   dcFraction: number;
   peakDbfs: number | null;
+  /** The largest of the sound between the samples too. */
+  truePeakDbfs: number | null;
   rmsDbfsSine: number | null;
   activeLevelDbfsSine: number | null;
   crestDb: number | null;
@@ -37,7 +41,7 @@ export type StretchListener = (
  * Sums of one channel in one pass: extremes, mean and mean square, and the same a 100 ms block and a 10 ms block.
  * DC is removed afterwards from the sums, in double precision: mean square less square of mean.
  */
-export class LevelProbe implements Probe<LevelMeasures> {
+export class LevelProbe {
   min = Number.POSITIVE_INFINITY;
   max = Number.NEGATIVE_INFINITY;
   frames = 0;
@@ -46,7 +50,8 @@ export class LevelProbe implements Probe<LevelMeasures> {
   #squares = 0;
   readonly #blockMean = new FloatList();
   readonly #blockSquare = new FloatList();
-  readonly #short: number;
+  readonly #framer: Framer;
+  readonly #sums: Float32Array;
   readonly #shortsPerBlock = Math.round(BLOCK_SECONDS / SHORT_SECONDS);
   #n = 0;
   #s = 0;
@@ -56,39 +61,55 @@ export class LevelProbe implements Probe<LevelMeasures> {
   #blockQ = 0;
   #blockN = 0;
 
-  /** @param onStretch what needs extremes of a few samples to know whether to look at them */
+  /**
+   * @param mostSamples that a push will bring
+   * @param onStretch what needs extremes of a few samples to know whether to look at them
+   */
   constructor(
+    private readonly kernels: Kernels,
     sampleRateHz: number,
+    mostSamples: number,
     private readonly onStretch?: StretchListener,
   ) {
-    this.#short = Math.max(1, Math.round(sampleRateHz * SHORT_SECONDS));
+    const short = Math.max(1, Math.round(sampleRateHz * SHORT_SECONDS));
+    this.#framer = new Framer(short);
+    this.#sums = kernels.arena.floats(4 * (Math.ceil(mostSamples / short) + 1));
   }
 
+  /** @param samples in the kernels' arena */
   push(samples: Float32Array): void {
-    let at = 0;
-    while (at < samples.length) {
-      const end = Math.min(samples.length, at + this.#short - this.#n);
-      let s = 0;
-      let q = 0;
-      let min = samples[at] as number;
-      let max = min;
-      for (let i = at; i < end; i++) {
-        const x = samples[i] as number;
-        s += x;
-        q += x * x;
-        if (x < min) min = x;
-        if (x > max) max = x;
-      }
-      if (min < this.min) this.min = min;
-      if (max > this.max) this.max = max;
-      this.onStretch?.(samples, at, end, min, max);
-      this.#s += s;
-      this.#q += q;
-      this.#n += end - at;
-      at = end;
-      if (this.#n === this.#short) this.#closeShort();
-    }
+    this.#framer.push(
+      samples,
+      (part, ends) => {
+        this.kernels.stretches(part, 1, part.length, this.#sums);
+        this.#take(part, 0, 0, part.length);
+        if (ends) this.#closeShort();
+      },
+      (frames, count) => {
+        const { length } = this.#framer;
+        this.kernels.stretches(frames, count, length, this.#sums);
+        for (let k = 0; k < count; k++) {
+          this.#take(frames, k, k * length, length);
+          this.#closeShort();
+        }
+      },
+    );
     this.frames += samples.length;
+  }
+
+  #take(samples: Float32Array, k: number, from: number, length: number): void {
+    const sums = this.#sums;
+    const min = sums[4 * k] as number;
+    const max = sums[4 * k + 1] as number;
+    // The kernel's sums are of the differences from the first sample: back to those of the samples, in double precision.
+    const first = samples[from] as number;
+    const sum = sums[4 * k + 2] as number;
+    this.#s += sum + length * first;
+    this.#q += (sums[4 * k + 3] as number) + first * (2 * sum + length * first);
+    this.#n += length;
+    if (min < this.min) this.min = min;
+    if (max > this.max) this.max = max;
+    this.onStretch?.(samples, from, from + length, min, max);
   }
 
   #closeShort(): void {
@@ -112,7 +133,8 @@ export class LevelProbe implements Probe<LevelMeasures> {
     }
   }
 
-  finish(): LevelMeasures {
+  /** @param reached extremes of the sound between the samples too */
+  finish(reached: { min: number; max: number }): LevelMeasures {
     const sum = this.#sum + this.#s;
     const squares = this.#squares + this.#q;
     const dc = this.frames > 0 ? sum / this.frames : 0;
@@ -121,6 +143,7 @@ export class LevelProbe implements Probe<LevelMeasures> {
       return {
         dcFraction: dc,
         peakDbfs: null,
+        truePeakDbfs: null,
         rmsDbfsSine: null,
         activeLevelDbfsSine: null,
         crestDb: null,
@@ -131,6 +154,7 @@ export class LevelProbe implements Probe<LevelMeasures> {
     return {
       dcFraction: dc,
       peakDbfs: toDbfs(peak),
+      truePeakDbfs: toDbfs(Math.max(reached.max - dc, dc - reached.min)),
       rmsDbfsSine: rms > 0 ? rmsToDbfsSine(rms) : null,
       activeLevelDbfsSine: active > 0 ? rmsToDbfsSine(active) : null,
       crestDb: rms > 0 ? toDbfs(peak / rms) : null,

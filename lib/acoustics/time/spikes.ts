@@ -1,8 +1,10 @@
+import type { Lookaround } from '../dsp/lookaround';
 import { percentile } from '../dsp/percentile';
+import type { Kernels } from '../kernels/types';
 import type { Span } from '../types';
 
 /** Samples looked at on either side of a candidate. */
-const REACH = 32;
+export const REACH = 32;
 /** Of these, the nearest are the spike's own. */
 const OWN = 3;
 const MOST_SPIKES = 2000;
@@ -32,58 +34,46 @@ interface Spike {
  */
 export class SpikeProbe {
   readonly #found: Spike[] = [];
-  #work = new Float32Array(0);
-  #kept = 0;
-  #frames = 0;
   /** Mean bend of the blocks so far, and of the one that is not full. */
   #mean = 0;
   #sum = 0;
   #n = 0;
   readonly #bends = new Float64Array(2 * REACH);
 
+  readonly #runs: Float32Array;
+
+  /** @param around reaches REACH samples or more */
   constructor(
+    private readonly kernels: Kernels,
+    private readonly around: Lookaround,
     private readonly sampleRateHz: number,
     private readonly step: number,
-  ) {}
-
-  push(samples: Float32Array): void {
-    const total = this.#kept + samples.length;
-    if (this.#work.length < total) {
-      const grown = new Float32Array(total + 4096);
-      grown.set(this.#work.subarray(0, this.#kept));
-      this.#work = grown;
-    }
-    const x = this.#work;
-    x.set(samples, this.#kept);
-    const offset = this.#frames - this.#kept;
-    // Each sample is judged once, with REACH samples on both sides; the first and last of a clip are not.
-    const from = this.#kept < 2 * REACH ? REACH : this.#kept - REACH;
-    if (total - REACH > from) this.#scan(x, from, total - REACH, offset);
-    this.#frames += samples.length;
-    const keep = Math.min(total, 2 * REACH);
-    x.copyWithin(0, total - keep, total);
-    this.#kept = keep;
+  ) {
+    this.#runs = kernels.arena.floats(2 * (Math.ceil(around.x.length / BLOCK) + 2));
   }
 
-  #scan(x: Float32Array, from: number, to: number, offset: number): void {
-    for (let at = from; at < to; ) {
+  /** Look at what the last push of the stream brought. */
+  look(): void {
+    const { x, reach, to, offset } = this.around;
+    if (to <= reach) return;
+    const runs = this.kernels.bends(x, reach, to - reach, BLOCK - this.#n, BLOCK, this.#runs);
+    let at = reach;
+    for (let k = 0; k < runs; k++) {
       const end = Math.min(to, at + BLOCK - this.#n);
       const limit = CANDIDATE * this.#mean + 8 * this.step;
-      let sum = 0;
-      let before = x[at - 1] as number;
-      let here = x[at] as number;
-      for (let i = at; i < end; i++) {
-        const next = x[i + 1] as number;
-        const bend = Math.abs(here + here - before - next);
-        sum += bend;
-        if (bend > limit) this.#judge(x, i, offset);
-        before = here;
-        here = next;
-      }
-      this.#sum += sum;
+      if ((this.#runs[2 * k + 1] as number) > limit) this.#scan(x, at, end, limit, offset);
+      this.#sum += this.#runs[2 * k] as number;
       this.#n += end - at;
       at = end;
       if (this.#n === BLOCK) this.#closeBlock();
+    }
+  }
+
+  #scan(x: Float32Array, from: number, to: number, limit: number, offset: number): void {
+    for (let i = from; i < to; i++) {
+      const here = x[i] as number;
+      const bend = Math.abs(here + here - (x[i - 1] as number) - (x[i + 1] as number));
+      if (bend > limit) this.#judge(x, i, offset);
     }
   }
 

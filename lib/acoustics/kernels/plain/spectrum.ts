@@ -1,0 +1,152 @@
+import type { SpectrumPlan } from '../plan';
+import type { Kernels } from '../types';
+
+type Spectrum = Pick<Kernels, 'spectra' | 'decibels' | 'shades' | 'standouts' | 'bandSums'>;
+
+/** Complex FFT in place (Cooley and Tukey 1965): z holds re and im in turn, in bit-reversed order. */
+function transform(z: Float32Array, w: Float32Array, half: number): void {
+  let span = 1;
+  if (Math.log2(half) & 1) {
+    for (let a = 0; a < 2 * half; a += 4) {
+      const re = z[a + 2] as number;
+      const im = z[a + 3] as number;
+      z[a + 2] = (z[a] as number) - re;
+      z[a + 3] = (z[a + 1] as number) - im;
+      z[a] = (z[a] as number) + re;
+      z[a + 1] = (z[a + 1] as number) + im;
+    }
+    span = 2;
+  }
+  for (; span < half; span *= 4) twoStages(z, w, half, span);
+}
+
+/** Two stages of radix 2 at once: half the traffic with memory. */
+function twoStages(z: Float32Array, w: Float32Array, half: number, span: number): void {
+  const far = half / span;
+  const near = half / (2 * span);
+  for (let i = 0; i < span; i++) {
+    const c1 = w[i * far] as number;
+    const s1 = w[i * far + 1] as number;
+    const c2 = w[i * near] as number;
+    const s2 = w[i * near + 1] as number;
+    for (let a = 2 * i; a < 2 * half; a += 8 * span) {
+      const b = a + 2 * span;
+      const c = b + 2 * span;
+      const d = c + 2 * span;
+      const bRe = c1 * (z[b] as number) - s1 * (z[b + 1] as number);
+      const bIm = c1 * (z[b + 1] as number) + s1 * (z[b] as number);
+      const dRe = c1 * (z[d] as number) - s1 * (z[d + 1] as number);
+      const dIm = c1 * (z[d + 1] as number) + s1 * (z[d] as number);
+      const a0 = (z[a] as number) + bRe;
+      const a1 = (z[a + 1] as number) + bIm;
+      const b0 = (z[a] as number) - bRe;
+      const b1 = (z[a + 1] as number) - bIm;
+      const c0 = (z[c] as number) + dRe;
+      const cc = (z[c + 1] as number) + dIm;
+      const d0 = (z[c] as number) - dRe;
+      const d1 = (z[c + 1] as number) - dIm;
+      const cRe = c2 * c0 - s2 * cc;
+      const cIm = c2 * cc + s2 * c0;
+      const eRe = c2 * d0 - s2 * d1;
+      const eIm = c2 * d1 + s2 * d0;
+      z[a] = a0 + cRe;
+      z[a + 1] = a1 + cIm;
+      z[c] = a0 - cRe;
+      z[c + 1] = a1 - cIm;
+      // times -i
+      z[b] = b0 + eIm;
+      z[b + 1] = b1 - eRe;
+      z[d] = b0 - eIm;
+      z[d + 1] = b1 + eRe;
+    }
+  }
+}
+
+/** Real frames by a complex FFT of half the size (the split as in Press et al., Numerical Recipes, 12.3; from memory). */
+function spectra(plan: SpectrumPlan, x: Float32Array, hop: number, count: number, out: Float32Array): void {
+  const { size, bins, window, order, twiddles, split, work } = plan;
+  const half = size / 2;
+  const z = work;
+  for (let frame = 0; frame < count; frame++) {
+    const from = frame * hop;
+    for (let i = 0; i < half; i++) {
+      const to = 2 * (order[i] as number);
+      z[to] = (x[from + 2 * i] as number) * (window[2 * i] as number);
+      z[to + 1] = (x[from + 2 * i + 1] as number) * (window[2 * i + 1] as number);
+    }
+    transform(z, twiddles, half);
+    const at = frame * bins;
+    for (let k = 0; k < bins; k++) {
+      const p = k === half ? 0 : 2 * k;
+      const q = k === 0 ? 0 : 2 * (half - k);
+      const cos = split[2 * k] as number;
+      const sin = split[2 * k + 1] as number;
+      const oddRe = (z[p + 1] as number) + (z[q + 1] as number);
+      const oddIm = (z[q] as number) - (z[p] as number);
+      const re = (z[p] as number) + (z[q] as number) + cos * oddRe - sin * oddIm;
+      const im = (z[p + 1] as number) - (z[q + 1] as number) + cos * oddIm + sin * oddRe;
+      out[at + k] = (re * re + im * im) / 4;
+    }
+  }
+}
+
+const TABLE_BITS = 12;
+const OCTAVE_DB = 10 * Math.log10(2);
+/** Decibels of a mantissa by its first twelve bits, from the middle of each step: 0.0006 dB at most beside it. */
+const MANTISSA_DB = Float32Array.from(
+  { length: 1 << TABLE_BITS },
+  (_, i) => 10 * Math.log10(1 + (i + 0.5) / (1 << TABLE_BITS)),
+);
+const asFloat = new Float32Array(1);
+const asBits = new Int32Array(asFloat.buffer);
+
+/** 10 lg of a positive normal number in single precision. */
+function inDecibels(x: number): number {
+  asFloat[0] = x;
+  const bits = asBits[0] as number;
+  const mantissa = MANTISSA_DB[(bits >> (23 - TABLE_BITS)) & ((1 << TABLE_BITS) - 1)] as number;
+  return OCTAVE_DB * ((bits >> 23) - 127) + mantissa;
+}
+
+export const plainSpectrum: Spectrum = {
+  spectra,
+  decibels(power, scale, least, out) {
+    for (let i = 0; i < power.length; i++) out[i] = inDecibels((power[i] as number) * scale + least);
+  },
+  shades(power, scale, least, floor, step, out) {
+    for (let i = 0; i < power.length; i++) {
+      const shade = Math.round((inDecibels((power[i] as number) * scale + least) - floor) / step);
+      out[i] = shade < 0 ? 0 : shade > 255 ? 255 : shade;
+    }
+  },
+  standouts(db, rows, bins, { low, high, reach, least, over }, out) {
+    const most = out.length >> 1;
+    let found = 0;
+    for (let row = 0; row < rows; row++) {
+      const base = row * bins;
+      for (let k = low; k <= high; k++) {
+        const here = db[base + k] as number;
+        if (here < least || here < (db[base + k - 1] as number) || here <= (db[base + k + 1] as number))
+          continue;
+        const from = base + Math.max(1, k - reach);
+        const to = base + Math.min(bins, k + reach + 1);
+        const limit = Math.fround(here - over);
+        let below = 0;
+        for (let i = from; i < to; i++) if ((db[i] as number) <= limit) below++;
+        if (below <= (to - from) >> 1) continue;
+        if (found === most) return found;
+        out[2 * found] = row;
+        out[2 * found + 1] = k;
+        found++;
+      }
+    }
+    return found;
+  },
+  bandSums(power, rows, bins, from, to, out) {
+    for (let row = 0; row < rows; row++) {
+      let sum = 0;
+      for (let i = row * bins + from; i < row * bins + to; i++) sum += power[i] as number;
+      out[row] = sum;
+    }
+  },
+};
