@@ -43,7 +43,7 @@ export class ChannelAnalysis {
     this.#rateHz = rate;
     const step = stepOf(format.encoding, format.bitDepth);
     const coarse = (format.bitDepth ?? 16) <= 8;
-    const rails = new RailProbe(format.encoding, format.bitDepth, rate);
+    const rails = new RailProbe(kernels.arena, format.encoding, format.bitDepth, rate);
     this.#rails = rails;
     this.#levels = new LevelProbe(kernels, rate, BLOCK_FRAMES, (samples, from, to, min, max) =>
       rails.look(samples, from, to, min, max),

@@ -43,6 +43,8 @@ export interface Kernels {
   betweenSamples(taps: Float32Array, x: Float32Array, at: number, n: number, gate: number, out: Float32Array): void;
   /** Two or three second-order sections one behind the other; `sections` holds their state. */
   cascade(sections: Float64Array, x: Float32Array, out: Float32Array): void;
+  /** Two chains of three sections on one input; `sections` holds their values side by side. */
+  twins(sections: Float64Array, x: Float32Array, first: Float32Array, second: Float32Array): void;
   /** |X|^2 of `count` windowed frames that begin `hop` apart, `plan.bins` values a frame. */
   spectra(plan: SpectrumPlan, x: Float32Array, hop: number, count: number, out: Float32Array): void;
   /** 10 lg(power * scale + least). @param out as long as power */

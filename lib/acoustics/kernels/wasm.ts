@@ -16,6 +16,7 @@ interface Exports {
   dots(taps: number, length: number, x: number, step: number, count: number, out: number): void;
   betweenSamples(taps: number, x: number, n: number, gate: number, out: number): void;
   cascade(sections: number, count: number, x: number, out: number, n: number): void;
+  twins(sections: number, x: number, first: number, second: number, n: number): void;
   spectra(
     window: number,
     order: number,
@@ -98,6 +99,8 @@ export function wasmKernels(): Kernels | null {
         out.byteOffset,
         x.length,
       ),
+    twins: (sections, x, first, second) =>
+      wasm.twins(sections.byteOffset, x.byteOffset, first.byteOffset, second.byteOffset, x.length),
     spectra: ({ window, order, twiddles, split, work, size, bins }, x, hop, count, out) =>
       wasm.spectra(
         window.byteOffset,

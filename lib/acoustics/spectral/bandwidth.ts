@@ -1,7 +1,8 @@
+import { percentile } from '../dsp/percentile';
 import { planSpectrum, type SpectrumPlan } from '../kernels/plan';
 import type { Kernels } from '../kernels/types';
 
-const SIZE = 2048;
+const SIZE = 1024;
 const BINS = SIZE / 2 + 1;
 /** Spectra are made four at a time. */
 const TOGETHER = 4;
@@ -81,7 +82,7 @@ export class BandwidthProbe {
     // Periodogram density, doubled for the negative frequencies; sum of squared Hann is 3/8 of its length.
     const scale = 2 / (this.#segments * this.rateHz * SIZE * 0.375);
     const db = medianFiltered(
-      Float64Array.from(this.#sum, (power) => 10 * Math.log10(power * scale + 1e-20)),
+      this.#sum.map((power) => 10 * Math.log10(power * scale + 1e-20)),
       4,
     );
     const nyquist = this.rateHz / 2;
@@ -97,10 +98,7 @@ export class BandwidthProbe {
       }
     }
     const edgeHz = edge * binHz;
-    const beyond = Array.from(db.subarray(Math.min(db.length - 1, Math.ceil(edge + reach)))).sort(
-      (a, b) => a - b,
-    );
-    const tail = beyond[beyond.length >> 1] ?? 0;
+    const tail = percentile(db.subarray(Math.min(db.length - 1, Math.ceil(edge + reach))), 0.5);
     const codes = 2 ** (Math.min(this.bitDepth ?? 16, 16) - 1);
     const quantisation = -10 * Math.log10(12) - 20 * Math.log10(codes) - 10 * Math.log10(nyquist);
     const brickWall = fall >= LEAST_FALL_DB && edgeHz > LOWEST_EDGE_HZ && edgeHz < HIGHEST_EDGE * nyquist;
@@ -121,19 +119,23 @@ function contentEnd(db: Float64Array, binHz: number, quantisation: number): numb
 
 /** Median of each value and `half` neighbours on both sides, by a window that is kept sorted. */
 function medianFiltered(values: Float64Array, half: number): Float64Array {
-  const window: number[] = [];
-  const place = (value: number): number => {
-    let at = 0;
-    while (at < window.length && (window[at] as number) < value) at++;
-    return at;
-  };
+  const window = new Float64Array(2 * half + 2);
+  let n = 0;
   const out = new Float64Array(values.length);
   for (let k = -half; k < values.length; k++) {
-    const enters = values[k + half];
-    if (enters !== undefined) window.splice(place(enters), 0, enters);
-    const leaves = values[k - half - 1];
-    if (leaves !== undefined) window.splice(place(leaves), 1);
-    if (k >= 0) out[k] = window[window.length >> 1] as number;
+    if (k - half > 0) {
+      const leaves = values[k - half - 1] as number;
+      let at = 0;
+      while (at < n - 1 && window[at] !== leaves) at++;
+      window.copyWithin(at, at + 1, n--);
+    }
+    if (k + half < values.length) {
+      const enters = values[k + half] as number;
+      let at = n++;
+      for (; at > 0 && (window[at - 1] as number) > enters; at--) window[at] = window[at - 1] as number;
+      window[at] = enters;
+    }
+    if (k >= 0) out[k] = window[n >> 1] as number;
   }
   return out;
 }

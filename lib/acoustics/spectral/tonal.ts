@@ -39,6 +39,7 @@ export class TonalProbe {
   readonly #search: { low: number; high: number; reach: number; least: number; over: number };
   readonly #db: Float32Array;
   readonly #found: Int32Array;
+  readonly #sorted: Float32Array;
   #tracks: Track[] = [];
   readonly #done: Track[] = [];
   #column = 0;
@@ -59,6 +60,7 @@ export class TonalProbe {
     };
     this.#db = kernels.arena.floats(mostColumns * bins);
     this.#found = kernels.arena.ints(2 * MOST_STANDOUTS);
+    this.#sorted = new Float32Array(2 * this.#search.reach + 1);
   }
 
   /** @param power columns of the spectrum */
@@ -79,13 +81,28 @@ export class TonalProbe {
   #peak(db: Float32Array, k: number): Peak {
     const { reach } = this.#search;
     const [a, here, c] = [db[k - 1] as number, db[k] as number, db[k + 1] as number];
-    const around = db.slice(Math.max(1, k - reach), k + reach + 1).sort();
     const shift = a - 2 * here + c === 0 ? 0 : (0.5 * (a - c)) / (a - 2 * here + c);
     return {
       bin: k,
       hz: (k + shift) * this.layout.binHz,
-      prominence: here - (around[around.length >> 1] as number),
+      prominence: here - this.#median(db, Math.max(1, k - reach), Math.min(db.length, k + reach + 1)),
     };
+  }
+
+  /** By insertion: two dozen values, often. */
+  #median(db: Float32Array, from: number, to: number): number {
+    const sorted = this.#sorted;
+    let n = 0;
+    for (let i = from; i < to; i++) {
+      const value = db[i] as number;
+      let at = n++;
+      while (at > 0 && (sorted[at - 1] as number) > value) {
+        sorted[at] = sorted[at - 1] as number;
+        at--;
+      }
+      sorted[at] = value;
+    }
+    return sorted[n >> 1] as number;
   }
 
   #link(peaks: Peak[]): void {

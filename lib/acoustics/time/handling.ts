@@ -1,4 +1,4 @@
-import { FilterChain, highPass, lowPass, type Section } from '../dsp/biquad';
+import { FilterChain, highPass, lowPass, TwinChains } from '../dsp/biquad';
 import { percentile } from '../dsp/percentile';
 import type { Kernels } from '../kernels/types';
 import type { Span } from '../types';
@@ -49,32 +49,36 @@ export interface HandlingMeasures {
  * ours, tried on synthetic sounds.
  */
 export class HandlingProbe {
-  readonly #bands: Record<'low' | 'broad' | 'high', { filter: FilterChain; envelope: Envelope }>;
-
-  readonly #filtered: Float32Array;
+  readonly #envelopes: Record<'low' | 'broad' | 'high', Envelope>;
+  readonly #lowAndHigh: TwinChains;
+  readonly #broad: FilterChain;
+  readonly #first: Float32Array;
+  readonly #second: Float32Array;
 
   /** @param mostSamples that a push will bring */
   constructor(kernels: Kernels, rateHz: number, mostSamples: number) {
     const frame = Math.max(1, Math.round(rateHz * FRAME_SECONDS));
-    const band = (...sections: Section[]) => ({
-      filter: new FilterChain(kernels, sections),
-      envelope: new Envelope(kernels, frame, mostSamples),
-    });
-    this.#filtered = kernels.arena.floats(mostSamples);
-    this.#bands = {
-      low: band(highPass(5, rateHz), lowPass(40, rateHz), lowPass(40, rateHz)),
-      broad: band(highPass(20, rateHz), lowPass(400, rateHz)),
-      high: band(highPass(200, rateHz), highPass(200, rateHz), lowPass(1000, rateHz)),
-    };
+    const envelope = () => new Envelope(kernels, frame, mostSamples);
+    this.#envelopes = { low: envelope(), broad: envelope(), high: envelope() };
+    this.#lowAndHigh = new TwinChains(kernels, [
+      [highPass(5, rateHz), lowPass(40, rateHz), lowPass(40, rateHz)],
+      [highPass(200, rateHz), highPass(200, rateHz), lowPass(1000, rateHz)],
+    ]);
+    this.#broad = new FilterChain(kernels, [highPass(20, rateHz), lowPass(400, rateHz)]);
+    this.#first = kernels.arena.floats(mostSamples);
+    this.#second = kernels.arena.floats(mostSamples);
   }
 
   /** @param samples in the kernels' arena */
   push(samples: Float32Array): void {
-    const out = this.#filtered.subarray(0, samples.length);
-    for (const { filter, envelope } of [this.#bands.low, this.#bands.broad, this.#bands.high]) {
-      filter.run(samples, out);
-      envelope.push(out);
-    }
+    const first = this.#first.subarray(0, samples.length);
+    const second = this.#second.subarray(0, samples.length);
+    const { low, broad, high } = this.#envelopes;
+    this.#lowAndHigh.run(samples, first, second);
+    low.push(first);
+    high.push(second);
+    this.#broad.run(samples, first);
+    broad.push(first);
   }
 
   /** @param holes the edges of these, and of @param clicks, ring in the low band without any contact */
@@ -88,7 +92,7 @@ export class HandlingProbe {
   }
 
   #bursts(): Span[] {
-    const low = this.#bands.low.envelope.values.view();
+    const low = this.#envelopes.low.values.view();
     if (low.length * FRAME_SECONDS < SHORTEST_CLIP_SECONDS) return [];
     const beat = beatLevel(low);
     const threshold = Math.max(OVER_MEDIAN * percentile(low, 0.5), OVER_BEAT_WITH_CRACK * beat, LEAST_RMS);
@@ -108,13 +112,13 @@ export class HandlingProbe {
   }
 
   #isContact(start: number, end: number, beat: number): boolean {
-    const { low, broad, high } = this.#bands;
-    const loudest = largestOf(low.envelope.values.view().subarray(start, end));
-    const breath = largestOf(broad.envelope.values.view().subarray(start, end));
+    const { low, broad, high } = this.#envelopes;
+    const loudest = largestOf(low.values.view().subarray(start, end));
+    const breath = largestOf(broad.values.view().subarray(start, end));
     if (loudest < LEAST_LOW_SHARE * breath) return false;
     if (loudest >= OVER_BEAT * beat) return true;
-    const crack = largestOf(high.envelope.values.view().subarray(start, end));
-    const before = high.envelope.values.view().subarray(Math.max(0, start - CRACK_FRAMES), start);
+    const crack = largestOf(high.values.view().subarray(start, end));
+    const before = high.values.view().subarray(Math.max(0, start - CRACK_FRAMES), start);
     return crack >= LEAST_CRACK * loudest && crack >= CRACK_RISE * percentile(before, 0.5);
   }
 }

@@ -1,3 +1,4 @@
+import type { Arena } from '../kernels/arena';
 import type { Encoding, FlatTop } from '../types';
 import { toDbfs } from './levels';
 
@@ -53,13 +54,17 @@ class Side {
   readonly spans: [from: number, to: number][] = [];
   extreme = -40_000;
   extremeRuns = 0;
-  /** Complete for the codes from `extreme - WINDOW` up: that is all that is asked of it. */
-  readonly #histogram = new Uint32Array(65_536);
   #run = 0;
   #extremeRun = 0;
 
-  /** @param near frames between two places that are told as one */
-  constructor(private readonly near: number) {}
+  /**
+   * @param near frames between two places that are told as one
+   * @param histogram 65,536 zeros; complete for the codes from `extreme - WINDOW` up: that is all that is asked of it
+   */
+  constructor(
+    private readonly near: number,
+    private readonly histogram: Int32Array,
+  ) {}
 
   /** Nothing in the stretch comes near: runs end. */
   pass(): void {
@@ -116,7 +121,7 @@ class Side {
 
   #count(x: number): void {
     const code = Math.max(-32_768, Math.min(32_767, Math.round(x * 32_768)));
-    this.#histogram[code + 32_768] = (this.#histogram[code + 32_768] as number) + 1;
+    this.histogram[code + 32_768] = (this.histogram[code + 32_768] as number) + 1;
     if (code < this.extreme - 1) {
       this.#extremeRun = 0;
       return;
@@ -131,7 +136,7 @@ class Side {
 
   /** How many samples lie within one step of the extreme, and how much higher that is than the codes below. */
   pile(stepCodes: number): { samples: number; ratio: number } {
-    const h = (step: number) => this.#histogram[this.extreme + 32_768 - step * stepCodes] ?? 0;
+    const h = (step: number) => this.histogram[this.extreme + 32_768 - step * stepCodes] ?? 0;
     const samples = h(0) + h(1);
     let below = 0;
     for (let i = 2; i <= WINDOW; i++) below += h(i);
@@ -160,12 +165,14 @@ export class RailProbe {
   #over = 0;
 
   constructor(
+    arena: Arena,
     encoding: Encoding,
     private readonly bitDepth: number | null,
     sampleRateHz: number,
   ) {
-    this.#upper = new Side(NEAR_SECONDS * sampleRateHz);
-    this.#lower = new Side(NEAR_SECONDS * sampleRateHz);
+    const side = () => new Side(NEAR_SECONDS * sampleRateHz, arena.ints(65_536).fill(0));
+    this.#upper = side();
+    this.#lower = side();
     const { high, low } = railOf(encoding, bitDepth);
     this.#high = high;
     this.#low = -low;

@@ -87,18 +87,21 @@ export class SpikeProbe {
 
   #judge(x: Float32Array, i: number, offset: number): void {
     if (this.#found.length >= MOST_SPIKES) return;
-    const at = (index: number) => x[index] as number;
-    const one = Math.abs(at(i) - (at(i - 1) + at(i + 1)) / 2);
-    const two = Math.abs(at(i) + at(i + 1) - at(i - 1) - at(i + 2)) / 2;
+    const before = x[i - 1] as number;
+    const here = x[i] as number;
+    const next = x[i + 1] as number;
+    const one = Math.abs(here - (before + next) / 2);
+    const two = Math.abs(here + next - before - (x[i + 2] as number)) / 2;
     // A second sample that is as far out as the first belongs to it.
-    const width = two > 0.75 * Math.abs(at(i) - at(i - 1)) && two > one ? 2 : 1;
+    const width = two > 0.75 * Math.abs(here - before) && two > one ? 2 : 1;
     const height = width === 2 ? two : one;
+    const behind = x[i + width] as number;
     // Between two samples at the rail nobody knows what the sound was.
-    if (Math.max(Math.abs(at(i - 1)), Math.abs(at(i + width))) >= AT_RAIL) return;
-    if (Math.abs(at(i - 1) - at(i + width)) > MOST_STEP * height) return;
-    if (width === 2 && Math.abs(at(i) - at(i + 1)) > MOST_STEP * height) return;
+    if (Math.max(Math.abs(before), Math.abs(behind)) >= AT_RAIL) return;
+    if (Math.abs(before - behind) > MOST_STEP * height) return;
+    if (width === 2 && Math.abs(here - next) > MOST_STEP * height) return;
     if (this.#swings(x, i, width) > MOST_BESIDE * height) return;
-    if (height <= LEAST_MAD * Math.max(this.#usualBend(x, i, width), this.step / 2)) return;
+    if (!this.#standsOut(x, i, width, height / LEAST_MAD)) return;
     this.#note({ frame: offset + i, height });
   }
 
@@ -114,18 +117,21 @@ export class SpikeProbe {
     return furthest;
   }
 
-  /** Median distance of the samples around from the line between their neighbours. */
-  #usualBend(x: Float32Array, i: number, width: number): number {
+  /**
+   * Whether the samples around stray less than `limit` from the line between their neighbours: by the median, and, as a
+   * wave of a few samples a period has bends of none and all, by half their mean.
+   */
+  #standsOut(x: Float32Array, i: number, width: number, limit: number): boolean {
+    if (limit <= this.step / 2) return false;
     let n = 0;
+    let sum = 0;
     for (let k = i - REACH + 1; k < i + REACH - 1; k++) {
       if (k > i - OWN && k < i + width - 1 + OWN) continue;
-      this.#bends[n++] = Math.abs((x[k] as number) - ((x[k - 1] as number) + (x[k + 1] as number)) / 2);
+      const bend = Math.abs((x[k] as number) - ((x[k - 1] as number) + (x[k + 1] as number)) / 2);
+      sum += bend;
+      this.#bends[n++] = bend;
     }
-    const bends = this.#bends.subarray(0, n);
-    let sum = 0;
-    for (const bend of bends) sum += bend;
-    // A wave of a few samples a period has bends of none and all: half their mean then says more.
-    return Math.max(percentile(bends, 0.5), sum / n / 2);
+    return sum / n / 2 < limit && percentile(this.#bends.subarray(0, n), 0.5) < limit;
   }
 
   #note(spike: Spike): void {

@@ -21,6 +21,36 @@ static inline double quiet(double z) { return z < 1e-30 && z > -1e-30 ? 0 : z; }
   s_##k[5] = quiet(z1_##k);   \
   s_##k[6] = quiet(z2_##k);
 
+static inline v128_t hush(v128_t z) {
+  return wasm_v128_and(z, wasm_f64x2_ge(wasm_f64x2_abs(z), wasm_f64x2_splat(1e-30)));
+}
+
+#define BOTH(k)                                                                                               \
+  {                                                                                                           \
+    const v128_t in = v;                                                                                      \
+    v = wasm_f64x2_add(wasm_f64x2_mul(p##k[0], in), z1##k);                                                   \
+    z1##k = wasm_f64x2_add(wasm_f64x2_sub(wasm_f64x2_mul(p##k[1], in), wasm_f64x2_mul(p##k[3], v)), z2##k);   \
+    z2##k = wasm_f64x2_sub(wasm_f64x2_mul(p##k[2], in), wasm_f64x2_mul(p##k[4], v));                          \
+  }
+
+/* Two chains of three sections on one input, a lane each: `sections` holds the values of both side by side. */
+__attribute__((export_name("twins"))) void twins(v128_t *sections, const float *x, float *first, float *second, int n) {
+  v128_t *p0 = sections, *p1 = p0 + SECTION, *p2 = p1 + SECTION;
+  v128_t z10 = p0[5], z20 = p0[6], z11 = p1[5], z21 = p1[6], z12 = p2[5], z22 = p2[6];
+  for (int i = 0; i < n; i++) {
+    v128_t v = wasm_f64x2_splat(x[i]);
+    BOTH(0) BOTH(1) BOTH(2)
+    first[i] = (float)wasm_f64x2_extract_lane(v, 0);
+    second[i] = (float)wasm_f64x2_extract_lane(v, 1);
+  }
+  p0[5] = hush(z10);
+  p0[6] = hush(z20);
+  p1[5] = hush(z11);
+  p1[6] = hush(z21);
+  p2[5] = hush(z12);
+  p2[6] = hush(z22);
+}
+
 /* Two or three sections one behind the other: the stages of neighbouring samples overlap in the processor. */
 __attribute__((export_name("cascade"))) void cascade(double *sections, int count, const float *x, float *out, int n) {
   if (count == 2) {

@@ -34,10 +34,27 @@ function three(s: Float64Array, t: Float64Array, u: Float64Array, x: Float32Arra
   u[6] = quiet(z);
 }
 
-export const plainFilter: Pick<Kernels, 'cascade'> = {
+const sectionsOf = (chain: Float64Array): [Float64Array, Float64Array, Float64Array] => {
+  const section = (k: number) => chain.subarray(k * SECTION_LENGTH, (k + 1) * SECTION_LENGTH);
+  return [section(0), section(1), chain.length === 3 * SECTION_LENGTH ? section(2) : NOTHING];
+};
+
+/** One of two chains whose values lie side by side. */
+const everyOther = (values: Float64Array, from: 0 | 1): Float64Array =>
+  Float64Array.from({ length: values.length / 2 }, (_, i) => values[2 * i + from] as number);
+
+export const plainFilter: Pick<Kernels, 'cascade' | 'twins'> = {
   cascade(sections, x, out) {
-    const section = (k: number) => sections.subarray(k * SECTION_LENGTH, (k + 1) * SECTION_LENGTH);
-    const third = sections.length === 3 * SECTION_LENGTH ? section(2) : NOTHING;
-    three(section(0), section(1), third, x, out);
+    const [first, second, third] = sectionsOf(sections);
+    three(first, second, third, x, out);
+  },
+  twins(sections, x, ...outs) {
+    outs.forEach((out, k) => {
+      const from = k === 0 ? 0 : 1;
+      const chain = everyOther(sections, from);
+      const [first, second, third] = sectionsOf(chain);
+      three(first, second, third, x, out);
+      for (let i = 0; i < chain.length; i++) sections[2 * i + from] = chain[i] as number;
+    });
   },
 };
