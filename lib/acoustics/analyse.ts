@@ -51,7 +51,9 @@ export async function analyseRecording(
     const decoder = createDecoder({
       onFormat: (format) => clip.begin(format),
       onBlock: (block) => clip.push(block),
-      roomFor: (channel, frames) => clip.kernelsOf(channel).arena.floats(frames),
+      roomFor: (channel, frames) => clip.roomFor(channel, frames),
+      spread16: (bytes, frames, channel, channels, at) =>
+        clip.spread16(bytes, frames, channel, channels, at),
       ...(options.declaredMediaType === undefined ? {} : { declaredMediaType: options.declaredMediaType }),
       ...(options.totalBytes === undefined ? {} : { totalBytes: options.totalBytes }),
     });
@@ -73,6 +75,7 @@ class ClipAnalysis {
   #peaks: PeaksProbe | null = null;
   #identical = true;
   readonly #kernels: Kernels[] = [];
+  readonly #blocks: { room: Float32Array; codes: Int16Array }[] = [];
 
   constructor(private readonly kind: Kernels['kind'] | undefined) {}
 
@@ -80,6 +83,28 @@ class ClipAnalysis {
     const kernels = this.#kernels[channel] ?? takeKernels(this.kind);
     this.#kernels[channel] = kernels;
     return kernels;
+  }
+
+  roomFor(channel: number, frames: number): Float32Array {
+    const { arena } = this.kernelsOf(channel);
+    const room = arena.floats(frames);
+    this.#blocks[channel] = { room, codes: new Int16Array(0) };
+    return room;
+  }
+
+  /** Interleaved 16-bit codes to a channel's block, by its kernels; the codes are copied to where those can read them. */
+  spread16(bytes: Uint8Array, frames: number, channel: number, channels: number, at: number): void {
+    const kernels = this.kernelsOf(channel);
+    const block = this.#blocks[channel];
+    if (!block) throw new Error('a block is asked for before it is filled');
+    const words = frames * channels;
+    if (block.codes.length === 0) {
+      const own = kernels.arena.bytes(2 * BLOCK_FRAMES * channels);
+      block.codes = new Int16Array(own.buffer, own.byteOffset, BLOCK_FRAMES * channels);
+    }
+    const { codes, room } = block;
+    new Uint8Array(codes.buffer, codes.byteOffset, 2 * words).set(bytes.subarray(0, 2 * words));
+    kernels.spread16(codes, channel, channels, frames, room.subarray(at, at + frames));
   }
 
   /** Nothing of the clip is used any more but what `finish` gave. */

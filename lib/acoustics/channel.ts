@@ -58,19 +58,20 @@ export class ChannelAnalysis {
     const mostEvents = Math.ceil(BLOCK_FRAMES / rates.eventsFactor) + 2;
     const mostLow = Math.ceil(mostEvents / rates.lowFactor) + 2;
     const mostDeep = Math.ceil(mostLow / rates.deepFactor) + 2;
-    this.#toEvents = new Decimator(kernels, rates.eventsFactor, BLOCK_FRAMES);
+    // What lies between 2 and 4.4 kHz need not be clean: nobody listens there but for the beginning of a burst.
+    this.#toEvents = new Decimator(kernels, rates.eventsFactor, BLOCK_FRAMES, 12);
     this.#explosive = new ExplosiveProbe(kernels, rates.eventsHz, mostEvents);
     this.#toLow = new Decimator(kernels, rates.lowFactor, mostEvents);
     this.#handling = new HandlingProbe(kernels, rates.lowHz, mostLow);
-    this.#columns = new SpectrumColumns(kernels, rates.lowHz, mostLow, (power, columns) => {
-      this.#picture.push(power, columns);
-      this.#tonal.push(power, columns);
-      this.#bands.pushColumns(power, columns);
+    this.#columns = new SpectrumColumns(kernels, rates.lowHz, mostLow, (columns) => {
+      this.#picture.push(columns);
+      this.#tonal.push(columns);
+      this.#bands.pushColumns(columns);
     });
     const { layout } = this.#columns;
     const mostColumns = Math.ceil(mostLow / layout.hop) + 4;
     this.#picture = new SpectrogramPicture(kernels, layout);
-    this.#tonal = new TonalProbe(kernels, layout, mostColumns);
+    this.#tonal = new TonalProbe(kernels, layout);
     this.#toDeep = new Decimator(kernels, rates.deepFactor, mostLow);
     this.#bands = new BandProbe(kernels, layout, rates.deepHz, { columns: mostColumns, deep: mostDeep });
   }

@@ -138,7 +138,13 @@ export class WavReader implements Reader, RiffListener {
       oddities: [],
     };
     this.#sink = new BlockSink(this.options, audio, encoding === 'float32' || encoding === 'float64');
-    this.#read = sampleReader(encoding, bytesPerSample, channels, this.#walker.bigEndian);
+    const { spread16 } = this.options;
+    this.#read =
+      spread16 && bytesPerSample === 2 && encoding === 'pcm-s16' && !this.#walker.bigEndian
+        ? (bytes, frames, out, at) => {
+            for (let c = 0; c < out.length; c++) spread16(bytes, frames, c, channels, at);
+          }
+        : sampleReader(encoding, bytesPerSample, channels, this.#walker.bigEndian);
     this.#rest = new Uint8Array(bytesPerFrame);
     this.options.onFormat(audio);
   }

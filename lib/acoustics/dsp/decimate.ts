@@ -1,11 +1,13 @@
 import type { Kernels } from '../kernels/types';
 
-/** Taps for each input sample skipped: sets the width of the transition. */
-const TAPS_PER_PHASE = 16;
-
-/** Taps of a low-pass for division by `factor`: windowed sinc (Blackman), pass band to 0.42 of the new rate, gain 1. */
-function lowPassTaps(factor: number): Float32Array {
-  const length = factor * TAPS_PER_PHASE + 1;
+/**
+ * Taps of a low-pass for division by `factor`: windowed sinc (Blackman), gain 1.
+ *
+ * @param tapsPerPhase taps for each input sample skipped: 16 pass to 0.37 of the new rate and stop from 0.63; fewer
+ * have a wider transition (5.5 over their number)
+ */
+function lowPassTaps(factor: number, tapsPerPhase: number): Float32Array {
+  const length = factor * tapsPerPhase + 1;
   const middle = (length - 1) / 2;
   const cutoff = 0.46 / factor;
   const taps = Float64Array.from({ length }, (_, i) => {
@@ -18,10 +20,11 @@ function lowPassTaps(factor: number): Float32Array {
   return Float32Array.from(taps, (tap) => tap / sum);
 }
 
-const made = new Map<number, Float32Array>();
-function tapsOf(factor: number): Float32Array {
-  const taps = made.get(factor) ?? lowPassTaps(factor);
-  made.set(factor, taps);
+const made = new Map<string, Float32Array>();
+function tapsOf(factor: number, tapsPerPhase: number): Float32Array {
+  const key = `${factor} ${tapsPerPhase}`;
+  const taps = made.get(key) ?? lowPassTaps(factor, tapsPerPhase);
+  made.set(key, taps);
   return taps;
 }
 
@@ -43,8 +46,9 @@ export class Decimator {
     private readonly kernels: Kernels,
     readonly factor: number,
     mostSamples: number,
+    tapsPerPhase = 16,
   ) {
-    const taps = factor === 1 ? new Float32Array(1) : tapsOf(factor);
+    const taps = factor === 1 ? new Float32Array(1) : tapsOf(factor, tapsPerPhase);
     this.#length = taps.length;
     // A multiple of four, with zeros at the end.
     this.#taps = kernels.arena.floats(Math.ceil(taps.length / 4) * 4);

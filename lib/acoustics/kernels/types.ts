@@ -36,8 +36,8 @@ export interface Kernels {
   /** Weighed sums of `count` places of x, `step` apart. @param taps length a multiple of 4 */
   dots(taps: Float32Array, x: Float32Array, at: number, step: number, count: number, out: Float32Array): void;
   /**
-   * Largest and smallest of the sound between samples about those of x from `at` on that reach `gate` in magnitude, by
-   * four filters of 12 taps. @param taps tap by tap, four phases each; @param x read from at - 6 to at + n + 6
+   * Largest and smallest of the sound between samples, by four filters of 12 taps, beside those of x from `at` on that
+   * reach `gate` in magnitude and are no smaller than their neighbours. @param taps tap by tap, four phases each; @param x read from at - 6 to at + n + 6
    * @param out raised to what is larger, lowered to what is smaller
    */
   betweenSamples(taps: Float32Array, x: Float32Array, at: number, n: number, gate: number, out: Float32Array): void;
@@ -47,15 +47,13 @@ export interface Kernels {
   twins(sections: Float64Array, x: Float32Array, first: Float32Array, second: Float32Array): void;
   /** |X|^2 of `count` windowed frames that begin `hop` apart, `plan.bins` values a frame. */
   spectra(plan: SpectrumPlan, x: Float32Array, hop: number, count: number, out: Float32Array): void;
-  /** 10 lg(power * scale + least). @param out as long as power */
-  decibels(power: Float32Array, scale: number, least: number, out: Float32Array): void;
-  /** The same as bytes of `step` decibels above `floor`. */
+  /** 10 lg(power * scale + least) as bytes of `step` decibels above `floor`. @param out as long as power */
   shades(power: Float32Array, scale: number, least: number, floor: number, step: number, out: Uint8Array): void;
   /**
    * Local maxima of each row between bins `low` and `high`, no lower than `least`, of whose neighbours within `reach`
-   * bins at least half lie `over` decibels below. @param out row and bin of each; @returns how many
+   * bins more than half lie `over` shades or more below. @param out row and bin of each; @returns how many
    */
-  standouts(db: Float32Array, rows: number, bins: number, search: StandoutSearch, out: Int32Array): number;
+  standouts(shades: Uint8Array, rows: number, bins: number, search: StandoutSearch, out: Int32Array): number;
   /** Sum of bins `from` up to and without `to` of each row. */
   bandSums(power: Float32Array, rows: number, bins: number, from: number, to: number, out: Float32Array): void;
   /** Sums of x[i] x[i + lag] for lags `from` to `to`. */

@@ -30,7 +30,6 @@ interface Exports {
     bins: number,
     out: number,
   ): void;
-  decibels(power: number, n: number, scale: number, least: number, out: number): void;
   shades(
     power: number,
     n: number,
@@ -41,7 +40,7 @@ interface Exports {
     out: number,
   ): void;
   standouts(
-    db: number,
+    shades: number,
     rows: number,
     bins: number,
     low: number,
@@ -115,13 +114,11 @@ export function wasmKernels(): Kernels | null {
         bins,
         out.byteOffset,
       ),
-    decibels: (power, scale, least, out) =>
-      wasm.decibels(power.byteOffset, power.length, scale, least, out.byteOffset),
     shades: (power, scale, least, floor, step, out) =>
       wasm.shades(power.byteOffset, power.length, scale, least, floor, step, out.byteOffset),
-    standouts: (db, rows, bins, { low, high, reach, least, over }, out) =>
+    standouts: (shades, rows, bins, { low, high, reach, least, over }, out) =>
       wasm.standouts(
-        db.byteOffset,
+        shades.byteOffset,
         rows,
         bins,
         low,

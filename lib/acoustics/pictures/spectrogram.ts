@@ -1,82 +1,86 @@
 import type { Kernels } from '../kernels/types';
-import type { ColumnLayout } from '../spectral/columns';
+import { type ColumnLayout, type Columns, FLOOR_DB, STEP_DB } from '../spectral/columns';
 import type { Spectrogram } from '../types';
 
 const MOST_COLUMNS = 4096;
-const FLOOR_DB = -120;
-const STEP_DB = 0.5;
-const LEAST_POWER = 1e-13;
 /** "BKSG", version 1: our own layout, little-endian. */
 const MAGIC = 0x4753_4b42;
 const HEADER_BYTES = 56;
 
+/** How far below the lighter of two shades, by their difference, the shade of their mean power lies. */
+const BELOW_LIGHTER = Uint8Array.from({ length: 256 }, (_, apart) =>
+  Math.round((-10 * Math.log10((1 + 10 ** ((-apart * STEP_DB) / 10)) / 2)) / STEP_DB),
+);
+const meanShade = (a: number, b: number): number =>
+  a > b ? a - (BELOW_LIGHTER[a - b] as number) : b - (BELOW_LIGHTER[b - a] as number);
+
 /**
  * Spectrogram of one channel as bytes of half a decibel; 0 dB is a full-scale sine. A clip too long for the bound has
- * neighbouring columns averaged in power.
+ * neighbouring columns averaged in power, two and two, as often as need be.
  */
 export class SpectrogramPicture {
-  /** Power of the columns so far; the last one may still be gathering. */
-  readonly #data: Float32Array;
+  readonly #shades: Uint8Array;
   #columns = 0;
+  /** Columns of the spectrum in one of the picture: a power of two. */
   #merged = 1;
-  #inColumn = 0;
+  /** Averages that wait for their other half: of one column, of two, of four ... */
+  readonly #halves: (Uint8Array | null)[] = [];
 
   constructor(
-    private readonly kernels: Kernels,
+    kernels: Kernels,
     private readonly layout: ColumnLayout,
   ) {
-    this.#data = kernels.arena.room(MOST_COLUMNS * layout.bins);
+    this.#shades = kernels.arena.bytes(MOST_COLUMNS * layout.bins);
   }
 
-  /** @param power columns of the spectrum */
-  push(power: Float32Array, columns: number): void {
+  push({ shades, columns }: Columns): void {
     const { bins } = this.layout;
     for (let at = 0; at < columns; ) {
       if (this.#merged === 1) {
         const taken = Math.min(columns - at, MOST_COLUMNS - this.#columns);
-        this.#data.set(power.subarray(at * bins, (at + taken) * bins), this.#columns * bins);
+        this.#shades.set(shades.subarray(at * bins, (at + taken) * bins), this.#columns * bins);
         this.#columns += taken;
         at += taken;
-      } else this.#gather(power.subarray(at * bins, ++at * bins));
+      } else this.#gather(shades.slice(at * bins, ++at * bins));
       if (this.#columns === MOST_COLUMNS) this.#merge();
     }
   }
 
-  #gather(column: Float32Array): void {
-    const { bins } = this.layout;
-    const base = this.#columns * bins;
-    if (this.#inColumn === 0) this.#data.set(column, base);
-    else
-      for (let k = 0; k < bins; k++)
-        this.#data[base + k] = (this.#data[base + k] as number) + (column[k] as number);
-    if (++this.#inColumn === this.#merged) this.#settle(this.#merged);
-  }
-
-  #settle(frames: number): void {
-    const { bins } = this.layout;
-    const base = this.#columns * bins;
-    for (let k = 0; k < bins; k++) this.#data[base + k] = (this.#data[base + k] as number) / frames;
+  /** Pairs of columns become one, pairs of pairs one, until a column of the picture is whole. */
+  #gather(column: Uint8Array): void {
+    let whole = column;
+    for (let level = 0; 2 ** level < this.#merged; level++) {
+      const other = this.#halves[level];
+      if (!other) {
+        this.#halves[level] = whole;
+        return;
+      }
+      this.#halves[level] = null;
+      for (let k = 0; k < whole.length; k++) whole[k] = meanShade(other[k] as number, whole[k] as number);
+    }
+    this.#shades.set(whole, this.#columns * this.layout.bins);
     this.#columns++;
-    this.#inColumn = 0;
   }
 
   #merge(): void {
     const { bins } = this.layout;
-    const data = this.#data;
+    const shades = this.#shades;
     for (let c = 0; c < MOST_COLUMNS / 2; c++) {
       for (let to = c * bins, from = 2 * c * bins; to < (c + 1) * bins; to++, from++)
-        data[to] = ((data[from] as number) + (data[from + bins] as number)) / 2;
+        shades[to] = meanShade(shades[from] as number, shades[from + bins] as number);
     }
     this.#columns /= 2;
     this.#merged *= 2;
   }
 
   finish(): Spectrogram {
-    if (this.#inColumn > 0) this.#settle(this.#inColumn);
-    const { bins, size, hop, rateHz, binHz, sineScale } = this.layout;
-    const length = this.#columns * bins;
-    const shades = this.kernels.arena.bytes(length);
-    this.kernels.shades(this.#data.subarray(0, length), sineScale, LEAST_POWER, FLOOR_DB, STEP_DB, shades);
+    // What waits at the end stands for the rest of its column.
+    const rest = this.#halves.findLast((half) => half !== null && half !== undefined);
+    if (rest && this.#columns < MOST_COLUMNS) {
+      this.#shades.set(rest, this.#columns * this.layout.bins);
+      this.#columns++;
+    }
+    const { bins, size, hop, rateHz, binHz } = this.layout;
     const columnSeconds = (hop * this.#merged) / rateHz;
     return {
       columns: this.#columns,
@@ -86,7 +90,7 @@ export class SpectrogramPicture {
       binHz,
       floorDb: FLOOR_DB,
       stepDb: STEP_DB,
-      data: shades.slice(),
+      data: this.#shades.slice(0, this.#columns * bins),
     };
   }
 }

@@ -5,7 +5,7 @@ import type { Kernels } from '../kernels/types';
 import { ACTIVITY_BAND_HZ, ACTIVITY_BLOCK_SECONDS, type ActivityMeasures, activityOf } from '../time/activity';
 import type { Hum, Rate } from '../types';
 import { BandLevels, Means } from './bandLevels';
-import type { ColumnLayout } from './columns';
+import type { ColumnLayout, Columns } from './columns';
 import { findHum } from './hum';
 import { rateOf } from './rates';
 
@@ -120,7 +120,7 @@ export class BandProbe {
     this.#heart = new HeartEnvelope(kernels, deepHz, most.deep);
   }
 
-  pushColumns(power: Float32Array, columns: number): void {
+  pushColumns({ power, columns }: Columns): void {
     this.#activity.push(this.#levels.of(this.#bands.activity, power, columns));
     const note = this.#levels.of(this.#bands.note, power, columns);
     for (let i = 0; i < columns; i++) this.#noteSum += note[i] as number;
@@ -138,9 +138,11 @@ export class BandProbe {
 
   finish(seconds: number, minimumSecondsForRates: number): BandMeasures {
     const noteRms = this.#columns > 0 ? Math.sqrt(this.#noteSum / this.#columns) : 0;
+    const deep = this.kernels.arena.floats(this.#deep.length);
+    deep.set(this.#deep.view());
     const still = {
       activity: activityOf(this.#activity.values.view()),
-      hum: findHum(this.#deep.view(), this.deepHz, noteRms),
+      hum: findHum(this.kernels, deep, this.deepHz, noteRms),
     };
     if (seconds < minimumSecondsForRates)
       return { ...still, breathRate: null, breaths: null, heartRate: null };

@@ -17,8 +17,18 @@ export interface ColumnLayout {
   sineScale: number;
 }
 
-/** Some columns of the spectrum, one after another; the array is written over by the next. */
-export type ColumnListener = (power: Float32Array, columns: number) => void;
+/** Shades of the spectrum: bytes of half a decibel from here on, relative to a full-scale sine. */
+export const FLOOR_DB = -120;
+export const STEP_DB = 0.5;
+const LEAST_POWER = 1e-13;
+
+/** Some columns of the spectrum, one after another; the arrays are written over by the next. */
+export interface Columns {
+  columns: number;
+  /** |X|^2, `bins` values a column. */
+  power: Float32Array;
+  shades: Uint8Array;
+}
 
 /**
  * Spectrum over time of one channel: Hann window of about 64 ms, three quarters overlapping, 0 to 2 kHz or Nyquist.
@@ -29,6 +39,7 @@ export class SpectrumColumns {
   readonly #plan: SpectrumPlan;
   readonly #queue: Float32Array;
   readonly #power: Float32Array;
+  readonly #shades: Uint8Array;
   #queued = 0;
   #columns = 0;
 
@@ -37,7 +48,7 @@ export class SpectrumColumns {
     private readonly kernels: Kernels,
     rateHz: number,
     mostSamples: number,
-    private readonly onColumns: ColumnListener,
+    private readonly onColumns: (columns: Columns) => void,
   ) {
     const size = 2 ** Math.max(5, Math.round(Math.log2(rateHz * WINDOW_SECONDS)));
     const hop = size / 4;
@@ -55,7 +66,9 @@ export class SpectrumColumns {
     };
     this.#plan = planSpectrum(kernels.arena, size, bins);
     this.#queue = kernels.arena.floats(mostSamples + size);
-    this.#power = kernels.arena.floats((Math.ceil(mostSamples / hop) + 4) * bins);
+    const most = (Math.ceil(mostSamples / hop) + 4) * bins;
+    this.#power = kernels.arena.floats(most);
+    this.#shades = kernels.arena.bytes(most);
   }
 
   push(samples: Float32Array): void {
@@ -68,7 +81,9 @@ export class SpectrumColumns {
     this.#queue.copyWithin(0, columns * hop, this.#queued);
     this.#queued -= columns * hop;
     this.#columns += columns;
-    this.onColumns(this.#power.subarray(0, columns * bins), columns);
+    const power = this.#power.subarray(0, columns * bins);
+    this.kernels.shades(power, this.layout.sineScale, LEAST_POWER, FLOOR_DB, STEP_DB, this.#shades);
+    this.onColumns({ columns, power, shades: this.#shades.subarray(0, columns * bins) });
   }
 
   /** A clip shorter than one window still has a column: it is filled up with silence. */

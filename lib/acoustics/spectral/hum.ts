@@ -1,7 +1,8 @@
-import { powerSpectrumOf } from '../dsp/fft';
 import { percentile, percentiles } from '../dsp/percentile';
 import { hann } from '../kernels/plan';
+import type { Kernels } from '../kernels/types';
 import type { Hum } from '../types';
+import { zoomSpectrum } from './zoom';
 
 const MAINS_HZ = [50, 60] as const;
 /** EN 50160: within 1 % of the nominal frequency for 99.5 % of a year in interconnected systems (read second hand). */
@@ -10,6 +11,8 @@ const SHORTEST_SECONDS = 4;
 const LEAST_PROMINENCE_DB = 15;
 const LEAST_STEADINESS = 0.55;
 const WINDOW_SECONDS = 0.25;
+/** What a line is held against lies this far from it. */
+const NEIGHBOURS_HZ = { from: 2, to: 8 };
 const HARMONICS = [2, 3, 5] as const;
 
 interface Line {
@@ -28,22 +31,24 @@ interface Line {
  * the 25th percentile, not the peak of the spectrum. Not seen: hum more than about 20 dB below loud breath, and clips
  * under 4 s. Goertzel 1958 for the demodulation's ancestor (from memory).
  *
- * @param samples the clip divided to a rate above 2 x 320 Hz
+ * @param samples the clip divided to a rate above 2 x 320 Hz, in the kernels' arena
  * @param bandRms RMS of the 100-600 Hz band, full scale
  */
-export function findHum(samples: Float32Array, rateHz: number, bandRms: number): Hum | null {
+export function findHum(
+  kernels: Kernels,
+  samples: Float32Array,
+  rateHz: number,
+  bandRms: number,
+): Hum | null {
   if (samples.length < SHORTEST_SECONDS * rateHz) return null;
-  const spectrum = longSpectrum(samples);
-  const found = MAINS_HZ.map((nominal) => lineNear(samples, rateHz, spectrum, nominal))
-    .filter((line): line is Line => line !== null && isHum(line))
+  const lineAt = (hz: number) => lineNear(kernels, samples, rateHz, hz);
+  const found = MAINS_HZ.map(lineAt)
+    .filter((line): line is Line => line !== null)
     .sort((a, b) => b.amplitude - a.amplitude)[0];
   if (!found) return null;
   const harmonicsHz = HARMONICS.map((n) => found.frequencyHz * n)
     .filter((hz) => hz < rateHz * 0.45)
-    .filter((hz) => {
-      const line = lineNear(samples, rateHz, spectrum, hz);
-      return line !== null && isHum(line);
-    });
+    .filter((hz) => lineAt(hz) !== null);
   return {
     frequencyHz: found.frequencyHz,
     relativeDb: bandRms > 0 ? 20 * Math.log10(found.amplitude / Math.SQRT2 / bandRms) : 0,
@@ -53,63 +58,35 @@ export function findHum(samples: Float32Array, rateHz: number, bandRms: number):
   };
 }
 
-const isHum = (line: Line): boolean => line.steadiness >= LEAST_STEADINESS;
-
-interface LongSpectrum {
-  power: Float64Array;
-  size: number;
-}
-
-function longSpectrum(samples: Float32Array): LongSpectrum {
-  const size = 2 ** Math.ceil(Math.log2(samples.length));
-  const frame = new Float64Array(size);
-  let mean = 0;
-  for (let i = 0; i < samples.length; i++) mean += samples[i] as number;
-  mean /= samples.length;
-  // Hann over the length of the clip; its cosine by turning, which is as exact as it need be.
-  const turn = (2 * Math.PI) / samples.length;
-  const [c, s] = [Math.cos(turn), Math.sin(turn)];
-  let [cos, sin] = [1, 0];
-  for (let i = 0; i < samples.length; i++) {
-    frame[i] = ((samples[i] as number) - mean) * (0.5 - 0.5 * cos);
-    [cos, sin] = [c * cos - s * sin, s * cos + c * sin];
-  }
-  return { power: powerSpectrumOf(frame), size };
-}
-
+/** The line within 1 % of a frequency, where one stands out and stands still. */
 function lineNear(
+  kernels: Kernels,
   samples: Float32Array,
   rateHz: number,
-  { power, size }: LongSpectrum,
   nominalHz: number,
 ): Line | null {
-  const binHz = rateHz / size;
-  const bin = (hz: number) => Math.round(hz / binHz);
-  const low = bin(nominalHz * (1 - SEARCH));
-  const high = bin(nominalHz * (1 + SEARCH));
-  if (high + 1 >= power.length) return null;
-  let peak = low;
-  for (let k = low; k <= high; k++) if ((power[k] as number) > (power[peak] as number)) peak = k;
-  const below = power.subarray(bin(nominalHz - 8), bin(nominalHz - 2) + 1);
-  const above = power.subarray(bin(nominalHz + 2), bin(nominalHz + 8) + 1);
-  const around = new Float64Array(below.length + above.length);
-  around.set(below);
-  around.set(above, below.length);
-  const median = percentile(around, 0.5);
-  const prominenceDb = 10 * Math.log10((power[peak] as number) / Math.max(median, 1e-30));
+  const zoom = zoomSpectrum(kernels, samples, rateHz, nominalHz);
+  if (!zoom) return null;
+  const { power, binHz } = zoom;
+  const at = (offset: number) => power[(offset + power.length) % power.length] as number;
+  const bins = (hz: number) => Math.round(hz / binHz);
+  const reach = Math.max(1, bins(SEARCH * nominalHz));
+  let peak = 0;
+  for (let k = -reach; k <= reach; k++) if (at(k) > at(peak)) peak = k;
+  const around: number[] = [];
+  for (let k = bins(NEIGHBOURS_HZ.from); k <= bins(NEIGHBOURS_HZ.to); k++) around.push(at(k), at(-k));
+  const prominenceDb = 10 * Math.log10(at(peak) / Math.max(percentile(around, 0.5), 1e-30));
   // Most clips have no hum: what follows costs more than all before it.
-  if (prominenceDb < LEAST_PROMINENCE_DB) return null;
+  if (!(prominenceDb >= LEAST_PROMINENCE_DB)) return null;
   // The true frequency between bins, by a parabola through the logarithms of three of them.
-  const [a, b, c] = [-1, 0, 1].map((d) => Math.log(Math.max(power[peak + d] ?? 1e-30, 1e-30))) as [
-    number,
-    number,
-    number,
-  ];
+  const log = (offset: number) => Math.log(Math.max(at(offset), 1e-30));
+  const [a, b, c] = [log(peak - 1), log(peak), log(peak + 1)];
   const shift = a - 2 * b + c === 0 ? 0 : (0.5 * (a - c)) / (a - 2 * b + c);
-  const frequencyHz = (peak + Math.max(-0.5, Math.min(0.5, shift))) * binHz;
+  const frequencyHz = nominalHz + (peak + Math.max(-0.5, Math.min(0.5, shift))) * binHz;
   const amplitudes = demodulate(samples, rateHz, frequencyHz);
   const [low10, low25, middle] = percentiles(amplitudes, [0.1, 0.25, 0.5]) as [number, number, number];
-  return { frequencyHz, steadiness: middle > 0 ? low10 / middle : 0, amplitude: low25 };
+  const steadiness = middle > 0 ? low10 / middle : 0;
+  return steadiness >= LEAST_STEADINESS ? { frequencyHz, steadiness, amplitude: low25 } : null;
 }
 
 /** Amplitude of a line in successive 0.25 s Hann windows, half overlapping. */

@@ -1,18 +1,19 @@
 import type { Kernels } from '../kernels/types';
 import type { Tonal } from '../types';
-import type { ColumnLayout } from './columns';
+import { type ColumnLayout, type Columns, FLOOR_DB, STEP_DB } from './columns';
 
 const LEAST_PROMINENCE_DB = 10;
 const NEIGHBOURS_HZ = 150;
 const RANGE_HZ = { low: 80, high: 1600 };
 /** Nothing below this level is told. */
 const LOWEST_DBFS = -85;
-const LEAST_POWER = 1e-12;
 /** Maxima of one push; a sound with more is noise. */
 const MOST_STANDOUTS = 8192;
 /** Anything shorter is left to the ear. */
 const SHORTEST_SECONDS = 0.08;
 const MOST = 200;
+
+const inDb = (power: number): number => 10 * Math.log10(power + 1e-12);
 
 interface Peak {
   bin: number;
@@ -37,64 +38,59 @@ interface Track {
  */
 export class TonalProbe {
   readonly #search: { low: number; high: number; reach: number; least: number; over: number };
-  readonly #db: Float32Array;
   readonly #found: Int32Array;
   readonly #sorted: Float32Array;
   #tracks: Track[] = [];
   readonly #done: Track[] = [];
   #column = 0;
 
-  /** @param mostColumns that a push will bring */
   constructor(
     private readonly kernels: Kernels,
     private readonly layout: ColumnLayout,
-    mostColumns: number,
   ) {
     const { binHz, bins } = layout;
     this.#search = {
       low: Math.max(2, Math.ceil(RANGE_HZ.low / binHz)),
       high: Math.min(bins - 2, Math.floor(RANGE_HZ.high / binHz)),
       reach: Math.max(3, Math.round(NEIGHBOURS_HZ / binHz)),
-      least: LOWEST_DBFS,
-      over: LEAST_PROMINENCE_DB,
+      least: Math.round((LOWEST_DBFS - FLOOR_DB) / STEP_DB),
+      over: Math.round(LEAST_PROMINENCE_DB / STEP_DB),
     };
-    this.#db = kernels.arena.floats(mostColumns * bins);
     this.#found = kernels.arena.ints(2 * MOST_STANDOUTS);
     this.#sorted = new Float32Array(2 * this.#search.reach + 1);
   }
 
-  /** @param power columns of the spectrum */
-  push(power: Float32Array, columns: number): void {
-    const { bins, sineScale } = this.layout;
-    const db = this.#db.subarray(0, power.length);
-    this.kernels.decibels(power, sineScale, LEAST_POWER, db);
-    const count = this.kernels.standouts(db, columns, bins, this.#search, this.#found);
+  push({ power, shades, columns }: Columns): void {
+    const { bins } = this.layout;
+    const count = this.kernels.standouts(shades, columns, bins, this.#search, this.#found);
     for (let row = 0, at = 0; row < columns; row++) {
       const peaks: Peak[] = [];
       for (; at < count && this.#found[2 * at] === row; at++)
-        peaks.push(this.#peak(db.subarray(row * bins, (row + 1) * bins), this.#found[2 * at + 1] as number));
+        peaks.push(this.#peak(power, shades, row * bins, this.#found[2 * at + 1] as number));
       if (peaks.length > 0 || this.#tracks.length > 0) this.#link(peaks);
       this.#column++;
     }
   }
 
-  #peak(db: Float32Array, k: number): Peak {
+  /** @param base where the column begins; @param found bin of a maximum of the shades, whose neighbour may be as light */
+  #peak(power: Float32Array, shades: Uint8Array, base: number, found: number): Peak {
+    const { bins, sineScale, binHz } = this.layout;
     const { reach } = this.#search;
-    const [a, here, c] = [db[k - 1] as number, db[k] as number, db[k + 1] as number];
+    const k = (power[base + found - 1] as number) > (power[base + found] as number) ? found - 1 : found;
+    const a = inDb((power[base + k - 1] as number) * sineScale);
+    const here = inDb((power[base + k] as number) * sineScale);
+    const c = inDb((power[base + k + 1] as number) * sineScale);
     const shift = a - 2 * here + c === 0 ? 0 : (0.5 * (a - c)) / (a - 2 * here + c);
-    return {
-      bin: k,
-      hz: (k + shift) * this.layout.binHz,
-      prominence: here - this.#median(db, Math.max(1, k - reach), Math.min(db.length, k + reach + 1)),
-    };
+    const median = this.#median(shades, base + Math.max(1, k - reach), base + Math.min(bins, k + reach + 1));
+    return { bin: k, hz: (k + shift) * binHz, prominence: here - (FLOOR_DB + STEP_DB * median) };
   }
 
   /** By insertion: two dozen values, often. */
-  #median(db: Float32Array, from: number, to: number): number {
+  #median(shades: Uint8Array, from: number, to: number): number {
     const sorted = this.#sorted;
     let n = 0;
     for (let i = from; i < to; i++) {
-      const value = db[i] as number;
+      const value = shades[i] as number;
       let at = n++;
       while (at > 0 && (sorted[at - 1] as number) > value) {
         sorted[at] = sorted[at - 1] as number;

@@ -1,5 +1,4 @@
 import type { Lookaround } from '../dsp/lookaround';
-import { percentile } from '../dsp/percentile';
 import type { Kernels } from '../kernels/types';
 import type { Span } from '../types';
 
@@ -38,7 +37,6 @@ export class SpikeProbe {
   #mean = 0;
   #sum = 0;
   #n = 0;
-  readonly #bends = new Float64Array(2 * REACH);
 
   readonly #runs: Float32Array;
 
@@ -125,13 +123,15 @@ export class SpikeProbe {
     if (limit <= this.step / 2) return false;
     let n = 0;
     let sum = 0;
+    let below = 0;
     for (let k = i - REACH + 1; k < i + REACH - 1; k++) {
       if (k > i - OWN && k < i + width - 1 + OWN) continue;
       const bend = Math.abs((x[k] as number) - ((x[k - 1] as number) + (x[k + 1] as number)) / 2);
       sum += bend;
-      this.#bends[n++] = bend;
+      if (bend < limit) below++;
+      n++;
     }
-    return sum / n / 2 < limit && percentile(this.#bends.subarray(0, n), 0.5) < limit;
+    return sum / n / 2 < limit && below > n / 2;
   }
 
   #note(spike: Spike): void {

@@ -1,7 +1,7 @@
 /* Second-order sections, transposed direct form II, in double precision. Plain twin: ../plain/filter.ts. */
 #include <wasm_simd128.h>
 
-/* A section is b0 b1 b2 a1 a2 z1 z2. */
+/* A section is b0 b1 b2 a1 a2 z1 z2. What does not wait for the output is added first: the sum is the longest wait. */
 enum { SECTION = 7 };
 
 static inline double quiet(double z) { return z < 1e-30 && z > -1e-30 ? 0 : z; }
@@ -10,7 +10,7 @@ static inline double quiet(double z) { return z < 1e-30 && z > -1e-30 ? 0 : z; }
   {                                                        \
     const double in = v;                                   \
     v = b0_##k * in + z1_##k;                              \
-    z1_##k = b1_##k * in - a1_##k * v + z2_##k;            \
+    z1_##k = (b1_##k * in + z2_##k) - a1_##k * v;          \
     z2_##k = b2_##k * in - a2_##k * v;                     \
   }
 #define LOAD(k)                                                                                       \
@@ -29,7 +29,7 @@ static inline v128_t hush(v128_t z) {
   {                                                                                                           \
     const v128_t in = v;                                                                                      \
     v = wasm_f64x2_add(wasm_f64x2_mul(p##k[0], in), z1##k);                                                   \
-    z1##k = wasm_f64x2_add(wasm_f64x2_sub(wasm_f64x2_mul(p##k[1], in), wasm_f64x2_mul(p##k[3], v)), z2##k);   \
+    z1##k = wasm_f64x2_sub(wasm_f64x2_add(wasm_f64x2_mul(p##k[1], in), z2##k), wasm_f64x2_mul(p##k[3], v));   \
     z2##k = wasm_f64x2_sub(wasm_f64x2_mul(p##k[2], in), wasm_f64x2_mul(p##k[4], v));                          \
   }
 

@@ -170,13 +170,15 @@ __attribute__((export_name("magnitudes"))) void magnitudes(const float *x, int c
 
 /*
  * Largest and smallest of the sound between samples, by four polyphase filters of 12 taps; only about samples of at
- * least `gate`. taps: 12 vectors, one lane a phase. x is read from at - 6 to at + n + 5.
+ * least `gate` that are no smaller than their neighbours. taps: 12 vectors, one lane a phase. x is read from at - 6 to at + n + 5.
  */
 __attribute__((export_name("betweenSamples"))) void betweenSamples(const float *taps, const float *x, int n, float gate, float *out) {
   v128_t high = wasm_f32x4_splat(out[0]), low = wasm_f32x4_splat(out[1]);
   for (int i = 0; i < n; i++) {
-    const float here = x[i];
-    if (here < gate && -here < gate) continue;
+    const float here = x[i] < 0 ? -x[i] : x[i];
+    if (here < gate) continue;
+    const float before = x[i - 1] < 0 ? -x[i - 1] : x[i - 1], next = x[i + 1] < 0 ? -x[i + 1] : x[i + 1];
+    if (here < before || here < next) continue;
     for (int side = -1; side <= 0; side++) {
       const float *from = x + i + side - 5;
       v128_t sum = wasm_f32x4_mul(wasm_v128_load(taps), wasm_f32x4_splat(from[0]));

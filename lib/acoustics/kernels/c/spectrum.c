@@ -127,14 +127,7 @@ static inline v128_t log2of(v128_t x) {
 
 static const float DB_PER_OCTAVE = 3.0102999566f;
 
-/* 10 lg (power * scale + least); n is rounded up to a multiple of 4. */
-__attribute__((export_name("decibels"))) void decibels(const float *power, int n, float scale, float least, float *out) {
-  const v128_t by = wasm_f32x4_splat(scale), plus = wasm_f32x4_splat(least), db = wasm_f32x4_splat(DB_PER_OCTAVE);
-  for (int i = 0; i < n; i += 4)
-    wasm_v128_store(out + i, MUL(db, log2of(ADD(MUL(wasm_v128_load(power + i), by), plus))));
-}
-
-/* As bytes of `step` decibels above `floor`; n is rounded up to a multiple of 16. */
+/* 10 lg (power * scale + least) as bytes of `step` decibels above `floor`; n is rounded up to a multiple of 16. */
 __attribute__((export_name("shades"))) void shades(const float *power, int n, float scale, float least, float floor,
                                                    float step, unsigned char *out) {
   const v128_t by = wasm_f32x4_splat(scale), plus = wasm_f32x4_splat(least);
@@ -148,35 +141,41 @@ __attribute__((export_name("shades"))) void shades(const float *power, int n, fl
   }
 }
 
+static inline int atMost(const unsigned char *shades, int from, int to, v128_t limit) {
+  int count = 0;
+  for (int i = from; i < to; i += 16) {
+    int below = wasm_i8x16_bitmask(wasm_u8x16_le(wasm_v128_load(shades + i), limit));
+    if (to - i < 16) below &= (1 << (to - i)) - 1;
+    count += __builtin_popcount(below);
+  }
+  return count;
+}
+
 /*
- * Local maxima of each row between bins `low` and `high`, no lower than `least`, with at least half of the row within
- * `reach` bins `over` decibels below. Writes row and bin; returns how many.
+ * Local maxima of each row between bins `low` and `high`, no lower than `least`, of whose neighbours within `reach` bins
+ * more than half lie `over` shades or more below. Writes row and bin; returns how many.
  */
-__attribute__((export_name("standouts"))) int standouts(const float *db, int rows, int bins, int low, int high, int reach,
-                                                        float least, float over, int *out, int most) {
+__attribute__((export_name("standouts"))) int standouts(const unsigned char *shades, int rows, int bins, int low, int high,
+                                                        int reach, int least, int over, int *out, int most) {
+  const v128_t lowest = wasm_i8x16_splat(least);
   int found = 0;
-  for (int row = 0; row < rows; row++, db += bins) {
-    for (int k = low; k <= high; k++) {
-      const float here = db[k];
-      if (here < least || here < db[k - 1] || here <= db[k + 1]) continue;
-      const int from = k - reach < 1 ? 1 : k - reach, to = k + reach + 1 > bins ? bins : k + reach + 1;
-      const float limit = here - over;
-      const v128_t bound = wasm_f32x4_splat(limit);
-      v128_t count = wasm_i32x4_splat(0);
-      int i = from;
-      /* Most maxima have nothing so far below them: half of the way tells. */
-      const int enough = from + ((to - from + 7) / 8) * 4;
-      for (; i < enough; i += 4) count = wasm_i32x4_sub(count, wasm_f32x4_le(wasm_v128_load(db + i), bound));
-      if (to - i <= (to - from) / 2 && !wasm_v128_any_true(count)) continue;
-      for (; i + 4 <= to; i += 4) count = wasm_i32x4_sub(count, wasm_f32x4_le(wasm_v128_load(db + i), bound));
-      int c = wasm_i32x4_extract_lane(count, 0) + wasm_i32x4_extract_lane(count, 1) +
-              wasm_i32x4_extract_lane(count, 2) + wasm_i32x4_extract_lane(count, 3);
-      for (; i < to; i++) c += db[i] <= limit;
-      if (c <= (to - from) / 2) continue;
-      if (found == most) return found;
-      out[2 * found] = row;
-      out[2 * found + 1] = k;
-      found++;
+  for (int row = 0; row < rows; row++, shades += bins) {
+    for (int at = low; at <= high; at += 16) {
+      const v128_t here = wasm_v128_load(shades + at);
+      int maxima = wasm_i8x16_bitmask(wasm_v128_and(
+          wasm_u8x16_ge(here, lowest), wasm_v128_and(wasm_u8x16_ge(here, wasm_v128_load(shades + at - 1)),
+                                                     wasm_u8x16_gt(here, wasm_v128_load(shades + at + 1)))));
+      if (high + 1 - at < 16) maxima &= (1 << (high + 1 - at)) - 1;
+      for (; maxima; maxima &= maxima - 1) {
+        const int k = at + __builtin_ctz(maxima);
+        const int from = k - reach < 1 ? 1 : k - reach, to = k + reach + 1 > bins ? bins : k + reach + 1;
+        if (shades[k] < over) continue;
+        if (atMost(shades, from, to, wasm_i8x16_splat(shades[k] - over)) <= (to - from) / 2) continue;
+        if (found == most) return found;
+        out[2 * found] = row;
+        out[2 * found + 1] = k;
+        found++;
+      }
     }
   }
   return found;

@@ -16,13 +16,13 @@ function three(s: Float64Array, t: Float64Array, u: Float64Array, x: Float32Arra
   for (let i = 0; i < x.length; i++) {
     const x1 = x[i] as number;
     const x2 = a0 * x1 + p;
-    p = a1 * x1 - a3 * x2 + q;
+    p = a1 * x1 + q - a3 * x2;
     q = a2 * x1 - a4 * x2;
     const x3 = b0 * x2 + r;
-    r = b1 * x2 - b3 * x3 + v;
+    r = b1 * x2 + v - b3 * x3;
     v = b2 * x2 - b4 * x3;
     const y = c0 * x3 + w;
-    w = c1 * x3 - c3 * y + z;
+    w = c1 * x3 + z - c3 * y;
     z = c2 * x3 - c4 * y;
     out[i] = y;
   }

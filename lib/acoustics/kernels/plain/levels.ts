@@ -117,7 +117,8 @@ function betweenSamples(
   let high = out[0] as number;
   let low = out[1] as number;
   for (let i = from; i < from + n; i++) {
-    if (Math.abs(x[i] as number) < gate) continue;
+    const here = Math.abs(x[i] as number);
+    if (here < gate || here < Math.abs(x[i - 1] as number) || here < Math.abs(x[i + 1] as number)) continue;
     for (let at = i - 6; at <= i - 5; at++) {
       for (let phase = 0; phase < 4; phase++) {
         let sum = 0;

@@ -1,7 +1,7 @@
 import type { SpectrumPlan } from '../plan';
 import type { Kernels } from '../types';
 
-type Spectrum = Pick<Kernels, 'spectra' | 'decibels' | 'shades' | 'standouts' | 'bandSums'>;
+type Spectrum = Pick<Kernels, 'spectra' | 'shades' | 'standouts' | 'bandSums'>;
 
 /** Complex FFT in place (Cooley and Tukey 1965): z holds re and im in turn, in bit-reversed order. */
 function transform(z: Float32Array, w: Float32Array, half: number): void {
@@ -110,29 +110,26 @@ function inDecibels(x: number): number {
 
 export const plainSpectrum: Spectrum = {
   spectra,
-  decibels(power, scale, least, out) {
-    for (let i = 0; i < power.length; i++) out[i] = inDecibels((power[i] as number) * scale + least);
-  },
   shades(power, scale, least, floor, step, out) {
     for (let i = 0; i < power.length; i++) {
       const shade = Math.round((inDecibels((power[i] as number) * scale + least) - floor) / step);
       out[i] = shade < 0 ? 0 : shade > 255 ? 255 : shade;
     }
   },
-  standouts(db, rows, bins, { low, high, reach, least, over }, out) {
+  standouts(shades, rows, bins, { low, high, reach, least, over }, out) {
     const most = out.length >> 1;
     let found = 0;
     for (let row = 0; row < rows; row++) {
       const base = row * bins;
       for (let k = low; k <= high; k++) {
-        const here = db[base + k] as number;
-        if (here < least || here < (db[base + k - 1] as number) || here <= (db[base + k + 1] as number))
+        const here = shades[base + k] as number;
+        if (here < least || here < (shades[base + k - 1] as number) || here <= (shades[base + k + 1] as number))
           continue;
         const from = base + Math.max(1, k - reach);
         const to = base + Math.min(bins, k + reach + 1);
-        const limit = Math.fround(here - over);
+        const limit = here - over;
         let below = 0;
-        for (let i = from; i < to; i++) if ((db[i] as number) <= limit) below++;
+        for (let i = from; i < to; i++) if ((shades[i] as number) <= limit) below++;
         if (below <= (to - from) >> 1) continue;
         if (found === most) return found;
         out[2 * found] = row;
