@@ -62,7 +62,10 @@ export class ChannelAnalysis {
     this.#toEvents = new Decimator(kernels, rates.eventsFactor, BLOCK_FRAMES, 12);
     this.#explosive = new ExplosiveProbe(kernels, rates.eventsHz, mostEvents);
     this.#toLow = new Decimator(kernels, rates.lowFactor, mostEvents);
-    this.#handling = new HandlingProbe(kernels, rates.lowHz, mostLow);
+    this.#handling = new HandlingProbe(kernels, rates.deepHz, rates.eventsHz, {
+      deep: mostDeep,
+      events: mostEvents,
+    });
     this.#columns = new SpectrumColumns(kernels, rates.lowHz, mostLow, (columns) => {
       this.#picture.push(columns);
       this.#tonal.push(columns);
@@ -84,11 +87,12 @@ export class ChannelAnalysis {
     this.#truePeak.look(Math.max(this.#levels.max, -this.#levels.min));
     this.#bandwidth.push(samples);
     const events = this.#toEvents.push(samples);
-    this.#explosive.push(events);
+    this.#handling.pushHigh(this.#explosive.push(events));
     const low = this.#toLow.push(events);
-    this.#handling.push(low);
     this.#columns.push(low);
-    this.#bands.pushDeep(this.#toDeep.push(low));
+    const deep = this.#toDeep.push(low);
+    this.#handling.pushDeep(deep);
+    this.#bands.pushDeep(deep);
   }
 
   finish(durationSeconds: number, minimumSecondsForRates: number) {

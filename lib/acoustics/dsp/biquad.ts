@@ -28,6 +28,9 @@ export const highPass = (cutoffHz: number, sampleRateHz: number): Section =>
 export const lowPass = (cutoffHz: number, sampleRateHz: number): Section =>
   passFilter('low', cutoffHz, sampleRateHz);
 
+/** A section that changes nothing. */
+export const PASS_ALL: Section = [1, 0, 0, 0, 0];
+
 /**
  * Two or three sections one behind the other, with their state. It starts as if its first sample had stood for ever
  * before, so that an offset makes no step.

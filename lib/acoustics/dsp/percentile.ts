@@ -11,22 +11,51 @@ export function percentile(
   return percentiles(values, [fraction])[0] as number;
 }
 
-/** Several at the price of one sorting. */
+/** Several at once. The fractions in rising order cost least. */
 export function percentiles(
   values: Float32Array | Float64Array | readonly number[],
   fractions: readonly number[],
 ): number[] {
-  // A sorted copy keeps its kind: typed arrays sort by value.
-  const sorted = Array.isArray(values)
-    ? Float64Array.from(values).sort()
-    : (values as Float32Array | Float64Array).slice().sort();
+  const own = Float64Array.from(values as ArrayLike<number>);
   return fractions.map((fraction) => {
-    if (sorted.length === 0) return Number.NaN;
-    const at = (sorted.length - 1) * fraction;
+    if (own.length === 0) return Number.NaN;
+    const at = (own.length - 1) * fraction;
     const low = Math.floor(at);
-    const high = Math.min(sorted.length - 1, low + 1);
-    return (sorted[low] as number) + ((sorted[high] as number) - (sorted[low] as number)) * (at - low);
+    select(own, low);
+    const here = own[low] as number;
+    if (at === low) return here;
+    // What follows the selected one is no smaller: the next is the least of it.
+    let next = own[low + 1] as number;
+    for (let i = low + 2; i < own.length; i++) if ((own[i] as number) < next) next = own[i] as number;
+    return here + (next - here) * (at - low);
   });
+}
+
+/**
+ * Put the value of a rank where sorting would put it, nothing larger before and nothing smaller behind it (Hoare's
+ * selection, 1961).
+ */
+function select(values: Float64Array, rank: number): void {
+  let left = 0;
+  let right = values.length - 1;
+  while (left < right) {
+    const pivot = values[(left + right) >> 1] as number;
+    // Nothing compares to NaN: leave such values where they are.
+    if (pivot !== pivot) return;
+    let i = left;
+    let j = right;
+    while (i <= j) {
+      while ((values[i] as number) < pivot) i++;
+      while ((values[j] as number) > pivot) j--;
+      if (i > j) break;
+      const kept = values[i] as number;
+      values[i++] = values[j] as number;
+      values[j--] = kept;
+    }
+    if (rank <= j) right = j;
+    else if (rank >= i) left = i;
+    else return;
+  }
 }
 
 /** A growing Float32Array: what a long clip needs of memory is what it has used. */

@@ -51,7 +51,8 @@ export interface Kernels {
   shades(power: Float32Array, scale: number, least: number, floor: number, step: number, out: Uint8Array): void;
   /**
    * Local maxima of each row between bins `low` and `high`, no lower than `least`, of whose neighbours within `reach`
-   * bins more than half lie `over` shades or more below. @param out row and bin of each; @returns how many
+   * bins more than half lie `over` shades or more below. @param out of each its row, its bin, and the median shade within
+   * reach; @returns how many
    */
   standouts(shades: Uint8Array, rows: number, bins: number, search: StandoutSearch, out: Int32Array): number;
   /** Sum of bins `from` up to and without `to` of each row. */

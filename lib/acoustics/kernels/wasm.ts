@@ -127,7 +127,7 @@ export function wasmKernels(): Kernels | null {
         least,
         over,
         out.byteOffset,
-        out.length >> 1,
+        Math.floor(out.length / 3),
       ),
     bandSums: (power, rows, bins, from, to, out) =>
       wasm.bandSums(power.byteOffset, rows, bins, from, to, out.byteOffset),

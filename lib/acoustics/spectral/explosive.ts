@@ -30,6 +30,7 @@ export class ExplosiveProbe {
   readonly #filter: FilterChain;
   readonly #block: number;
   readonly #found: Explosive[] = [];
+  readonly #filtered: Float32Array;
   readonly #work: Float32Array;
   readonly #largest: Float32Array;
   #kept = 0;
@@ -43,15 +44,21 @@ export class ExplosiveProbe {
   ) {
     this.#filter = new FilterChain(kernels, [highPass(HIGH_PASS_HZ, rateHz), highPass(HIGH_PASS_HZ, rateHz)]);
     this.#block = Math.round(CONTEXT_SECONDS * rateHz);
+    this.#filtered = kernels.arena.floats(mostSamples);
     this.#work = kernels.arena.floats(mostSamples + 3 * this.#block);
     this.#largest = kernels.arena.floats(Math.ceil(mostSamples / this.#block) + 4);
   }
 
-  /** @param samples in the kernels' arena */
-  push(samples: Float32Array): void {
+  /**
+   * @param samples in the kernels' arena
+   * @returns the same without what lies below 150 Hz, until the next push
+   */
+  push(samples: Float32Array): Float32Array {
     const block = this.#block;
     const total = this.#kept + samples.length;
-    this.#filter.run(samples, this.#work.subarray(this.#kept, total));
+    const high = this.#filtered.subarray(0, samples.length);
+    this.#filter.run(samples, high);
+    this.#work.set(high, this.#kept);
     const offset = this.#frames - this.#kept;
     // Each block is looked at with the one before and the one after it, so that an event is whole.
     const looks = Math.max(0, Math.floor(total / block) - 2);
@@ -68,6 +75,7 @@ export class ExplosiveProbe {
     this.#work.copyWithin(0, looks * block, total);
     this.#kept = total - looks * block;
     this.#frames += samples.length;
+    return high;
   }
 
   /** @param x three blocks; events that begin in the middle one are told */

@@ -39,7 +39,6 @@ interface Track {
 export class TonalProbe {
   readonly #search: { low: number; high: number; reach: number; least: number; over: number };
   readonly #found: Int32Array;
-  readonly #sorted: Float32Array;
   #tracks: Track[] = [];
   readonly #done: Track[] = [];
   #column = 0;
@@ -56,8 +55,7 @@ export class TonalProbe {
       least: Math.round((LOWEST_DBFS - FLOOR_DB) / STEP_DB),
       over: Math.round(LEAST_PROMINENCE_DB / STEP_DB),
     };
-    this.#found = kernels.arena.ints(2 * MOST_STANDOUTS);
-    this.#sorted = new Float32Array(2 * this.#search.reach + 1);
+    this.#found = kernels.arena.ints(3 * MOST_STANDOUTS);
   }
 
   push({ power, shades, columns }: Columns): void {
@@ -65,40 +63,24 @@ export class TonalProbe {
     const count = this.kernels.standouts(shades, columns, bins, this.#search, this.#found);
     for (let row = 0, at = 0; row < columns; row++) {
       const peaks: Peak[] = [];
-      for (; at < count && this.#found[2 * at] === row; at++)
-        peaks.push(this.#peak(power, shades, row * bins, this.#found[2 * at + 1] as number));
+      for (; at < count && this.#found[3 * at] === row; at++)
+        peaks.push(
+          this.#peak(power, row * bins, this.#found[3 * at + 1] as number, this.#found[3 * at + 2] as number),
+        );
       if (peaks.length > 0 || this.#tracks.length > 0) this.#link(peaks);
       this.#column++;
     }
   }
 
   /** @param base where the column begins; @param found bin of a maximum of the shades, whose neighbour may be as light */
-  #peak(power: Float32Array, shades: Uint8Array, base: number, found: number): Peak {
-    const { bins, sineScale, binHz } = this.layout;
-    const { reach } = this.#search;
+  #peak(power: Float32Array, base: number, found: number, median: number): Peak {
+    const { sineScale, binHz } = this.layout;
     const k = (power[base + found - 1] as number) > (power[base + found] as number) ? found - 1 : found;
     const a = inDb((power[base + k - 1] as number) * sineScale);
     const here = inDb((power[base + k] as number) * sineScale);
     const c = inDb((power[base + k + 1] as number) * sineScale);
     const shift = a - 2 * here + c === 0 ? 0 : (0.5 * (a - c)) / (a - 2 * here + c);
-    const median = this.#median(shades, base + Math.max(1, k - reach), base + Math.min(bins, k + reach + 1));
     return { bin: k, hz: (k + shift) * binHz, prominence: here - (FLOOR_DB + STEP_DB * median) };
-  }
-
-  /** By insertion: two dozen values, often. */
-  #median(shades: Uint8Array, from: number, to: number): number {
-    const sorted = this.#sorted;
-    let n = 0;
-    for (let i = from; i < to; i++) {
-      const value = shades[i] as number;
-      let at = n++;
-      while (at > 0 && (sorted[at - 1] as number) > value) {
-        sorted[at] = sorted[at - 1] as number;
-        at--;
-      }
-      sorted[at] = value;
-    }
-    return sorted[n >> 1] as number;
   }
 
   #link(peaks: Peak[]): void {

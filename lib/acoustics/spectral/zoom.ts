@@ -9,11 +9,9 @@ const OVERLAP = 4;
 
 /** Power about a centre frequency, at the resolution of the whole clip. */
 export interface Zoom {
-  /** |X|^2 by offset: index 0 is the centre, negative offsets count from the end. */
+  /** |X|^2 by offset, up to 10 Hz from the centre, which is index 0; negative offsets count from the end. */
   power: Float64Array;
   binHz: number;
-  /** Hz from the centre that can be read. */
-  reachHz: number;
 }
 
 /**
@@ -43,23 +41,30 @@ export function zoomSpectrum(kernels: Kernels, x: Float32Array, rateHz: number, 
   const re = new Float64Array(length);
   const im = new Float64Array(length);
   const whole = hann(count);
+  // The windows' own phases, taken back to the beginning of the clip.
+  const turn = [Math.cos(step * hop), Math.sin(step * hop)] as const;
+  let c = 1;
+  let s = 0;
   for (let k = 0; k < count; k++) {
-    const turn = step * hop * k;
-    const [c, s, w] = [Math.cos(turn), Math.sin(turn), whole[k] as number];
-    // The windows' own phases, taken back to the beginning of the clip.
+    const w = whole[k] as number;
     re[k] = w * (c * (a[k] as number) + s * (b[k] as number));
     im[k] = w * (c * (b[k] as number) - s * (a[k] as number));
+    const turned = turn[0] * c - turn[1] * s;
+    s = turn[1] * c + turn[0] * s;
+    c = turned;
   }
   transform(re, im);
   const seriesHz = rateHz / hop;
   const binHz = seriesHz / length;
   const power = new Float64Array(length);
-  for (let k = 0; k < length; k++) {
-    const offsetHz = (k < length / 2 ? k : k - length) * binHz;
+  const reach = Math.ceil(seriesHz / 4 / binHz);
+  for (let n = -reach; n <= reach; n++) {
+    const k = n < 0 ? n + length : n;
+    const offsetHz = n * binHz;
     const own = hannResponse((offsetHz * size) / rateHz);
     power[k] = ((re[k] as number) ** 2 + (im[k] as number) ** 2) / (own * own);
   }
-  return { power, binHz, reachHz: seriesHz / 4 };
+  return { power, binHz };
 }
 
 /** Amplitude response of a Hann window, 1 at 0 (Harris 1978). @param x offset in bins of the window */

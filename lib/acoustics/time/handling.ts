@@ -1,4 +1,4 @@
-import { FilterChain, highPass, lowPass, TwinChains } from '../dsp/biquad';
+import { highPass, lowPass, PASS_ALL, TwinChains } from '../dsp/biquad';
 import { percentile } from '../dsp/percentile';
 import type { Kernels } from '../kernels/types';
 import type { Span } from '../types';
@@ -50,35 +50,49 @@ export interface HandlingMeasures {
  */
 export class HandlingProbe {
   readonly #envelopes: Record<'low' | 'broad' | 'high', Envelope>;
-  readonly #lowAndHigh: TwinChains;
-  readonly #broad: FilterChain;
-  readonly #first: Float32Array;
-  readonly #second: Float32Array;
+  readonly #frameSeconds: number;
+  readonly #highFrameSeconds: number;
+  readonly #lowAndBroad: TwinChains;
+  readonly #low: Float32Array;
+  readonly #broad: Float32Array;
 
-  /** @param mostSamples that a push will bring */
-  constructor(kernels: Kernels, rateHz: number, mostSamples: number) {
-    const frame = Math.max(1, Math.round(rateHz * FRAME_SECONDS));
-    const envelope = () => new Envelope(kernels, frame, mostSamples);
-    this.#envelopes = { low: envelope(), broad: envelope(), high: envelope() };
-    this.#lowAndHigh = new TwinChains(kernels, [
-      [highPass(5, rateHz), lowPass(40, rateHz), lowPass(40, rateHz)],
-      [highPass(200, rateHz), highPass(200, rateHz), lowPass(1000, rateHz)],
+  /** @param most samples that a push will bring */
+  constructor(
+    kernels: Kernels,
+    deepHz: number,
+    eventsHz: number,
+    most: { deep: number; events: number },
+  ) {
+    const frame = (rateHz: number) => Math.max(1, Math.round(rateHz * FRAME_SECONDS));
+    const envelope = (rateHz: number, mostSamples: number) =>
+      new Envelope(kernels, frame(rateHz), mostSamples);
+    this.#envelopes = {
+      low: envelope(deepHz, most.deep),
+      broad: envelope(deepHz, most.deep),
+      high: envelope(eventsHz, most.events),
+    };
+    this.#frameSeconds = frame(deepHz) / deepHz;
+    this.#highFrameSeconds = frame(eventsHz) / eventsHz;
+    this.#lowAndBroad = new TwinChains(kernels, [
+      [highPass(5, deepHz), lowPass(40, deepHz), lowPass(40, deepHz)],
+      [highPass(20, deepHz), PASS_ALL, PASS_ALL],
     ]);
-    this.#broad = new FilterChain(kernels, [highPass(20, rateHz), lowPass(400, rateHz)]);
-    this.#first = kernels.arena.floats(mostSamples);
-    this.#second = kernels.arena.floats(mostSamples);
+    this.#low = kernels.arena.floats(most.deep);
+    this.#broad = kernels.arena.floats(most.deep);
   }
 
-  /** @param samples in the kernels' arena */
-  push(samples: Float32Array): void {
-    const first = this.#first.subarray(0, samples.length);
-    const second = this.#second.subarray(0, samples.length);
-    const { low, broad, high } = this.#envelopes;
-    this.#lowAndHigh.run(samples, first, second);
-    low.push(first);
-    high.push(second);
-    this.#broad.run(samples, first);
-    broad.push(first);
+  /** @param deep the stream at `deepHz`, in the kernels' arena */
+  pushDeep(deep: Float32Array): void {
+    const low = this.#low.subarray(0, deep.length);
+    const broad = this.#broad.subarray(0, deep.length);
+    this.#lowAndBroad.run(deep, low, broad);
+    this.#envelopes.low.push(low);
+    this.#envelopes.broad.push(broad);
+  }
+
+  /** @param high the stream at `eventsHz` without what lies below 150 Hz, in the kernels' arena */
+  pushHigh(high: Float32Array): void {
+    this.#envelopes.high.push(high);
   }
 
   /** @param holes the edges of these, and of @param clicks, ring in the low band without any contact */
@@ -93,8 +107,9 @@ export class HandlingProbe {
 
   #bursts(): Span[] {
     const low = this.#envelopes.low.values.view();
-    if (low.length * FRAME_SECONDS < SHORTEST_CLIP_SECONDS) return [];
-    const beat = beatLevel(low);
+    const frameSeconds = this.#frameSeconds;
+    if (low.length * frameSeconds < SHORTEST_CLIP_SECONDS) return [];
+    const beat = beatLevel(low, frameSeconds);
     const threshold = Math.max(OVER_MEDIAN * percentile(low, 0.5), OVER_BEAT_WITH_CRACK * beat, LEAST_RMS);
     const bursts: Span[] = [];
     for (let i = RISE_FRAMES; i < low.length; i++) {
@@ -103,10 +118,10 @@ export class HandlingProbe {
       let end = i;
       for (; i < low.length && i - end < GAP_FRAMES; i++)
         if ((low[i] as number) >= threshold / 2) end = i + 1;
-      const seconds = (end - start) * FRAME_SECONDS;
+      const seconds = (end - start) * frameSeconds;
       if (seconds < SHORTEST_BURST_SECONDS || seconds > LONGEST_BURST_SECONDS) continue;
       if (risesAt(low, start) && this.#isContact(start, end, beat))
-        bursts.push({ startSeconds: start * FRAME_SECONDS, durationSeconds: seconds });
+        bursts.push({ startSeconds: start * frameSeconds, durationSeconds: seconds });
     }
     return bursts;
   }
@@ -117,8 +132,10 @@ export class HandlingProbe {
     const breath = largestOf(broad.values.view().subarray(start, end));
     if (loudest < LEAST_LOW_SHARE * breath) return false;
     if (loudest >= OVER_BEAT * beat) return true;
-    const crack = largestOf(high.values.view().subarray(start, end));
-    const before = high.values.view().subarray(Math.max(0, start - CRACK_FRAMES), start);
+    const ratio = this.#frameSeconds / this.#highFrameSeconds;
+    const from = Math.floor(start * ratio);
+    const crack = largestOf(high.values.view().subarray(from, Math.ceil(end * ratio)));
+    const before = high.values.view().subarray(Math.max(0, from - CRACK_FRAMES), from);
     return crack >= LEAST_CRACK * loudest && crack >= CRACK_RISE * percentile(before, 0.5);
   }
 }
@@ -134,8 +151,8 @@ const touches = (burst: Span, place: Span): boolean =>
   burst.startSeconds + burst.durationSeconds > place.startSeconds - 0.05;
 
 /** What the loudest of a beat reaches in this band: a low quantile over windows that hold a beat each. */
-function beatLevel(envelope: Float32Array): number {
-  const window = Math.round(BEAT_WINDOW_SECONDS / FRAME_SECONDS);
+function beatLevel(envelope: Float32Array, frameSeconds: number): number {
+  const window = Math.round(BEAT_WINDOW_SECONDS / frameSeconds);
   const largest = new Float32Array(Math.floor(envelope.length / window));
   for (let w = 0; w < largest.length; w++)
     for (let i = w * window; i < (w + 1) * window; i++)

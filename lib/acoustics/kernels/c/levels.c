@@ -174,7 +174,11 @@ __attribute__((export_name("magnitudes"))) void magnitudes(const float *x, int c
  */
 __attribute__((export_name("betweenSamples"))) void betweenSamples(const float *taps, const float *x, int n, float gate, float *out) {
   v128_t high = wasm_f32x4_splat(out[0]), low = wasm_f32x4_splat(out[1]);
+  const v128_t bound = wasm_f32x4_splat(gate);
   for (int i = 0; i < n; i++) {
+    if ((i & 3) == 0)
+      while (i + 4 <= n && !wasm_v128_any_true(wasm_f32x4_ge(wasm_f32x4_abs(wasm_v128_load(x + i)), bound))) i += 4;
+    if (i >= n) break;
     const float here = x[i] < 0 ? -x[i] : x[i];
     if (here < gate) continue;
     const float before = x[i - 1] < 0 ? -x[i - 1] : x[i - 1], next = x[i + 1] < 0 ? -x[i + 1] : x[i + 1];

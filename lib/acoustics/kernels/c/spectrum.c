@@ -153,7 +153,8 @@ static inline int atMost(const unsigned char *shades, int from, int to, v128_t l
 
 /*
  * Local maxima of each row between bins `low` and `high`, no lower than `least`, of whose neighbours within `reach` bins
- * more than half lie `over` shades or more below. Writes row and bin; returns how many.
+ * more than half lie `over` shades or more below. Writes row, bin and the median of the shades within reach; returns how
+ * many.
  */
 __attribute__((export_name("standouts"))) int standouts(const unsigned char *shades, int rows, int bins, int low, int high,
                                                         int reach, int least, int over, int *out, int most) {
@@ -172,8 +173,12 @@ __attribute__((export_name("standouts"))) int standouts(const unsigned char *sha
         if (shades[k] < over) continue;
         if (atMost(shades, from, to, wasm_i8x16_splat(shades[k] - over)) <= (to - from) / 2) continue;
         if (found == most) return found;
-        out[2 * found] = row;
-        out[2 * found + 1] = k;
+        int median = 0;
+        for (int bit = 128; bit; bit >>= 1)
+          if (atMost(shades, from, to, wasm_i8x16_splat(median + bit - 1)) <= (to - from) / 2) median += bit;
+        out[3 * found] = row;
+        out[3 * found + 1] = k;
+        out[3 * found + 2] = median;
         found++;
       }
     }

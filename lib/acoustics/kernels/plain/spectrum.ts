@@ -108,6 +108,22 @@ function inDecibels(x: number): number {
   return OCTAVE_DB * ((bits >> 23) - 127) + mantissa;
 }
 
+const sorted = new Uint8Array(256);
+/** By insertion: two dozen values, often. */
+function medianOf(values: Uint8Array, from: number, to: number): number {
+  let n = 0;
+  for (let i = from; i < to; i++) {
+    const value = values[i] as number;
+    let at = n++;
+    while (at > 0 && (sorted[at - 1] as number) > value) {
+      sorted[at] = sorted[at - 1] as number;
+      at--;
+    }
+    sorted[at] = value;
+  }
+  return sorted[n >> 1] as number;
+}
+
 export const plainSpectrum: Spectrum = {
   spectra,
   shades(power, scale, least, floor, step, out) {
@@ -117,7 +133,7 @@ export const plainSpectrum: Spectrum = {
     }
   },
   standouts(shades, rows, bins, { low, high, reach, least, over }, out) {
-    const most = out.length >> 1;
+    const most = Math.floor(out.length / 3);
     let found = 0;
     for (let row = 0; row < rows; row++) {
       const base = row * bins;
@@ -132,8 +148,9 @@ export const plainSpectrum: Spectrum = {
         for (let i = from; i < to; i++) if ((shades[i] as number) <= limit) below++;
         if (below <= (to - from) >> 1) continue;
         if (found === most) return found;
-        out[2 * found] = row;
-        out[2 * found + 1] = k;
+        out[3 * found] = row;
+        out[3 * found + 1] = k;
+        out[3 * found + 2] = medianOf(shades, from, to);
         found++;
       }
     }
