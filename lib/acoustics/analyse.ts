@@ -87,7 +87,7 @@ class ClipAnalysis {
 
   roomFor(channel: number, frames: number): Float32Array {
     const { arena } = this.kernelsOf(channel);
-    const room = arena.floats(frames);
+    const room = arena.room(frames);
     this.#blocks[channel] = { room, codes: new Int16Array(0) };
     return room;
   }

@@ -59,7 +59,7 @@ export class ChannelAnalysis {
     const mostLow = Math.ceil(mostEvents / rates.lowFactor) + 2;
     const mostDeep = Math.ceil(mostLow / rates.deepFactor) + 2;
     // What lies between 2 and 4.4 kHz need not be clean: nobody listens there but for the beginning of a burst.
-    this.#toEvents = new Decimator(kernels, rates.eventsFactor, BLOCK_FRAMES, 12);
+    this.#toEvents = new Decimator(kernels, rates.eventsFactor, BLOCK_FRAMES, 11);
     this.#explosive = new ExplosiveProbe(kernels, rates.eventsHz, mostEvents);
     this.#toLow = new Decimator(kernels, rates.lowFactor, mostEvents);
     this.#handling = new HandlingProbe(kernels, rates.deepHz, rates.eventsHz, {

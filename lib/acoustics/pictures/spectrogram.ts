@@ -14,6 +14,11 @@ const BELOW_LIGHTER = Uint8Array.from({ length: 256 }, (_, apart) =>
 const meanShade = (a: number, b: number): number =>
   a > b ? a - (BELOW_LIGHTER[a - b] as number) : b - (BELOW_LIGHTER[b - a] as number);
 
+interface Half {
+  shades: Uint8Array;
+  waits: boolean;
+}
+
 /**
  * Spectrogram of one channel as bytes of half a decibel; 0 dB is a full-scale sine. A clip too long for the bound has
  * neighbouring columns averaged in power, two and two, as often as need be.
@@ -24,7 +29,7 @@ export class SpectrogramPicture {
   /** Columns of the spectrum in one of the picture: a power of two. */
   #merged = 1;
   /** Averages that wait for their other half: of one column, of two, of four ... */
-  readonly #halves: (Uint8Array | null)[] = [];
+  readonly #halves: Half[] = [];
 
   constructor(
     kernels: Kernels,
@@ -41,25 +46,37 @@ export class SpectrogramPicture {
         this.#shades.set(shades.subarray(at * bins, (at + taken) * bins), this.#columns * bins);
         this.#columns += taken;
         at += taken;
-      } else this.#gather(shades.slice(at * bins, ++at * bins));
+      } else this.#gather(shades, at++ * bins);
       if (this.#columns === MOST_COLUMNS) this.#merge();
     }
   }
 
   /** Pairs of columns become one, pairs of pairs one, until a column of the picture is whole. */
-  #gather(column: Uint8Array): void {
-    let whole = column;
+  #gather(shades: Uint8Array, from: number): void {
+    const { bins } = this.layout;
+    let whole = shades;
+    let at = from;
     for (let level = 0; 2 ** level < this.#merged; level++) {
-      const other = this.#halves[level];
-      if (!other) {
-        this.#halves[level] = whole;
+      const half = this.#halfOf(level);
+      if (!half.waits) {
+        for (let k = 0; k < bins; k++) half.shades[k] = whole[at + k] as number;
+        half.waits = true;
         return;
       }
-      this.#halves[level] = null;
-      for (let k = 0; k < whole.length; k++) whole[k] = meanShade(other[k] as number, whole[k] as number);
+      half.waits = false;
+      for (let k = 0; k < bins; k++)
+        half.shades[k] = meanShade(half.shades[k] as number, whole[at + k] as number);
+      whole = half.shades;
+      at = 0;
     }
-    this.#shades.set(whole, this.#columns * this.layout.bins);
+    this.#shades.set(whole, this.#columns * bins);
     this.#columns++;
+  }
+
+  #halfOf(level: number): Half {
+    const half = this.#halves[level] ?? { shades: new Uint8Array(this.layout.bins), waits: false };
+    this.#halves[level] = half;
+    return half;
   }
 
   #merge(): void {
@@ -75,9 +92,9 @@ export class SpectrogramPicture {
 
   finish(): Spectrogram {
     // What waits at the end stands for the rest of its column.
-    const rest = this.#halves.findLast((half) => half !== null && half !== undefined);
+    const rest = this.#halves.findLast((half) => half.waits);
     if (rest && this.#columns < MOST_COLUMNS) {
-      this.#shades.set(rest, this.#columns * this.layout.bins);
+      this.#shades.set(rest.shades, this.#columns * this.layout.bins);
       this.#columns++;
     }
     const { bins, size, hop, rateHz, binHz } = this.layout;

@@ -123,17 +123,33 @@ __attribute__((export_name("spread16"))) void spread16(const short *codes, int c
   for (; i < frames; i++) out[i] = (float)codes[i * channels] * (1.0f / 32768.0f);
 }
 
-/* Weighed sums of a FIR filter; `taps` is padded with zeros to a multiple of 4, and x may be read that far. */
+static inline v128_t weighed(v128_t sum, v128_t tap, const float *x) {
+  return wasm_f32x4_add(sum, wasm_f32x4_mul(tap, wasm_v128_load(x)));
+}
+
+/*
+ * Weighed sums of a FIR filter; `taps` is padded with zeros to a multiple of 4, and x may be read that far. Four sums at
+ * once share the loads of the taps and the adding up across lanes.
+ */
 __attribute__((export_name("dots"))) void dots(const float *taps, int length, const float *x, int step, int count, float *out) {
-  for (int k = 0; k < count; k++, x += step) {
-    v128_t a = wasm_f32x4_splat(0), b = a;
-    int j = 0;
-    for (; j + 8 <= length; j += 8) {
-      a = wasm_f32x4_add(a, wasm_f32x4_mul(wasm_v128_load(taps + j), wasm_v128_load(x + j)));
-      b = wasm_f32x4_add(b, wasm_f32x4_mul(wasm_v128_load(taps + j + 4), wasm_v128_load(x + j + 4)));
+  int k = 0;
+  for (; k + 4 <= count; k += 4, x += 4 * step) {
+    v128_t a = wasm_f32x4_splat(0), b = a, c = a, d = a;
+    for (int j = 0; j < length; j += 4) {
+      const v128_t tap = wasm_v128_load(taps + j);
+      a = weighed(a, tap, x + j);
+      b = weighed(b, tap, x + step + j);
+      c = weighed(c, tap, x + 2 * step + j);
+      d = weighed(d, tap, x + 3 * step + j);
     }
-    if (j < length) a = wasm_f32x4_add(a, wasm_f32x4_mul(wasm_v128_load(taps + j), wasm_v128_load(x + j)));
-    out[k] = total(wasm_f32x4_add(a, b));
+    const v128_t ab = wasm_f32x4_add(wasm_i32x4_shuffle(a, b, 0, 4, 1, 5), wasm_i32x4_shuffle(a, b, 2, 6, 3, 7));
+    const v128_t cd = wasm_f32x4_add(wasm_i32x4_shuffle(c, d, 0, 4, 1, 5), wasm_i32x4_shuffle(c, d, 2, 6, 3, 7));
+    wasm_v128_store(out + k, wasm_f32x4_add(wasm_i64x2_shuffle(ab, cd, 0, 2), wasm_i64x2_shuffle(ab, cd, 1, 3)));
+  }
+  for (; k < count; k++, x += step) {
+    v128_t a = wasm_f32x4_splat(0);
+    for (int j = 0; j < length; j += 4) a = weighed(a, wasm_v128_load(taps + j), x + j);
+    out[k] = total(a);
   }
 }
 
