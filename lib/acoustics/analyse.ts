@@ -52,8 +52,7 @@ export async function analyseRecording(
       onFormat: (format) => clip.begin(format),
       onBlock: (block) => clip.push(block),
       roomFor: (channel, frames) => clip.roomFor(channel, frames),
-      spread16: (bytes, frames, channel, channels, at) =>
-        clip.spread16(bytes, frames, channel, channels, at),
+      spread16: (bytes, frames, channel, channels, at) => clip.spread16(bytes, frames, channel, channels, at),
       ...(options.declaredMediaType === undefined ? {} : { declaredMediaType: options.declaredMediaType }),
       ...(options.totalBytes === undefined ? {} : { totalBytes: options.totalBytes }),
     });

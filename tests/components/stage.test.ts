@@ -2,6 +2,7 @@ import { expect, test } from 'vitest';
 import { factorFor, upsample } from '@/components/recording/player/upsample';
 import { columnsOf } from '@/components/recording/stage/drawWaveform';
 import { fitView, lanesOf, ticksOf, viewWith, zoomAbout } from '@/components/recording/stage/view';
+import { takeKernels } from '@/lib/acoustics/kernels/kernels';
 import { PeaksProbe } from '@/lib/acoustics/pictures/peaks';
 
 test('zooming keeps the point under the pointer where it is', () => {
@@ -31,7 +32,7 @@ test('labels that would cover one another go to other lanes, and without room to
 test('one loud sample in ten minutes is seen however far the waveform is zoomed out', () => {
   const samples = new Float32Array(4000 * 600);
   samples[1_234_567] = -0.75;
-  const probe = new PeaksProbe(4000);
+  const probe = new PeaksProbe([takeKernels('plain')], 4000, samples.length);
   probe.pushBlock([samples]);
   const columns = columnsOf(probe.finish(), { from: 0, to: 600 }, 300);
   const at = Math.floor((1_234_567 / samples.length) * 300);

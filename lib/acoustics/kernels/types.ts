@@ -40,7 +40,14 @@ export interface Kernels {
    * reach `gate` in magnitude and are no smaller than their neighbours. @param taps tap by tap, four phases each; @param x read from at - 6 to at + n + 6
    * @param out raised to what is larger, lowered to what is smaller
    */
-  betweenSamples(taps: Float32Array, x: Float32Array, at: number, n: number, gate: number, out: Float32Array): void;
+  betweenSamples(
+    taps: Float32Array,
+    x: Float32Array,
+    at: number,
+    n: number,
+    gate: number,
+    out: Float32Array,
+  ): void;
   /** Two or three second-order sections one behind the other; `sections` holds their state. */
   cascade(sections: Float64Array, x: Float32Array, out: Float32Array): void;
   /** Two chains of three sections on one input; `sections` holds their values side by side. */
@@ -48,7 +55,14 @@ export interface Kernels {
   /** |X|^2 of `count` windowed frames that begin `hop` apart, `plan.bins` values a frame. */
   spectra(plan: SpectrumPlan, x: Float32Array, hop: number, count: number, out: Float32Array): void;
   /** 10 lg(power * scale + least) as bytes of `step` decibels above `floor`. @param out as long as power */
-  shades(power: Float32Array, scale: number, least: number, floor: number, step: number, out: Uint8Array): void;
+  shades(
+    power: Float32Array,
+    scale: number,
+    least: number,
+    floor: number,
+    step: number,
+    out: Uint8Array,
+  ): void;
   /**
    * Local maxima of each row between bins `low` and `high`, no lower than `least`, of whose neighbours within `reach`
    * bins more than half lie `over` shades or more below. @param out of each its row, its bin, and the median shade within
@@ -56,7 +70,14 @@ export interface Kernels {
    */
   standouts(shades: Uint8Array, rows: number, bins: number, search: StandoutSearch, out: Int32Array): number;
   /** Sum of bins `from` up to and without `to` of each row. */
-  bandSums(power: Float32Array, rows: number, bins: number, from: number, to: number, out: Float32Array): void;
+  bandSums(
+    power: Float32Array,
+    rows: number,
+    bins: number,
+    from: number,
+    to: number,
+    out: Float32Array,
+  ): void;
   /** Sums of x[i] x[i + lag] for lags `from` to `to`. */
   lagged(x: Float32Array, from: number, to: number, out: Float32Array): void;
 }

@@ -82,8 +82,7 @@ export function wasmKernels(): Kernels | null {
     extremes: (x, count, bucket, out) => wasm.extremes(x.byteOffset, count, bucket, out.byteOffset),
     magnitudes: (x, count, length, out) => wasm.magnitudes(x.byteOffset, count, length, out.byteOffset),
     countBelow: (x, limit) => wasm.countBelow(x.byteOffset, x.length, limit),
-    bends: (x, at, n, first, run, out) =>
-      wasm.bends(x.byteOffset + 4 * at, n, first, run, out.byteOffset),
+    bends: (x, at, n, first, run, out) => wasm.bends(x.byteOffset + 4 * at, n, first, run, out.byteOffset),
     spread16: (codes, channel, channels, frames, out) =>
       wasm.spread16(codes.byteOffset + 2 * channel, channels, frames, out.byteOffset),
     dots: (taps, x, at, step, count, out) =>

@@ -2,7 +2,12 @@ import { FilterChain, highPass, lowPass } from '../dsp/biquad';
 import { Framer } from '../dsp/framer';
 import { FloatList } from '../dsp/percentile';
 import type { Kernels } from '../kernels/types';
-import { ACTIVITY_BAND_HZ, ACTIVITY_BLOCK_SECONDS, type ActivityMeasures, activityOf } from '../time/activity';
+import {
+  ACTIVITY_BAND_HZ,
+  ACTIVITY_BLOCK_SECONDS,
+  type ActivityMeasures,
+  activityOf,
+} from '../time/activity';
 import type { Hum, Rate } from '../types';
 import { BandLevels, Means } from './bandLevels';
 import type { ColumnLayout, Columns } from './columns';
@@ -108,8 +113,7 @@ export class BandProbe {
     most: { columns: number; deep: number },
   ) {
     this.#levels = new BandLevels(kernels, layout);
-    const band = ({ low, high }: { low: number; high: number }) =>
-      this.#levels.band(low, high, most.columns);
+    const band = ({ low, high }: { low: number; high: number }) => this.#levels.band(low, high, most.columns);
     this.#bands = {
       activity: band(ACTIVITY_BAND_HZ),
       breath: band(BREATH_BAND_HZ),

@@ -1,4 +1,4 @@
-import { type SpectrumPlan, planSpectrum } from '../kernels/plan';
+import { planSpectrum, type SpectrumPlan } from '../kernels/plan';
 import type { Kernels } from '../kernels/types';
 
 const WINDOW_SECONDS = 0.064;

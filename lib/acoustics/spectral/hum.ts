@@ -59,12 +59,7 @@ export function findHum(
 }
 
 /** The line within 1 % of a frequency, where one stands out and stands still. */
-function lineNear(
-  kernels: Kernels,
-  samples: Float32Array,
-  rateHz: number,
-  nominalHz: number,
-): Line | null {
+function lineNear(kernels: Kernels, samples: Float32Array, rateHz: number, nominalHz: number): Line | null {
   const zoom = zoomSpectrum(kernels, samples, rateHz, nominalHz);
   if (!zoom) return null;
   const { power, binHz } = zoom;

@@ -20,7 +20,12 @@ export function rateOf(
 ): Rate | null {
   const shortest = Math.max(2, Math.floor((60 / perMinute.fastest) * rateHz));
   const longest = Math.min(Math.ceil((60 / perMinute.slowest) * rateHz), Math.floor(envelope.length / 2));
-  const r = autocorrelation(kernels, envelope, shortest - 1, longest + 1 < envelope.length ? longest + 1 : longest);
+  const r = autocorrelation(
+    kernels,
+    envelope,
+    shortest - 1,
+    longest + 1 < envelope.length ? longest + 1 : longest,
+  );
   if (!r) return null;
   const peaks: number[] = [];
   for (let i = 1; i < r.length - 1; i++)

@@ -20,7 +20,12 @@ export interface Zoom {
  *
  * @param x in the kernels' arena, DC included
  */
-export function zoomSpectrum(kernels: Kernels, x: Float32Array, rateHz: number, centreHz: number): Zoom | null {
+export function zoomSpectrum(
+  kernels: Kernels,
+  x: Float32Array,
+  rateHz: number,
+  centreHz: number,
+): Zoom | null {
   const hop = Math.max(1, Math.floor(rateHz / SERIES_HZ));
   const size = OVERLAP * hop;
   const count = Math.floor((x.length - size) / hop) + 1;

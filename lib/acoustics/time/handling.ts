@@ -57,12 +57,7 @@ export class HandlingProbe {
   readonly #broad: Float32Array;
 
   /** @param most samples that a push will bring */
-  constructor(
-    kernels: Kernels,
-    deepHz: number,
-    eventsHz: number,
-    most: { deep: number; events: number },
-  ) {
+  constructor(kernels: Kernels, deepHz: number, eventsHz: number, most: { deep: number; events: number }) {
     const frame = (rateHz: number) => Math.max(1, Math.round(rateHz * FRAME_SECONDS));
     const envelope = (rateHz: number, mostSamples: number) =>
       new Envelope(kernels, frame(rateHz), mostSamples);

@@ -3,8 +3,30 @@ import type { Kernels } from '../types';
 
 type Spectrum = Pick<Kernels, 'spectra' | 'shades' | 'standouts' | 'bandSums'>;
 
+/** The same tables in double precision, and room to work: single precision costs a conversion a step here. */
+interface Doubles {
+  window: Float64Array;
+  twiddles: Float64Array;
+  split: Float64Array;
+  z: Float64Array;
+}
+const made = new Map<number, Doubles>();
+
+function doublesOf({ size, window, twiddles, split }: SpectrumPlan): Doubles {
+  const before = made.get(size);
+  if (before) return before;
+  const own = {
+    window: Float64Array.from(window),
+    twiddles: Float64Array.from(twiddles),
+    split: Float64Array.from(split),
+    z: new Float64Array(size),
+  };
+  made.set(size, own);
+  return own;
+}
+
 /** Complex FFT in place (Cooley and Tukey 1965): z holds re and im in turn, in bit-reversed order. */
-function transform(z: Float32Array, w: Float32Array, half: number): void {
+function transform(z: Float64Array, w: Float64Array, half: number): void {
   let span = 1;
   if (Math.log2(half) & 1) {
     for (let a = 0; a < 2 * half; a += 4) {
@@ -21,7 +43,7 @@ function transform(z: Float32Array, w: Float32Array, half: number): void {
 }
 
 /** Two stages of radix 2 at once: half the traffic with memory. */
-function twoStages(z: Float32Array, w: Float32Array, half: number, span: number): void {
+function twoStages(z: Float64Array, w: Float64Array, half: number, span: number): void {
   const far = half / span;
   const near = half / (2 * span);
   for (let i = 0; i < span; i++) {
@@ -33,26 +55,32 @@ function twoStages(z: Float32Array, w: Float32Array, half: number, span: number)
       const b = a + 2 * span;
       const c = b + 2 * span;
       const d = c + 2 * span;
-      const bRe = c1 * (z[b] as number) - s1 * (z[b + 1] as number);
-      const bIm = c1 * (z[b + 1] as number) + s1 * (z[b] as number);
-      const dRe = c1 * (z[d] as number) - s1 * (z[d + 1] as number);
-      const dIm = c1 * (z[d + 1] as number) + s1 * (z[d] as number);
-      const a0 = (z[a] as number) + bRe;
-      const a1 = (z[a + 1] as number) + bIm;
-      const b0 = (z[a] as number) - bRe;
-      const b1 = (z[a + 1] as number) - bIm;
-      const c0 = (z[c] as number) + dRe;
-      const cc = (z[c + 1] as number) + dIm;
-      const d0 = (z[c] as number) - dRe;
-      const d1 = (z[c + 1] as number) - dIm;
+      const zb = z[b] as number;
+      const zb1 = z[b + 1] as number;
+      const zd = z[d] as number;
+      const zd1 = z[d + 1] as number;
+      const bRe = c1 * zb - s1 * zb1;
+      const bIm = c1 * zb1 + s1 * zb;
+      const dRe = c1 * zd - s1 * zd1;
+      const dIm = c1 * zd1 + s1 * zd;
+      const za = z[a] as number;
+      const za1 = z[a + 1] as number;
+      const zc = z[c] as number;
+      const zc1 = z[c + 1] as number;
+      const b0 = za - bRe;
+      const b1 = za1 - bIm;
+      const c0 = zc + dRe;
+      const cc = zc1 + dIm;
+      const d0 = zc - dRe;
+      const d1 = zc1 - dIm;
       const cRe = c2 * c0 - s2 * cc;
       const cIm = c2 * cc + s2 * c0;
       const eRe = c2 * d0 - s2 * d1;
       const eIm = c2 * d1 + s2 * d0;
-      z[a] = a0 + cRe;
-      z[a + 1] = a1 + cIm;
-      z[c] = a0 - cRe;
-      z[c + 1] = a1 - cIm;
+      z[a] = za + bRe + cRe;
+      z[a + 1] = za1 + bIm + cIm;
+      z[c] = za + bRe - cRe;
+      z[c + 1] = za1 + bIm - cIm;
       // times -i
       z[b] = b0 + eIm;
       z[b + 1] = b1 - eRe;
@@ -64,9 +92,9 @@ function twoStages(z: Float32Array, w: Float32Array, half: number, span: number)
 
 /** Real frames by a complex FFT of half the size (the split as in Press et al., Numerical Recipes, 12.3; from memory). */
 function spectra(plan: SpectrumPlan, x: Float32Array, hop: number, count: number, out: Float32Array): void {
-  const { size, bins, window, order, twiddles, split, work } = plan;
+  const { size, bins, order } = plan;
+  const { window, twiddles, split, z } = doublesOf(plan);
   const half = size / 2;
-  const z = work;
   for (let frame = 0; frame < count; frame++) {
     const from = frame * hop;
     for (let i = 0; i < half; i++) {
@@ -75,18 +103,32 @@ function spectra(plan: SpectrumPlan, x: Float32Array, hop: number, count: number
       z[to + 1] = (x[from + 2 * i + 1] as number) * (window[2 * i + 1] as number);
     }
     transform(z, twiddles, half);
-    const at = frame * bins;
-    for (let k = 0; k < bins; k++) {
-      const p = k === half ? 0 : 2 * k;
-      const q = k === 0 ? 0 : 2 * (half - k);
-      const cos = split[2 * k] as number;
-      const sin = split[2 * k + 1] as number;
-      const oddRe = (z[p + 1] as number) + (z[q + 1] as number);
-      const oddIm = (z[q] as number) - (z[p] as number);
-      const re = (z[p] as number) + (z[q] as number) + cos * oddRe - sin * oddIm;
-      const im = (z[p + 1] as number) - (z[q + 1] as number) + cos * oddIm + sin * oddRe;
-      out[at + k] = (re * re + im * im) / 4;
-    }
+    powers(z, split, half, bins, out, frame * bins);
+  }
+}
+
+function powers(
+  z: Float64Array,
+  split: Float64Array,
+  half: number,
+  bins: number,
+  out: Float32Array,
+  at: number,
+): void {
+  for (let k = 0; k < bins; k++) {
+    const p = k === half ? 0 : 2 * k;
+    const q = k === 0 ? 0 : 2 * (half - k);
+    const cos = split[2 * k] as number;
+    const sin = split[2 * k + 1] as number;
+    const re0 = z[p] as number;
+    const im0 = z[p + 1] as number;
+    const re1 = z[q] as number;
+    const im1 = z[q + 1] as number;
+    const oddRe = im0 + im1;
+    const oddIm = re1 - re0;
+    const re = re0 + re1 + cos * oddRe - sin * oddIm;
+    const im = im0 - im1 + cos * oddIm + sin * oddRe;
+    out[at + k] = (re * re + im * im) / 4;
   }
 }
 
@@ -106,6 +148,13 @@ function inDecibels(x: number): number {
   const bits = asBits[0] as number;
   const mantissa = MANTISSA_DB[(bits >> (23 - TABLE_BITS)) & ((1 << TABLE_BITS) - 1)] as number;
   return OCTAVE_DB * ((bits >> 23) - 127) + mantissa;
+}
+
+/** Whether more than half of the values are at most `limit`; most are told before the end. */
+function moreThanHalf(values: Uint8Array, from: number, to: number, limit: number): boolean {
+  let spare = (to - from + 1) >> 1;
+  for (let i = from; i < to; i++) if ((values[i] as number) > limit && --spare === 0) return false;
+  return true;
 }
 
 const sorted = new Uint8Array(256);
@@ -139,14 +188,16 @@ export const plainSpectrum: Spectrum = {
       const base = row * bins;
       for (let k = low; k <= high; k++) {
         const here = shades[base + k] as number;
-        if (here < least || here < (shades[base + k - 1] as number) || here <= (shades[base + k + 1] as number))
+        if (
+          here < least ||
+          here < (shades[base + k - 1] as number) ||
+          here <= (shades[base + k + 1] as number)
+        )
           continue;
         const from = base + Math.max(1, k - reach);
         const to = base + Math.min(bins, k + reach + 1);
         const limit = here - over;
-        let below = 0;
-        for (let i = from; i < to; i++) if ((shades[i] as number) <= limit) below++;
-        if (below <= (to - from) >> 1) continue;
+        if (!moreThanHalf(shades, from, to, limit)) continue;
         if (found === most) return found;
         out[3 * found] = row;
         out[3 * found + 1] = k;
