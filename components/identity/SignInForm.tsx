@@ -2,14 +2,15 @@
 
 import Link from 'next/link';
 import { type FormEvent, useState } from 'react';
-import { Button } from '@/components/ui/Button';
+import { Button, buttonClass } from '@/components/ui/Button';
 import { Field, TextInput } from '@/components/ui/Field';
 import { Notice } from '@/components/ui/Notice';
 import { type AuthAnswer, authCall } from './auth';
+import { passkeyAnswer } from './browserPasskey';
 
-type Step = 'password' | 'code' | 'recovery';
+export type SignInStep = 'password' | 'code' | 'recovery' | 'passkey';
 
-function send(step: Step, form: FormData): Promise<AuthAnswer> {
+function send(step: SignInStep, form: FormData): Promise<AuthAnswer> {
   const value = (name: string) => String(form.get(name) ?? '');
   if (step === 'password')
     return authCall('/auth/sign-in', { email: value('email').trim(), password: value('password') });
@@ -17,49 +18,111 @@ function send(step: Step, form: FormData): Promise<AuthAnswer> {
   return authCall('/auth/recovery-code', { code: value('recovery').trim() });
 }
 
-/** E-mail and password, then the second factor where there is one. */
-export function SignInForm({ next }: { next: string }) {
-  const [step, setStep] = useState<Step>('password');
-  const [busy, setBusy] = useState(false);
-  const [failure, setFailure] = useState<string | null>(null);
+/** The browser's own dialogue, and what the service says to it. */
+async function sendPasskey(): Promise<AuthAnswer> {
+  const begun = await authCall('/auth/passkey/options', {});
+  if (!begun.ok) return begun;
+  const answer = await passkeyAnswer(begun.data.options);
+  if (answer === null)
+    return {
+      ok: false,
+      status: 0,
+      message: 'No passkey was shown. Try again, or use your password.',
+      members: {},
+    };
+  return await authCall('/auth/passkey', { handle: begun.data.handle, answer });
+}
 
-  async function submit(event: FormEvent<HTMLFormElement>) {
-    event.preventDefault();
-    setBusy(true);
+const TITLES: Record<SignInStep, string> = {
+  password: 'Sign in',
+  code: 'Second factor',
+  recovery: 'Second factor',
+  passkey: 'Passkey',
+};
+
+interface SignInFormProps {
+  next: string;
+  /** Where a way through the hospital's account goes on. */
+  first: SignInStep;
+  notice: string | null;
+  /** Name of the hospital's account, where single sign-on is set up. */
+  signOn: string | null;
+}
+
+/** E-mail and password and the second factor, a passkey, or the hospital's account. */
+export function SignInForm({ next, first, notice, signOn }: SignInFormProps) {
+  const [step, setStep] = useState<SignInStep>(first);
+  const [busy, setBusy] = useState<'form' | 'passkey' | null>(null);
+  const [failure, setFailure] = useState<string | null>(notice);
+
+  async function go(how: 'form' | 'passkey', work: () => Promise<AuthAnswer>) {
+    setBusy(how);
     setFailure(null);
-    const answer = await send(step, new FormData(event.currentTarget));
+    const answer = await work();
     if (answer.ok && answer.data.next === 'in') {
       // A whole load: everything that was drawn for somebody else is gone.
       window.location.assign(next);
       return;
     }
-    setBusy(false);
-    if (answer.ok) return setStep('code');
-    const unknown = answer.status === 401 && step === 'password';
+    setBusy(null);
+    if (answer.ok) return setStep(answer.data.next === 'passkey' ? 'passkey' : 'code');
+    const unknown = answer.status === 401 && step === 'password' && how === 'form';
     setFailure(unknown ? 'E-mail and password do not belong together.' : answer.message);
     if (answer.members.startAgain === true) setStep('password');
   }
+  const submit = (event: FormEvent<HTMLFormElement>) => {
+    event.preventDefault();
+    const form = new FormData(event.currentTarget);
+    void go(step === 'passkey' ? 'passkey' : 'form', () =>
+      step === 'passkey' ? sendPasskey() : send(step, form),
+    );
+  };
 
   return (
-    <form onSubmit={submit} className="grid gap-4" method="post">
-      <h1>{step === 'password' ? 'Sign in' : 'Second factor'}</h1>
-      {failure ? (
-        <Notice tone="alarm" title="Not signed in">
-          {failure}
-        </Notice>
+    <div className="grid gap-6">
+      <form onSubmit={submit} className="grid gap-4" method="post">
+        <h1>{TITLES[step]}</h1>
+        {failure ? (
+          <Notice tone="alarm" title="Not signed in">
+            {failure}
+          </Notice>
+        ) : null}
+        <Fields step={step} />
+        <div className="flex flex-wrap items-center gap-4">
+          <Button
+            type="submit"
+            variant="primary"
+            busy={busy === 'form' || (busy === 'passkey' && step === 'passkey')}
+            busyLabel="Signing in"
+          >
+            {step === 'password' ? 'Sign in' : step === 'passkey' ? 'Show the passkey' : 'Go on'}
+          </Button>
+          <OtherWay step={step} onStep={setStep} />
+        </div>
+      </form>
+      {step === 'password' ? (
+        <div className="flex flex-wrap gap-3 border-t border-line pt-5">
+          <Button busy={busy === 'passkey'} onClick={() => void go('passkey', sendPasskey)}>
+            Sign in with a passkey
+          </Button>
+          {signOn ? (
+            // A route and not a page: the browser itself must go there.
+            <a
+              href={`/api/auth/single-sign-on?next=${encodeURIComponent(next)}`}
+              className={buttonClass('plain')}
+            >
+              Sign in with {signOn}
+            </a>
+          ) : null}
+        </div>
       ) : null}
-      <Fields step={step} />
-      <div className="flex flex-wrap items-center gap-4">
-        <Button type="submit" variant="primary" busy={busy} busyLabel="Signing in">
-          {step === 'password' ? 'Sign in' : 'Go on'}
-        </Button>
-        <OtherWay step={step} onStep={setStep} />
-      </div>
-    </form>
+    </div>
   );
 }
 
-function Fields({ step }: { step: Step }) {
+function Fields({ step }: { step: SignInStep }) {
+  if (step === 'passkey')
+    return <p>Your account asks for the passkey that you added. Have the device with it at hand.</p>;
   if (step === 'code')
     return (
       <Field key="code" label="Code" help="Six digits from your authenticator." required>
@@ -91,12 +154,18 @@ function Fields({ step }: { step: Step }) {
   );
 }
 
-function OtherWay({ step, onStep }: { step: Step; onStep: (step: Step) => void }) {
+function OtherWay({ step, onStep }: { step: SignInStep; onStep: (step: SignInStep) => void }) {
   if (step === 'password')
     return (
       <Link href="/forgot" className="link">
         Set a new password
       </Link>
+    );
+  if (step === 'passkey')
+    return (
+      <Button variant="quiet" onClick={() => onStep('password')}>
+        Start again
+      </Button>
     );
   return (
     <Button variant="quiet" onClick={() => onStep(step === 'code' ? 'recovery' : 'code')}>

@@ -47,27 +47,41 @@ export async function acceptInvitation(
       .where(and(eq(invitation.tokenHash, tokenHash(wanted.token)), isOpen(now)))
       .returning();
     if (!taken) throw notOpen();
-    const personId = await makePerson(tx, taken, now);
+    const personId = await joinByInvitation(tx, taken, now);
     await storePassword(tx, personId, hash, now);
-    const roles = rolesOf(taken.roles);
-    await tx
-      .insert(personRole)
-      .values(roles.map((role) => ({ personId, role, givenBy: taken.invitedBy, givenAt: now })));
-    const wards = await giveWards(tx, personId, wardsOf(taken.wardIds));
-    await appendEntries(tx, now, [
-      {
-        kind: 'person-joined',
-        actor: { kind: 'person', id: personId, label: taken.name },
-        subjects: [
-          { kind: 'person', id: personId },
-          { kind: 'invitation', id: taken.id },
-          { kind: 'person', id: taken.invitedBy },
-        ],
-        after: { name: taken.name, roles, wards },
-      },
-    ]);
     return { email: taken.email };
   });
+}
+
+/**
+ * What an invitation that was just taken up brings: the person with their roles and wards, in the caller's transaction.
+ *
+ * @returns the person's id
+ */
+export async function joinByInvitation(
+  tx: Tx,
+  taken: typeof invitation.$inferSelect,
+  now: number,
+): Promise<string> {
+  const personId = await makePerson(tx, taken, now);
+  const roles = rolesOf(taken.roles);
+  await tx
+    .insert(personRole)
+    .values(roles.map((role) => ({ personId, role, givenBy: taken.invitedBy, givenAt: now })));
+  const wards = await giveWards(tx, personId, wardsOf(taken.wardIds));
+  await appendEntries(tx, now, [
+    {
+      kind: 'person-joined',
+      actor: { kind: 'person', id: personId, label: taken.name },
+      subjects: [
+        { kind: 'person', id: personId },
+        { kind: 'invitation', id: taken.id },
+        { kind: 'person', id: taken.invitedBy },
+      ],
+      after: { name: taken.name, roles, wards },
+    },
+  ]);
+  return personId;
 }
 
 /** A new person, or the same one back again: their id stays, so that all they ever did stays theirs. */

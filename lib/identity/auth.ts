@@ -6,6 +6,7 @@ import { drizzle } from 'drizzle-orm/libsql';
 import { queuedClient } from '@/db/queuedClient';
 import * as schema from '@/db/schema';
 import type { Services } from '@/lib/platform/services';
+import { ourSessions } from './ourSessions';
 import { hashPassword, PASSWORD_LENGTH, verifyPassword } from './password';
 
 type Needs = Pick<Services, 'database' | 'read' | 'env' | 'log'>;
@@ -60,7 +61,7 @@ export function createAuth(services: Needs) {
       log: (level, message) =>
         services.log[level === 'error' ? 'error' : 'info']({ from: 'better-auth' }, message),
     },
-    plugins: [twoFactor({ issuer: `Bellkeep, ${env.BELLKEEP_HOSPITAL}` })],
+    plugins: [twoFactor({ issuer: `Bellkeep, ${env.BELLKEEP_HOSPITAL}` }), ourSessions()],
     databaseHooks: {
       session: {
         create: {

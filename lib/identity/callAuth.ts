@@ -69,3 +69,12 @@ export function cookieValue(headers: Headers, nameEnd: string): string | null {
   }
   return null;
 }
+
+/** The token of the session that these Set-Cookie lines begin. */
+export function sessionToken(cookies: string[]): string {
+  for (const line of cookies) {
+    const [, value] = /\.session_token=([^;]+)/.exec(line) ?? [];
+    if (value) return decodeURIComponent(value).split('.')[0] ?? '';
+  }
+  return '';
+}

@@ -30,6 +30,19 @@ export function checkNewPassword(
   if (problem) throw new Refusal('body-invalid', problem, { errors: [{ path, message: problem }] });
 }
 
+/** Whether somebody has a password: who came by single sign-on alone has none. */
+export async function hasOwnPassword(
+  services: Pick<Services, 'read'>,
+  by: Pick<Authorized<'self'>, 'id'>,
+): Promise<boolean> {
+  const [row] = await services.read
+    .select({ id: account.id })
+    .from(account)
+    .where(and(eq(account.userId, by.id), eq(account.providerId, 'credential')))
+    .limit(1);
+  return row !== undefined;
+}
+
 /**
  * Check somebody's own password again before something that a stolen session must not do. Wrong ones count and wait
  * like wrong sign-ins.

@@ -2,6 +2,7 @@ import { asc, eq } from 'drizzle-orm';
 import { personRole, personWard, twoFactor, user, ward } from '@/db/schema';
 import type { Authorized } from '@/lib/platform/authority';
 import type { Services } from '@/lib/platform/services';
+import { passkeysOf } from './passkeys/passkeysOf';
 import { ROLES, type Role } from './permissions';
 import { type SessionLine, sessionsOf } from './sessions';
 
@@ -14,6 +15,7 @@ export interface PersonDescription {
   leftAt: number | null;
   lastSignedInAt: number | null;
   secondFactor: 'on' | 'begun' | 'none';
+  passkeys: number;
   roles: { role: Role; givenBy: string | null; givenAt: number }[];
   wardIds: string[];
   sessions: SessionLine[];
@@ -26,7 +28,7 @@ export async function describePerson(
   id: string,
 ): Promise<PersonDescription | null> {
   const { read } = services;
-  const [[person], roles, wards, [factor], sessions] = await Promise.all([
+  const [[person], roles, wards, [factor], sessions, passkeys] = await Promise.all([
     read.select().from(user).where(eq(user.id, id)).limit(1),
     read
       .select({ role: personRole.role, givenBy: user.name, givenAt: personRole.givenAt })
@@ -36,6 +38,7 @@ export async function describePerson(
     read.select({ wardId: personWard.wardId }).from(personWard).where(eq(personWard.personId, id)),
     read.select({ verified: twoFactor.verified }).from(twoFactor).where(eq(twoFactor.userId, id)).limit(1),
     sessionsOf(services, id),
+    passkeysOf(services, id),
   ]);
   if (!person) return null;
   return {
@@ -46,7 +49,8 @@ export async function describePerson(
     joinedAt: person.createdAt.getTime(),
     leftAt: person.leftAt,
     lastSignedInAt: person.lastSignedInAt,
-    secondFactor: person.twoFactorEnabled ? 'on' : factor ? 'begun' : 'none',
+    secondFactor: person.twoFactorEnabled || passkeys.length > 0 ? 'on' : factor ? 'begun' : 'none',
+    passkeys: passkeys.length,
     roles: ROLES.flatMap((role) => roles.filter((row) => row.role === role)),
     wardIds: wards.map((row) => row.wardId).sort(),
     sessions,

@@ -5,6 +5,7 @@ import {
   passwordReset,
   rateLimit,
   session,
+  signInAttempt,
   signInTry,
   usedCode,
   verification,
@@ -24,6 +25,7 @@ export async function forgetExpired(services: Pick<Services, 'write' | 'clock'>)
     await tx.delete(verification).where(lt(verification.expiresAt, new Date(now)));
     await tx.delete(rateLimit).where(lt(rateLimit.lastRequest, now - DAY_MS));
     await tx.delete(signInTry).where(lt(signInTry.lastAt, now - 2 * DAY_MS));
+    await tx.delete(signInAttempt).where(lt(signInAttempt.expiresAt, now));
     await tx.delete(usedCode).where(lt(usedCode.expiresAt, now));
     await tx.delete(passwordReset).where(lt(passwordReset.expiresAt, now - DAY_MS));
     await tx.delete(idempotencyKey).where(lt(idempotencyKey.createdAt, now - 2 * DAY_MS));

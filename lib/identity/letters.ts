@@ -61,6 +61,14 @@ const NOTICES = {
     subject: 'The second factor of Bellkeep was removed',
     text: 'The second factor of your account was removed. Set up a new one when you sign in.',
   },
+  'passkey-added': {
+    subject: 'A passkey was added for Bellkeep',
+    text: 'A passkey was added to your account. It signs in without a password.',
+  },
+  'passkey-removed': {
+    subject: 'A passkey of Bellkeep was removed',
+    text: 'A passkey was removed from your account.',
+  },
 } as const;
 
 /** Tell somebody that the way into their account changed, in case it was not they who did it. */

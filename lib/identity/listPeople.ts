@@ -29,6 +29,9 @@ export interface PersonLine {
 
 type Reads = Pick<Services, 'read'>;
 
+/** In plain SQL: among the selected fields of one table, column names would lose their table's. */
+const PASSKEYS = sql<number>`(select count(*) from passkey where passkey.person_id = "user".id)`;
+
 const holds = (role: Role) =>
   sql`exists (select 1 from ${personRole} where ${personRole.personId} = ${user.id} and ${personRole.role} = ${role})`;
 
@@ -47,6 +50,7 @@ export async function listPeople(
       email: user.email,
       jobTitle: user.jobTitle,
       twoFactorEnabled: user.twoFactorEnabled,
+      passkeys: PASSKEYS,
       lastSignedInAt: user.lastSignedInAt,
       leftAt: user.leftAt,
     })
@@ -75,11 +79,11 @@ export async function listPeople(
     page.map((row) => row.id),
   );
   return {
-    rows: page.map(({ twoFactorEnabled, ...row }) => ({
+    rows: page.map(({ twoFactorEnabled, passkeys, ...row }) => ({
       ...row,
       roles: held.roles.get(row.id) ?? [],
       wards: held.wards.get(row.id) ?? [],
-      secondFactor: twoFactorEnabled === true,
+      secondFactor: twoFactorEnabled === true || passkeys > 0,
     })),
     next: rows.length > filter.limit ? (page.at(-1)?.id ?? null) : null,
   };
@@ -131,7 +135,14 @@ export async function countPeople(services: Reads, _by: Authorized<'people.read'
     services.read
       .select({ n: sql<number>`count(*)` })
       .from(user)
-      .where(and(isNull(user.leftAt), holds('itadmin'), sql`${user.twoFactorEnabled} is not 1`)),
+      .where(
+        and(
+          isNull(user.leftAt),
+          holds('itadmin'),
+          sql`${user.twoFactorEnabled} is not 1`,
+          sql`${PASSKEYS} = 0`,
+        ),
+      ),
   ]);
   const byRole = Object.fromEntries(
     ROLES.map((role) => [role, roles.find((row) => row.role === role)?.n ?? 0]),

@@ -7,7 +7,7 @@ import type { Services } from '@/lib/platform/services';
 export async function noteSignedIn(
   services: Pick<Services, 'write' | 'clock'>,
   personId: string,
-  secondFactor: 'authenticator' | 'recovery-code' | null,
+  secondFactor: 'authenticator' | 'recovery-code' | 'passkey' | 'provider' | null,
 ): Promise<void> {
   const now = services.clock.now();
   await services.write(async (tx) => {

@@ -1,6 +1,6 @@
 import { and, eq, isNull } from 'drizzle-orm';
 import { z } from 'zod';
-import { account, passwordReset, personRole, personWard, twoFactor, user, ward } from '@/db/schema';
+import { account, passkey, passwordReset, personRole, personWard, twoFactor, user, ward } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
 import { type Authorized, personActor } from '@/lib/platform/authority';
@@ -45,6 +45,7 @@ export async function personLeaves(
     const sessionsEnded = await deleteSessions(tx, personId);
     await tx.delete(account).where(eq(account.userId, personId));
     await tx.delete(twoFactor).where(eq(twoFactor.userId, personId));
+    await tx.delete(passkey).where(eq(passkey.personId, personId));
     await tx.delete(personRole).where(eq(personRole.personId, personId));
     await tx.delete(personWard).where(eq(personWard.personId, personId));
     await tx

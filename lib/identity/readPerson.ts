@@ -3,6 +3,7 @@ import { personRole, personWard, session, user } from '@/db/schema';
 import type { Person } from '@/lib/platform/authority';
 import type { Services } from '@/lib/platform/services';
 import { authOf, IDLE_MS, SESSION_SECONDS } from './auth';
+import { hasPasskey } from './passkeys/passkeysOf';
 import type { Role } from './permissions';
 
 export interface SignedIn extends Person {
@@ -45,7 +46,11 @@ export async function readPerson(services: Needs, headers: Headers): Promise<Sig
     roles: held,
     wardIds: wards.map((row) => row.wardId),
     sessionId: found.session.id,
-    needsSecondFactor: held.includes('itadmin') && person.twoFactorEnabled !== true,
+    // Whoever has a passkey and no authenticator signs in by the passkey alone (signIn.ts).
+    needsSecondFactor:
+      held.includes('itadmin') &&
+      person.twoFactorEnabled !== true &&
+      !(await hasPasskey(services, person.id)),
   };
 }
 

@@ -1,6 +1,6 @@
 import { eq, ne } from 'drizzle-orm';
 import { z } from 'zod';
-import { session, twoFactor, user } from '@/db/schema';
+import { passkey, session, twoFactor, user } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
 import { enqueueMail } from '@/lib/mail/enqueue';
@@ -15,7 +15,7 @@ import { deleteSessions } from './sessions';
 export const Removal = z.strictObject({ reason: z.string().trim().min(5).max(500) });
 
 /**
- * Take away the second factor of somebody who lost both authenticator and recovery codes. Their sessions end, they are
+ * Take away the second factor of somebody who lost both authenticator and recovery codes, with their passkeys. Their sessions end, they are
  * told by mail, and where the role asks for one they set up another before anything else.
  *
  * @throws Refusal `not-found`, `not-possible` for oneself and where there is none
@@ -35,7 +35,9 @@ export async function removeSecondFactor(
       .delete(twoFactor)
       .where(eq(twoFactor.userId, personId))
       .returning({ id: twoFactor.id });
-    if (gone.length === 0) throw new Refusal('not-possible', `${person.name} has no second factor.`);
+    const keys = await tx.delete(passkey).where(eq(passkey.personId, personId)).returning({ id: passkey.id });
+    if (gone.length + keys.length === 0)
+      throw new Refusal('not-possible', `${person.name} has no second factor.`);
     await tx
       .update(user)
       .set({ twoFactorEnabled: false, updatedAt: new Date(now) })

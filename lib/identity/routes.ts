@@ -54,6 +54,10 @@ export const ROUTES = {
   'POST /api/auth/recovery-code': { public: true },
   'POST /api/auth/forgot': { public: true },
   'POST /api/auth/reset': { public: true },
+  'POST /api/auth/passkey/options': { public: true },
+  'POST /api/auth/passkey': { public: true },
+  'GET /api/auth/single-sign-on': { public: true },
+  'GET /api/auth/single-sign-on/callback': { public: true },
   'POST /api/invitations/accept': { public: true },
 
   'GET /api/device/v1/openapi.json': { public: true },
@@ -117,6 +121,9 @@ export const ROUTES = {
   'POST /api/account/second-factor/confirm': { permission: 'self', beforeSecondFactor: true },
   'POST /api/account/second-factor/remove': { permission: 'self' },
   'POST /api/account/recovery-codes': { permission: 'self' },
+  'POST /api/account/passkeys/options': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/passkeys': { permission: 'self', beforeSecondFactor: true },
+  'POST /api/account/passkeys/[id]/remove': { permission: 'self' },
 
   'GET /api/people': { permission: 'people.read' },
   'GET /api/people/[id]': { permission: 'people.read' },

@@ -6,7 +6,7 @@ import { enqueueMail } from '@/lib/mail/enqueue';
 import { type Authorized, personActor } from '@/lib/platform/authority';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
-import { callAuth, type Peer } from './callAuth';
+import { callAuth, type Peer, sessionToken } from './callAuth';
 import { checkOwnPassword } from './changePassword';
 import { noticeLetter } from './letters';
 import { claimCode } from './passSecondFactor';
@@ -99,15 +99,6 @@ export async function confirmSecondFactor(
     await enqueueMail(tx, now, noticeLetter(services, by.email, 'second-factor-set'));
   });
   return { cookies: answer.cookies };
-}
-
-/** The token of the session that these Set-Cookie lines begin. */
-function sessionToken(cookies: string[]): string {
-  for (const line of cookies) {
-    const [, value] = /\.session_token=([^;]+)/.exec(line) ?? [];
-    if (value) return decodeURIComponent(value).split('.')[0] ?? '';
-  }
-  return '';
 }
 
 const wrongCode = (sentence: string) =>

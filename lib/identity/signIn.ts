@@ -1,12 +1,14 @@
 import { eq } from 'drizzle-orm';
 import { z } from 'zod';
-import { signInTry, user } from '@/db/schema';
+import { session, signInTry, user } from '@/db/schema';
 import { appendEntries } from '@/lib/custody/append';
 import { SERVICE_ACTOR } from '@/lib/custody/entry';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
-import { callAuth, type Peer } from './callAuth';
+import { callAuth, type Peer, sessionToken } from './callAuth';
 import { noteSignedIn } from './noteSignedIn';
+import { hasPasskey } from './passkeys/passkeysOf';
+import { deleteSessions } from './sessions';
 import { takeTry, tryWasRight } from './signInLimits';
 
 export const SignIn = z.strictObject({
@@ -16,7 +18,8 @@ export const SignIn = z.strictObject({
 export type SignIn = z.infer<typeof SignIn>;
 
 export interface SignInStep {
-  next: 'in' | 'second-factor';
+  /** `passkey`: the password was right, and whoever holds it shows a passkey instead of a code. */
+  next: 'in' | 'second-factor' | 'passkey';
   /** Set-Cookie lines for the browser. */
   cookies: string[];
 }
@@ -50,7 +53,15 @@ export async function signIn(services: Needs, peer: Peer, wanted: SignIn): Promi
   }
   await tryWasRight(services, wanted.email, peer.address);
   if (answer.body.twoFactorRedirect === true) return { next: 'second-factor', cookies: answer.cookies };
-  await noteSignedIn(services, (answer.body.user as { id: string }).id, null);
+  const personId = (answer.body.user as { id: string }).id;
+  if (await hasPasskey(services, personId)) {
+    // Nobody gets the cookie of this session: with a passkey and no authenticator the passkey is the second factor.
+    await services.write((tx) =>
+      deleteSessions(tx, personId, eq(session.token, sessionToken(answer.cookies))),
+    );
+    return { next: 'passkey', cookies: [] };
+  }
+  await noteSignedIn(services, personId, null);
   return { next: 'in', cookies: answer.cookies };
 }
 
