@@ -103,7 +103,7 @@ export function SignInForm({ next, first, notice, signOn }: SignInFormProps) {
       {step === 'password' ? (
         <div className="flex flex-wrap gap-3 border-t border-line pt-5">
           <Button busy={busy === 'passkey'} onClick={() => void go('passkey', sendPasskey)}>
-            Sign in with a passkey
+            Use a passkey
           </Button>
           {signOn ? (
             // A route and not a page: the browser itself must go there.
@@ -111,7 +111,7 @@ export function SignInForm({ next, first, notice, signOn }: SignInFormProps) {
               href={`/api/auth/single-sign-on?next=${encodeURIComponent(next)}`}
               className={buttonClass('plain')}
             >
-              Sign in with {signOn}
+              Use {signOn}
             </a>
           ) : null}
         </div>

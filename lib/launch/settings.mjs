@@ -21,7 +21,8 @@ export function localSettings({ folder, webPort, storagePort }) {
   const secrets = JSON.parse(readFileSync(path, 'utf8'));
   return {
     ...secrets,
-    BELLKEEP_ORIGIN: `http://127.0.0.1:${webPort}`,
+    // A name and not a number: browsers make passkeys for names only.
+    BELLKEEP_ORIGIN: `http://localhost:${webPort}`,
     DATABASE_URL: `file:${join(folder, 'bellkeep.db')}`,
     S3_ENDPOINT: `http://127.0.0.1:${storagePort}`,
     S3_BUCKET: 'recordings',
