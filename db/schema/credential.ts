@@ -9,7 +9,7 @@ export const signingKey = sqliteTable(
   {
     kid: text('kid').primaryKey(),
     algorithm: text('algorithm', { enum: ['EdDSA', 'ES256'] }).notNull(),
-    use: text('use', { enum: ['device-token', 'tree-head'] }).notNull(),
+    use: text('use', { enum: ['device-token', 'client-token', 'tree-head'] }).notNull(),
     publicJwk: text('public_jwk').notNull(),
     sealedPrivateJwk: text('sealed_private_jwk').notNull(),
     createdAt: at('created_at').notNull(),

@@ -46,6 +46,36 @@ export const PROBLEMS = {
     keeps: 'Nothing was stored.',
     next: 'Repeat the call with the nonce of the DPoP-Nonce field in the proof.',
   },
+  'client-refused': {
+    status: 401,
+    title: 'The API client is not accepted',
+    keeps: 'Nothing was given.',
+    next: 'Check client id and secret, or the assertion and its times (RFC 7523). The Key room shows whether it was revoked.',
+  },
+  'grant-refused': {
+    status: 400,
+    title: 'This grant is not given here',
+    keeps: 'Nothing was given.',
+    next: 'Ask with grant_type=client_credentials (RFC 6749, 4.4).',
+  },
+  'scope-refused': {
+    status: 400,
+    title: 'The client does not have that scope',
+    keeps: 'Nothing was given.',
+    next: 'Ask for scopes that the client has, or leave scope out and get all of them.',
+  },
+  'access-token-refused': {
+    status: 401,
+    title: 'The access token is not accepted',
+    keeps: 'Nothing was given.',
+    next: 'Ask for a new token. They live ten minutes.',
+  },
+  'scope-missing': {
+    status: 403,
+    title: 'The access token does not allow this',
+    keeps: 'Nothing was given.',
+    next: 'Ask IT for a client with the scope that the detail names.',
+  },
   'sign-in-required': {
     status: 401,
     title: 'Sign in first',

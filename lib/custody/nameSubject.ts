@@ -1,5 +1,5 @@
 import { eq } from 'drizzle-orm';
-import { credential, device, encounter, listeningSession, patient, user } from '@/db/schema';
+import { apiClient, credential, device, encounter, listeningSession, patient, user } from '@/db/schema';
 import type { Services } from '@/lib/platform/services';
 import type { Subject } from './entry';
 
@@ -47,6 +47,10 @@ export async function nameSubject(
       return await first(read.select({ label: user.name }).from(user).where(eq(user.id, id)).limit(1));
     case 'policy':
       return { kind, id, label: `Policy: ${id}` };
+    case 'client':
+      return await first(
+        read.select({ label: apiClient.name }).from(apiClient).where(eq(apiClient.id, id)).limit(1),
+      );
     case 'connection':
       return { kind, id, label: `Connection: ${id}` };
     default:

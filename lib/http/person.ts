@@ -72,7 +72,7 @@ function checkOrigin(request: Request, ours: string): void {
 }
 
 /** Answer a request, with an id in every answer and log line and a problem for every refusal. */
-async function answerCall(
+export async function answerCall(
   key: RouteKey,
   work: (services: Services, requestId: string, fields: Headers) => Promise<Response>,
 ): Promise<Response> {
@@ -127,7 +127,7 @@ async function paramsOf(route: RouteContext): Promise<Params> {
   return params;
 }
 
-function parseQuery(url: URL, schema: z.ZodType | undefined): unknown {
+export function parseQuery(url: URL, schema: z.ZodType | undefined): unknown {
   if (!schema) return undefined;
   const parsed = schema.safeParse(Object.fromEntries(url.searchParams));
   if (parsed.success) return parsed.data;
@@ -135,7 +135,7 @@ function parseQuery(url: URL, schema: z.ZodType | undefined): unknown {
   throw new Refusal('body-invalid', 'The address has parameters that are not right.', { errors });
 }
 
-const peerOf = (services: Services, request: Request): Peer => ({
+export const peerOf = (services: Services, request: Request): Peer => ({
   address: clientAddress(services, request),
   headers: request.headers,
 });

@@ -1,3 +1,4 @@
+import type { Scope } from '@/lib/contract/scopes';
 import type { Permission } from './permissions';
 
 interface Access {
@@ -7,6 +8,8 @@ interface Access {
   public?: true;
   /** A device with its credential. */
   device?: true;
+  /** Another system whose token has this scope. */
+  client?: Scope;
   /** Reachable without the second factor that one's role demands, because it is where one sets it up. */
   beforeSecondFactor?: true;
 }
@@ -41,6 +44,7 @@ export const ROUTES = {
   'PAGE /keyroom/policies': { permission: 'policy.read' },
   'PAGE /keyroom/policies/[kind]': { permission: 'policy.read' },
   'PAGE /keyroom/connections': { permission: 'connections.read' },
+  'PAGE /keyroom/clients': { permission: 'connections.read' },
   'PAGE /ledger': { permission: 'thread.read' },
   'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
   'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },
@@ -66,6 +70,11 @@ export const ROUTES = {
   'POST /api/device/v1/heartbeat': { device: true },
   'POST /api/device/v1/recordings': { device: true },
   'POST /api/device/v1/recordings/[id]/complete': { device: true },
+
+  'POST /api/v1/token': { public: true },
+  'GET /api/v1/recordings': { client: 'recordings.read' },
+  'GET /api/v1/devices': { client: 'devices.read' },
+  'GET /api/v1/ledger': { client: 'ledger.read' },
 
   'GET /api/events': { permission: 'self' },
   'GET /api/search': { permission: 'self' },
@@ -112,6 +121,11 @@ export const ROUTES = {
   'POST /api/connections/[kind]': { permission: 'connections.write' },
   'POST /api/connections/[kind]/test': { permission: 'connections.write' },
 
+  'GET /api/clients': { permission: 'connections.read' },
+  'POST /api/clients': { permission: 'connections.write' },
+  'POST /api/clients/[id]/rotate': { permission: 'connections.write' },
+  'POST /api/clients/[id]/revoke': { permission: 'connections.write' },
+
   'GET /api/me': { permission: 'self', beforeSecondFactor: true },
   'POST /api/account/sign-out': { permission: 'self', beforeSecondFactor: true },
   'GET /api/account/sessions': { permission: 'self', beforeSecondFactor: true },
@@ -154,5 +168,13 @@ export type PersonRouteKey = { [K in RouteKey]: PermissionOf<K> extends never ? 
 export type PublicRouteKey = {
   [K in RouteKey]: (typeof ROUTES)[K] extends { public: true } ? K : never;
 }[RouteKey];
+
+/** The scope that a route of other systems asks for; `never` for the rest. */
+export type ScopeOf<K extends RouteKey> = (typeof ROUTES)[K] extends { client: infer S extends Scope }
+  ? S
+  : never;
+
+/** Keys of routes that other systems reach with a token of their own. */
+export type ClientRouteKey = { [K in RouteKey]: ScopeOf<K> extends never ? never : K }[RouteKey];
 
 export const accessOf = (key: RouteKey): Access => ROUTES[key];

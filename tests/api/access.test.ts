@@ -92,10 +92,10 @@ describe('the table of routes', () => {
     }
   });
 
-  test('has a permission, everybody, or a device in each line, and only one of them', () => {
+  test('has a permission, everybody, a device or another system in each line, and only one of them', () => {
     for (const key of keys) {
-      const { permission, public: everybody, device } = accessOf(key);
-      expect([permission, everybody, device].filter(Boolean), key).toHaveLength(1);
+      const { permission, public: everybody, device, client } = accessOf(key);
+      expect([permission, everybody, device, client].filter(Boolean), key).toHaveLength(1);
     }
   });
 
@@ -128,6 +128,14 @@ describe.each(apiKeys.filter((key) => accessOf(key).device))('%s', (key) => {
     const { answer } = await callAs(visitor, key);
     expect(answer.status).toBe(401);
     expect((await problemOf(answer)).code).toBe('token-invalid');
+  });
+});
+
+describe.each(apiKeys.filter((key) => accessOf(key).client))('%s', (key) => {
+  test.each(VISITORS)('is not for %s', async (visitor) => {
+    const { answer } = await callAs(visitor, key);
+    expect(answer.status).toBe(401);
+    expect((await problemOf(answer)).code).toBe('access-token-refused');
   });
 });
 

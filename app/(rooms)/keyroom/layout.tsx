@@ -9,6 +9,7 @@ const PAGES = [
   { href: '/keyroom/people', label: 'People', permission: 'people.read' },
   { href: '/keyroom/policies', label: 'Policies', permission: 'policy.read' },
   { href: '/keyroom/connections', label: 'Connections', permission: 'connections.read' },
+  { href: '/keyroom/clients', label: 'API clients', permission: 'connections.read' },
 ] as const satisfies { href: string; label: string; permission: Permission }[];
 
 /** Above every page of the Key room: the way to the others. */
