@@ -9,5 +9,7 @@ export default {
     'opus-decoder',
     'mpg123-decoder',
     'pino',
+    'pdfkit',
+    'yazl',
   ],
 };

@@ -58,6 +58,8 @@ const TITLES: Record<string, string> = {
   'looked-at': 'Looked at',
   copied: 'Copied',
   exported: 'Exported',
+  'evidence-asked': 'Evidence asked for',
+  'evidence-decided': 'Evidence decided',
   'session-opened': 'Listening session opened',
   'session-closed': 'Listening session ended',
   'access-outside-wards': 'Looked outside their wards',
@@ -107,7 +109,15 @@ const ALARMS = new Set([
   'filing-superseded',
   'access-outside-wards',
 ]);
-const ACCESSES = new Set(['heard', 'downloaded', 'looked-at', 'copied', 'exported']);
+const ACCESSES = new Set([
+  'heard',
+  'downloaded',
+  'looked-at',
+  'copied',
+  'exported',
+  'evidence-asked',
+  'evidence-decided',
+]);
 
 const text = (value: unknown): string =>
   typeof value === 'string' ? value : typeof value === 'number' ? value.toLocaleString('en-GB') : '';
@@ -187,6 +197,11 @@ const SENTENCES: Record<string, Sentence> = {
       typeof d.from === 'number' && typeof d.to === 'number' && `${text(d.from)} to ${text(d.to)} s`,
       typeof d.seconds === 'number' && `for ${text(d.seconds)} s`,
     ),
+  exported: (d, e) =>
+    join(actorWords(e.actor), d.what === 'evidence' && `evidence package. Reason given: “${text(d.reason)}”`),
+  'evidence-asked': (d, e) =>
+    `${actorWords(e.actor)}. Reason given: “${text(d.reason)}”${d.secondPerson === true ? '. A second person decides' : ''}`,
+  'evidence-decided': (d, e) => `${text(d.decision)} by ${actorWords(e.actor)}`,
   downloaded: (d, e) => join(actorWords(e.actor), d.why === 'verification' && 'to hash it in the browser'),
   'access-outside-wards': (d, e) => `${actorWords(e.actor)}. Reason given: “${text(d.reason)}”`,
   'session-opened': (d, e) =>

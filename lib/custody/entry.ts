@@ -35,6 +35,8 @@ export const ENTRY_KINDS = [
   'looked-at',
   'copied',
   'exported',
+  'evidence-asked',
+  'evidence-decided',
   'session-opened',
   'session-closed',
   'access-outside-wards',

@@ -39,6 +39,8 @@ export const PERMISSIONS = {
   'health.read': ['itadmin'],
   /** The whole ledger. */
   'ledger.read': ['auditor'],
+  /** Evidence packages: ask, decide what somebody else asked, take away. */
+  'evidence.make': ['auditor'],
   /** The custody thread of what one may see anyway. */
   'thread.read': ['auditor', 'clinician', 'itadmin', 'biomed'],
 } as const satisfies Record<string, readonly Role[]>;

@@ -108,6 +108,9 @@ export const ROUTES = {
   'GET /api/ledger/heads': { permission: 'thread.read' },
   'GET /api/ledger/heads/[size]/locked': { permission: 'thread.read' },
   'GET /api/ledger/recordings/[number]/original': { permission: 'recording.read' },
+  'POST /api/ledger/recordings/[number]/evidence': { permission: 'evidence.make' },
+  'GET /api/ledger/evidence/[id]': { permission: 'evidence.make' },
+  'POST /api/ledger/evidence/[id]/decide': { permission: 'evidence.make' },
   'GET /api/ledger/proofs/inclusion': { permission: 'thread.read' },
   'GET /api/ledger/proofs/consistency': { permission: 'thread.read' },
 

@@ -2,6 +2,7 @@ import type { Metadata } from 'next';
 import Link from 'next/link';
 import { notFound } from 'next/navigation';
 import { CustodyThread } from '@/components/custody/CustodyThread';
+import { EvidencePanel, MakeEvidence } from '@/components/custody/EvidencePanel';
 import { wordedEntry } from '@/components/custody/entryWords';
 import { VerifyThread } from '@/components/custody/VerifyThread';
 import { LiveRefresh } from '@/components/shell/LiveEvents';
@@ -11,6 +12,7 @@ import { PageHead } from '@/components/ui/PageHead';
 import { Pager } from '@/components/ui/Pager';
 import { Section } from '@/components/ui/Panel';
 import { Time } from '@/components/ui/Time';
+import { listEvidence } from '@/lib/custody/evidence/listEvidence';
 import { readThread, threadExtent } from '@/lib/custody/readThread';
 import { requirePage } from '@/lib/http/page';
 import { recordingForThread } from '@/lib/http/threadAccess';
@@ -29,9 +31,11 @@ export default async function ThreadPage({ params, searchParams }: Props) {
   if (!recording) notFound();
   const subject = { kind: 'recording' as const, id: recording.id };
   const before = Number((await searchParams).before) || undefined;
-  const [page, extent] = await Promise.all([
+  const mayExport = may(person.roles, 'evidence.make');
+  const [page, extent, requests] = await Promise.all([
     readThread(services, subject, { before }),
     threadExtent(services, subject),
+    mayExport ? listEvidence(services, recording.id) : [],
   ]);
   const alarms = page.rows.filter((row) => wordedEntry(row.entry).tone === 'alarm');
   const path = `/ledger/recordings/${recording.number}`;
@@ -41,9 +45,14 @@ export default async function ThreadPage({ params, searchParams }: Props) {
       <PageHead
         title={`Custody of ${recording.number}`}
         action={
-          may(person.roles, 'recording.read') ? (
-            <ButtonLink href={`/recordings/${recording.number}`}>Open the recording</ButtonLink>
-          ) : null
+          <>
+            {may(person.roles, 'recording.read') ? (
+              <ButtonLink href={`/recordings/${recording.number}`}>Open the recording</ButtonLink>
+            ) : null}
+            {mayExport ? (
+              <MakeEvidence number={recording.number} sealed={recording.sealedAt !== null} />
+            ) : null}
+          </>
         }
       >
         {extent.count.toLocaleString('en-GB')} {extent.count === 1 ? 'entry' : 'entries'} since{' '}
@@ -82,6 +91,7 @@ export default async function ThreadPage({ params, searchParams }: Props) {
               })),
             }}
           />
+          {requests.length > 0 ? <EvidencePanel requests={requests} personId={person.id} /> : null}
           <Section title="The original">
             <DefinitionList
               facts={[
