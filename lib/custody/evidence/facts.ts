@@ -1,8 +1,7 @@
 import type { Entry } from '../entry';
 import { hex } from '../pure/hash';
 import { readHead } from '../pure/head';
-import type { Making } from './files';
-import type { Evidence } from './gather';
+import type { Evidence, Making } from './gather';
 
 export interface ReportEntry {
   sequence: number;

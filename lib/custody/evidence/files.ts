@@ -3,17 +3,10 @@ import { readFile } from 'node:fs/promises';
 import { join } from 'node:path';
 import type { Services } from '@/lib/platform/services';
 import { parseVerifier } from '../pure/note';
-import type { Evidence } from './gather';
+import type { Evidence, Making } from './gather';
 import { htmlReport } from './htmlReport';
 import { pdfReport } from './pdfReport';
 import { verifySteps } from './verifySteps';
-
-/** Why and by whom a package is made. */
-export interface Making {
-  madeAt: string;
-  madeBy: string;
-  reason: string;
-}
 
 export interface PackageFile {
   /** Inside the package's folder. */

@@ -15,6 +15,13 @@ import { type HeadKey, headKeys } from '../heads/headKeys';
 import { type HeadRow, type HeadSigner, lastHead, makeHead } from '../heads/makeHead';
 import { type ConsistencyProof, consistencyProof, type InclusionProof, inclusionProofs } from '../tree/prove';
 
+/** Why and by whom a package is made. */
+export interface Making {
+  madeAt: string;
+  madeBy: string;
+  reason: string;
+}
+
 /** Everything a package holds of a recording, as of one tree head. */
 export interface Evidence {
   number: string;

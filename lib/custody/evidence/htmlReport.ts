@@ -1,6 +1,5 @@
 import { CAUTION, PROVES, reportEntries, reportFacts } from './facts';
-import type { Making } from './files';
-import type { Evidence } from './gather';
+import type { Evidence, Making } from './gather';
 
 const escaped = (text: string): string => text.replace(/[&<>"']/g, (c) => `&#${c.charCodeAt(0)};`);
 

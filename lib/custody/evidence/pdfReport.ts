@@ -1,7 +1,6 @@
 import PDFDocument from 'pdfkit';
 import { CAUTION, PROVES, reportEntries, reportFacts } from './facts';
-import type { Making } from './files';
-import type { Evidence } from './gather';
+import type { Evidence, Making } from './gather';
 
 // The page's own fonts are variable ones in WOFF2, which the library cannot embed: the standard fonts of PDF are used.
 const TEXT = 'Helvetica';
