@@ -127,11 +127,11 @@ function ofTheRate(m: Measures, limits: JudgingLimits): Finding[] {
       threshold: expected[0] ?? 0,
     });
   }
-  if (m.bandwidthHz !== null && (m.brickWall || m.upsampled)) {
+  // Above a noise floor of its own a steep edge may be the sound's.
+  if (m.bandwidthHz !== null && m.upsampled) {
     found.push({
       code: 'bandwidth-limited',
-      // Above a noise floor of its own a steep edge may be the sound's.
-      severity: m.upsampled && m.bandwidthHz < limits.bandwidthCareHz ? 'care' : 'note',
+      severity: m.bandwidthHz < limits.bandwidthCareHz ? 'care' : 'note',
       value: m.bandwidthHz,
       unit: 'Hz',
       threshold: limits.bandwidthCareHz,

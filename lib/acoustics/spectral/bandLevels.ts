@@ -26,10 +26,11 @@ export class BandLevels {
   /** @param mostColumns that a push will bring */
   band(lowHz: number, highHz: number, mostColumns: number): Band {
     const { binHz, bins } = this.layout;
-    const from = Math.min(bins - 1, Math.max(1, Math.round(lowHz / binHz)));
+    // A bin reaches half a bin to both sides: the edges of the outermost are nearest to those of the band.
+    const from = Math.min(bins - 1, Math.max(1, Math.round(lowHz / binHz + 0.5)));
     return {
       from,
-      to: Math.min(bins, Math.max(from + 1, Math.round(highHz / binHz) + 1)),
+      to: Math.min(bins, Math.max(from + 1, Math.round(highHz / binHz + 0.5))),
       sums: this.kernels.arena.floats(mostColumns),
     };
   }

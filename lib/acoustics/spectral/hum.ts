@@ -8,8 +8,11 @@ const MAINS_HZ = [50, 60] as const;
 /** EN 50160: within 1 % of the nominal frequency for 99.5 % of a year in interconnected systems (read second hand). */
 const SEARCH = 0.01;
 const SHORTEST_SECONDS = 4;
-const LEAST_PROMINENCE_DB = 15;
+/** What stands still need not stand out so far: beside a loud heart, hum that breath covers is 11 dB out and 0.7 steady. */
+const LEAST_PROMINENCE_DB = 11;
 const LEAST_STEADINESS = 0.55;
+/** A line so far above every other within reach is no tooth of a comb, however the sound around it comes and goes. */
+const ALONE = { aboveOthersDb: 10, prominenceDb: 20, fromHz: 0.75 };
 const WINDOW_SECONDS = 0.25;
 /** What a line is held against lies this far from it. */
 const NEIGHBOURS_HZ = { from: 2, to: 8 };
@@ -28,7 +31,8 @@ interface Line {
  * the median of the bins 2 to 8 Hz away. Heart sounds make a comb of lines at the heart rate that can stand 60 dB out,
  * so a line must also stand still: demodulated in 0.25 s Hann windows, the 10th percentile of its amplitude over the
  * median is at least 0.55 (real hum 0.64 to 0.97, heart at most 0.27; measured on synthetic clips). Amplitude is twice
- * the 25th percentile, not the peak of the spectrum. Not seen: hum more than about 20 dB below loud breath, and clips
+ * the 25th percentile, not the peak of the spectrum. Where the heart drowns a weaker hum at every beat, a line that stands
+ * 10 dB above every other within 8 Hz is hum too, as a heart's lines come in rows; its amplitude is that of the spectrum. Not seen: hum more than about 20 dB below loud breath, and clips
  * under 4 s. Goertzel 1958 for the demodulation's ancestor (from memory).
  *
  * @param samples the clip divided to a rate above 2 x 320 Hz, in the kernels' arena
@@ -81,7 +85,17 @@ function lineNear(kernels: Kernels, samples: Float32Array, rateHz: number, nomin
   const amplitudes = demodulate(samples, rateHz, frequencyHz);
   const [low10, low25, middle] = percentiles(amplitudes, [0.1, 0.25, 0.5]) as [number, number, number];
   const steadiness = middle > 0 ? low10 / middle : 0;
+  const alone = prominenceDb >= ALONE.prominenceDb && isAlone(at, peak, bins);
+  if (alone) return { frequencyHz, steadiness, amplitude: Math.sqrt(at(peak)) };
   return steadiness >= LEAST_STEADINESS ? { frequencyHz, steadiness, amplitude: low25 } : null;
+}
+
+/** Whether no other line within reach comes near: heart sounds have one every 0.7 to 3 Hz, each about as strong. */
+function isAlone(at: (offset: number) => number, peak: number, bins: (hz: number) => number): boolean {
+  let other = 0;
+  for (let k = bins(ALONE.fromHz); k <= bins(NEIGHBOURS_HZ.to); k++)
+    other = Math.max(other, at(peak + k), at(peak - k));
+  return at(peak) >= other * 10 ** (ALONE.aboveOthersDb / 10);
 }
 
 /** Amplitude of a line in successive 0.25 s Hann windows, half overlapping. */

@@ -9,7 +9,7 @@ const OVERLAP = 4;
 
 /** Power about a centre frequency, at the resolution of the whole clip. */
 export interface Zoom {
-  /** |X|^2 by offset, up to 10 Hz from the centre, which is index 0; negative offsets count from the end. */
+  /** Square of the amplitude of a steady line by offset, up to 10 Hz from the centre, which is index 0; negative offsets count from the end. */
   power: Float64Array;
   binHz: number;
 }
@@ -46,6 +46,8 @@ export function zoomSpectrum(
   const re = new Float64Array(length);
   const im = new Float64Array(length);
   const whole = hann(count);
+  // Both windows pass a half of a steady line, and a line has its other half at the negative frequency.
+  const gain = (0.5 * size * 0.5 * count) / 2;
   // The windows' own phases, taken back to the beginning of the clip.
   const turn = [Math.cos(step * hop), Math.sin(step * hop)] as const;
   let c = 1;
@@ -67,7 +69,7 @@ export function zoomSpectrum(
     const k = n < 0 ? n + length : n;
     const offsetHz = n * binHz;
     const own = hannResponse((offsetHz * size) / rateHz);
-    power[k] = ((re[k] as number) ** 2 + (im[k] as number) ** 2) / (own * own);
+    power[k] = ((re[k] as number) ** 2 + (im[k] as number) ** 2) / (own * gain) ** 2;
   }
   return { power, binHz };
 }

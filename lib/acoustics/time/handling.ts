@@ -27,6 +27,9 @@ const CRACK_FRAMES = 20;
 const LEAST_CRACK = 0.4;
 /** The low band against 20-400 Hz: breath that leaks into it stays below 0.1. */
 const LEAST_LOW_SHARE = 0.2;
+/** A heart sound lasts up to 0.15 s, and most of it lies above 40 Hz. */
+const LONGER_THAN_A_BEAT_SECONDS = 0.25;
+const DEEP_SHARE = 0.6;
 /** A click rings this long in the low band. */
 const CLICK_SECONDS = 0.06;
 /** A burst that stays this long below half its threshold is over. */
@@ -105,18 +108,33 @@ export class HandlingProbe {
     const frameSeconds = this.#frameSeconds;
     if (low.length * frameSeconds < SHORTEST_CLIP_SECONDS) return [];
     const beat = beatLevel(low, frameSeconds);
-    const threshold = Math.max(OVER_MEDIAN * percentile(low, 0.5), OVER_BEAT_WITH_CRACK * beat, LEAST_RMS);
-    const bursts: Span[] = [];
+    const least = Math.max(OVER_MEDIAN * percentile(low, 0.5), LEAST_RMS);
+    const found = this.#candidates(Math.max(least, OVER_BEAT_WITH_CRACK * beat)).filter(
+      ({ start, end }) => risesAt(low, start) && this.#isContact(start, end, beat),
+    );
+    // Rubbing that goes on and on hides the beats that it should be held against; it is longer and deeper than one.
+    const long = this.#candidates(least).filter(
+      ({ start, end }) =>
+        (end - start) * frameSeconds >= LONGER_THAN_A_BEAT_SECONDS && this.#isDeep(start, end),
+    );
+    return merged([...found, ...long]).map(({ start, end }) => ({
+      startSeconds: start * frameSeconds,
+      durationSeconds: (end - start) * frameSeconds,
+    }));
+  }
+
+  /** Stretches of the low band above a threshold, in frames. */
+  #candidates(threshold: number): Frames[] {
+    const low = this.#envelopes.low.values.view();
+    const bursts: Frames[] = [];
     for (let i = RISE_FRAMES; i < low.length; i++) {
       if ((low[i] as number) < threshold) continue;
       const start = i;
       let end = i;
       for (; i < low.length && i - end < GAP_FRAMES; i++)
         if ((low[i] as number) >= threshold / 2) end = i + 1;
-      const seconds = (end - start) * frameSeconds;
-      if (seconds < SHORTEST_BURST_SECONDS || seconds > LONGEST_BURST_SECONDS) continue;
-      if (risesAt(low, start) && this.#isContact(start, end, beat))
-        bursts.push({ startSeconds: start * frameSeconds, durationSeconds: seconds });
+      const seconds = (end - start) * this.#frameSeconds;
+      if (seconds >= SHORTEST_BURST_SECONDS && seconds <= LONGEST_BURST_SECONDS) bursts.push({ start, end });
     }
     return bursts;
   }
@@ -133,6 +151,29 @@ export class HandlingProbe {
     const before = high.values.view().subarray(Math.max(0, from - CRACK_FRAMES), from);
     return crack >= LEAST_CRACK * loudest && crack >= CRACK_RISE * percentile(before, 0.5);
   }
+
+  /** Whether most of what lies between 20 and 290 Hz is matched by what lies below 40. */
+  #isDeep(start: number, end: number): boolean {
+    const { low, broad } = this.#envelopes;
+    const middle = (envelope: Envelope) => percentile(envelope.values.view().subarray(start, end), 0.5);
+    return middle(low) >= DEEP_SHARE * middle(broad);
+  }
+}
+
+interface Frames {
+  start: number;
+  end: number;
+}
+
+/** In order, those that overlap made one. */
+function merged(bursts: Frames[]): Frames[] {
+  const out: Frames[] = [];
+  for (const burst of bursts.sort((a, b) => a.start - b.start)) {
+    const last = out.at(-1);
+    if (last && burst.start <= last.end) last.end = Math.max(last.end, burst.end);
+    else out.push({ ...burst });
+  }
+  return out;
 }
 
 const largestOf = (values: Float32Array): number => {
