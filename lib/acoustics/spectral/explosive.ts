@@ -19,6 +19,8 @@ const LEAST_RATE_FOR_WIDTH_HZ = 8000;
 const LEAST_SAMPLES = 3;
 const DENSEST_A_SECOND = 30;
 const MOST = 500;
+/** Onsets nearer to one another are of one burst. */
+const SAME_SECONDS = 0.003;
 
 /**
  * Short explosive places: above 150 Hz (twice), beyond 6 times the local median deviation, and back to it within 25 ms. The
@@ -115,8 +117,12 @@ export class ExplosiveProbe {
       crossing === undefined || this.rateHz < LEAST_RATE_FOR_WIDTH_HZ
         ? null
         : ((crossing - onset) / this.rateHz) * 1000;
+    const startSeconds = (offset + onset) / this.rateHz;
+    // A burst that reaches into the next block has its onset in this one.
+    const last = this.#found.at(-1);
+    if (last && startSeconds - last.startSeconds < SAME_SECONDS) return;
     this.#found.push({
-      startSeconds: (offset + onset) / this.rateHz,
+      startSeconds,
       initialDeflectionMs: ms(crossings[0]),
       twoCycleMs: ms(crossings[3]),
     });
