@@ -41,7 +41,7 @@ function select(values: Float64Array, rank: number): void {
   while (left < right) {
     const pivot = values[(left + right) >> 1] as number;
     // Nothing compares to NaN: leave such values where they are.
-    if (pivot !== pivot) return;
+    if (Number.isNaN(pivot)) return;
     let i = left;
     let j = right;
     while (i <= j) {

@@ -18,8 +18,7 @@ const LEAST_MEDIAN_DB = { short: 14, long: 12 };
 const LOW_PITCH = { belowHz: 200, leastSeconds: 0.2, leastDb: 16 };
 const MOST = 200;
 
-const middle = (values: number[]): number =>
-  [...values].sort((a, b) => a - b)[values.length >> 1] as number;
+const middle = (values: number[]): number => [...values].sort((a, b) => a - b)[values.length >> 1] as number;
 const inDb = (power: number): number => 10 * Math.log10(power + 1e-12);
 
 interface Peak {
