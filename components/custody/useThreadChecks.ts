@@ -25,26 +25,46 @@ const waiting = (): Checks =>
 export function useThreadChecks(number: string | null, mayOpen: boolean, thread: CheckedThread) {
   const [checks, setChecks] = useState(waiting);
   const [held, setHeld] = useState<string>();
-  const turn = useRef(0);
   // Drawn anew by every live event: only other entries are another thread.
   const what = thread.entries.map(({ leafHash }) => leafHash).join();
   const latest = useRef(thread);
   latest.current = thread;
-  const run = useCallback(
-    async (withOriginal: boolean, against?: string) => {
-      const mine = ++turn.current;
-      const report = (check: Check) => {
-        if (mine === turn.current) setChecks((before) => ({ ...before, [check.id]: check }));
-      };
-      const sources = ledgerSources(mayOpen ? number : null);
-      await checkThread(latest.current, sources, report, against);
-      if (withOriginal && number !== null) await checkOriginal(latest.current, sources, report);
+  const logTurn = useRef(0);
+  const originalTurn = useRef(0);
+
+  const checkLog = useCallback(
+    async (against?: string) => {
+      const report = reporter(logTurn, setChecks);
+      await checkThread(latest.current, ledgerSources(mayOpen ? number : null), report, against);
     },
     [number, mayOpen],
   );
+  // Of its own: fetching the original is an entry, the entry draws the page anew, and that checks the log once more.
+  const checkBytes = useCallback(async () => {
+    if (number === null) return;
+    const report = reporter(originalTurn, setChecks);
+    await checkOriginal(latest.current, ledgerSources(mayOpen ? number : null), report);
+  }, [number, mayOpen]);
+
   // biome-ignore lint/correctness/useExhaustiveDependencies: `what` stands for the entries
   useEffect(() => {
-    void run(false, held);
-  }, [run, what, held]);
-  return { checks, held, setHeld, verify: () => run(true, held) };
+    void checkLog(held);
+  }, [checkLog, what, held]);
+  return {
+    checks,
+    held,
+    setHeld,
+    verify: async () => {
+      await checkLog(held);
+      await checkBytes();
+    },
+  };
+}
+
+/** Tells of checks until the same ones are begun again. */
+function reporter(turn: { current: number }, tell: (change: (before: Checks) => Checks) => void) {
+  const mine = ++turn.current;
+  return (check: Check) => {
+    if (mine === turn.current) tell((before) => ({ ...before, [check.id]: check }));
+  };
 }

@@ -6,9 +6,11 @@ import { device, encounter, patient, policy, ward } from '@/db/schema';
 import { DEFAULT_LIMITS } from '@/lib/acoustics/judge';
 import { appendEntries } from '@/lib/custody/append';
 import { SERVICE_ACTOR } from '@/lib/custody/entry';
+import { makeHead } from '@/lib/custody/heads/makeHead';
 import { describeModel } from '@/lib/fleet/describeModel';
 import { closeAnalysis } from '@/lib/http/passage';
 import { createServices } from '@/lib/http/services';
+import { headSigner } from '@/lib/http/treeHeads';
 import { readEnv } from '@/lib/platform/env';
 import { newId } from '@/lib/platform/ids';
 import type { Services } from '@/lib/platform/services';
@@ -200,6 +202,7 @@ async function live(services: Services, clock: SeedClock, house: House): Promise
     .sort((a, b) => (b.enrolledDaysAgo ?? 0) - (a.enrolledDaysAgo ?? 0));
   let sent = 0;
   let enrolled = 0;
+  let headAt = 0;
   const enrolUntil = async (moment: number) => {
     for (; enrolled < toEnrol.length; enrolled++) {
       const next = toEnrol[enrolled] as SeededDevice;
@@ -215,6 +218,10 @@ async function live(services: Services, clock: SeedClock, house: House): Promise
       end - DAYS * DAY_MS + ((DAYS * DAY_MS - 40 * MINUTE_MS) * (v + random.next() * 0.6)) / visits;
     await enrolUntil(moment);
     clock.set(moment);
+    if (moment > headAt + DAY_MS) {
+      await makeHead(services, await headSigner(services));
+      headAt = moment;
+    }
     const ready = fleet.filter(
       (one) => one.authenticated && (one.assetTag !== 'HM-0369' || moment < end - 6 * DAY_MS),
     );

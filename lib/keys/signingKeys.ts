@@ -1,4 +1,4 @@
-import { and, eq, gt, isNull, or } from 'drizzle-orm';
+import { and, eq, gt, isNull, ne, or } from 'drizzle-orm';
 import {
   type CryptoKey,
   calculateJwkThumbprint,
@@ -88,6 +88,8 @@ export async function publicKeySet(services: Pick<Services, 'read' | 'clock'>): 
     .from(signingKey)
     .where(
       and(
+        // The key of tree heads is published by itself: what trusts this set trusts it for tokens.
+        ne(signingKey.use, 'tree-head'),
         isNull(signingKey.compromisedAt),
         or(isNull(signingKey.retiredAt), gt(signingKey.retiredAt, services.clock.now())),
       ),

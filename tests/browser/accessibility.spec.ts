@@ -23,7 +23,7 @@ const PAGES: Record<string, string[]> = {
     'session',
   ],
   tomasz: ['/keyroom', '/keyroom/people', '/keyroom/people/invitations'],
-  marguerite: ['/ledger', '/ledger?q=HM-0301'],
+  marguerite: ['/ledger', '/ledger?q=HM-0301', '/ledger/heads'],
 };
 
 /** Places whose address is only known from what is there. */

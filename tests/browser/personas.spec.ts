@@ -160,7 +160,8 @@ test('the auditor goes from a recording number to its checked thread in two inte
   await ledger.getByRole('searchbox').fill(number);
   await ledger.getByRole('list', { name: 'Threads' }).getByRole('link', { name: number }).click();
   await expect(ledger.getByRole('heading', { name: `Custody of ${number}` })).toBeVisible();
-  await expect(ledger.getByText(/hash to their leaves/)).toBeVisible();
+  const verify = ledger.getByRole('region', { name: 'Verify in this browser' });
+  await expect(verify.getByRole('listitem').filter({ hasText: 'Every entry hashes' })).toContainText('right');
   await expect(ledger.getByText('Sealed', { exact: true }).first()).toBeVisible();
 });
 

@@ -4,6 +4,8 @@ import type { HeadSource, KnownHead } from './headSources';
 
 /** A head is stored within moments; this long the outbox may be behind before it is said. */
 const STORED_WITHIN_MS = 3_600_000;
+/** Heads that are held to be judged at the end; beyond them nothing new is learnt. */
+const MOST_HELD = 10_000;
 
 /** One sorted source of heads, one head ahead. */
 class Ahead {
@@ -82,7 +84,7 @@ export class HeadCheck {
     for (const head of heads) {
       if (sameBytes(head.root, computed)) {
         if (head.source !== 'database') this.agreedTo = size;
-      } else this.#differing.push(head);
+      } else if (this.#differing.length < MOST_HELD) this.#differing.push(head);
     }
     this.#compare(size, heads);
   }
@@ -93,7 +95,7 @@ export class HeadCheck {
     const outside = heads.filter(({ source }) => source !== 'database');
     if (ours) this.#lastKnown = size;
     if (!ours) {
-      this.#unknown.push(...outside);
+      if (this.#unknown.length < MOST_HELD) this.#unknown.push(...outside);
       return;
     }
     const other = outside.find(({ root }) => !sameBytes(root, ours.root));
