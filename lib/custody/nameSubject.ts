@@ -1,5 +1,14 @@
 import { eq } from 'drizzle-orm';
-import { apiClient, credential, device, encounter, listeningSession, patient, user } from '@/db/schema';
+import {
+  apiClient,
+  credential,
+  device,
+  encounter,
+  listeningSession,
+  patient,
+  user,
+  webhook,
+} from '@/db/schema';
 import type { Services } from '@/lib/platform/services';
 import type { Subject } from './entry';
 
@@ -50,6 +59,10 @@ export async function nameSubject(
     case 'client':
       return await first(
         read.select({ label: apiClient.name }).from(apiClient).where(eq(apiClient.id, id)).limit(1),
+      );
+    case 'webhook':
+      return await first(
+        read.select({ label: webhook.name }).from(webhook).where(eq(webhook.id, id)).limit(1),
       );
     case 'connection':
       return { kind, id, label: `Connection: ${id}` };

@@ -6,10 +6,13 @@ import { sweepRecordings } from '@/lib/ingest/sweep';
 import { currentSigningKey } from '@/lib/keys/signingKeys';
 import { Message } from '@/lib/mail/port';
 import { startOutbox } from '@/lib/platform/outbox';
+import { DELIVERY } from '@/lib/webhooks/fanOut';
+import { forgetDeliveries } from '@/lib/webhooks/forgetDeliveries';
 import { recordPeerAddresses } from './clientAddress';
 import { ingestServices } from './passage';
 import { getServices } from './services';
 import { headWork, startHeads } from './treeHeads';
+import { startWebhooks } from './webhooks';
 
 const SWEEP_EVERY_MS = 30_000;
 const TIDY_EVERY_MS = 3_600_000;
@@ -21,10 +24,15 @@ export async function startProcess(): Promise<void> {
   await applyMigrations(services.database);
   await bringTreeUp(services);
   await currentSigningKey(services, 'device-token');
-  startOutbox(services, {
-    mail: (payload) => services.mail.send(Message.parse(payload)),
-    ...headWork(services),
-  });
+  startOutbox(
+    services,
+    {
+      mail: (payload) => services.mail.send(Message.parse(payload)),
+      ...headWork(services),
+    },
+    { except: DELIVERY },
+  );
+  startWebhooks(services);
   startHeads(services);
 
   let sweeping = false;
@@ -43,7 +51,7 @@ export async function startProcess(): Promise<void> {
   }, SWEEP_EVERY_MS);
   sweep.unref();
   const tidy = () =>
-    forgetExpired(services).catch((error: unknown) =>
+    Promise.all([forgetExpired(services), forgetDeliveries(services)]).catch((error: unknown) =>
       services.log.error({ err: error }, 'what has ended could not be removed'),
     );
   setInterval(tidy, TIDY_EVERY_MS).unref();

@@ -45,6 +45,8 @@ export const ROUTES = {
   'PAGE /keyroom/policies/[kind]': { permission: 'policy.read' },
   'PAGE /keyroom/connections': { permission: 'connections.read' },
   'PAGE /keyroom/clients': { permission: 'connections.read' },
+  'PAGE /keyroom/webhooks': { permission: 'connections.read' },
+  'PAGE /keyroom/webhooks/[id]': { permission: 'connections.read' },
   'PAGE /ledger': { permission: 'thread.read' },
   'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
   'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },
@@ -128,6 +130,13 @@ export const ROUTES = {
   'POST /api/clients': { permission: 'connections.write' },
   'POST /api/clients/[id]/rotate': { permission: 'connections.write' },
   'POST /api/clients/[id]/revoke': { permission: 'connections.write' },
+
+  'POST /api/webhooks': { permission: 'connections.write' },
+  'POST /api/webhooks/[id]/test': { permission: 'connections.write' },
+  'POST /api/webhooks/[id]/pause': { permission: 'connections.write' },
+  'POST /api/webhooks/[id]/rotate': { permission: 'connections.write' },
+  'POST /api/webhooks/[id]/remove': { permission: 'connections.write' },
+  'POST /api/webhooks/deliveries/[id]/repeat': { permission: 'connections.write' },
 
   'GET /api/me': { permission: 'self', beforeSecondFactor: true },
   'POST /api/account/sign-out': { permission: 'self', beforeSecondFactor: true },

@@ -1,4 +1,4 @@
-import { and, asc, eq, isNull, lte, or } from 'drizzle-orm';
+import { and, asc, eq, isNull, lte, ne, or } from 'drizzle-orm';
 import { outbox } from '@/db/schema';
 import type { Services } from './services';
 
@@ -10,6 +10,12 @@ type Needs = Pick<Services, 'read' | 'write' | 'clock' | 'log'>;
 /** Does one piece of work. It may be called twice for the same one: a process can die after doing it. */
 export type Handler = (payload: Record<string, unknown>) => Promise<void>;
 
+/** One kind of work alone, or all but one: what is slow has a line of its own. */
+export type Line = { only: string } | { except: string };
+
+const inLine = (line: Line | undefined) =>
+  line === undefined ? undefined : 'only' in line ? eq(outbox.kind, line.only) : ne(outbox.kind, line.except);
+
 /** Minutes grow from one to an hour, so that a mail server that is down for a day is survived. */
 const backoffMs = (tries: number): number => Math.min(3_600_000, 60_000 * 2 ** Math.max(0, tries - 1));
 
@@ -19,7 +25,11 @@ const backoffMs = (tries: number): number => Math.min(3_600_000, 60_000 * 2 ** M
  *
  * @returns how many pieces were done
  */
-export async function runOutboxOnce(services: Needs, handlers: Record<string, Handler>): Promise<number> {
+export async function runOutboxOnce(
+  services: Needs,
+  handlers: Record<string, Handler>,
+  line?: Line,
+): Promise<number> {
   let done = 0;
   for (;;) {
     const now = services.clock.now();
@@ -32,6 +42,7 @@ export async function runOutboxOnce(services: Needs, handlers: Record<string, Ha
             isNull(outbox.doneAt),
             isNull(outbox.deadAt),
             lte(outbox.dueAt, now),
+            inLine(line),
             or(isNull(outbox.leasedUntil), lte(outbox.leasedUntil, now)),
           ),
         )
@@ -76,7 +87,7 @@ export async function runOutboxOnce(services: Needs, handlers: Record<string, Ha
 }
 
 /** Keep the outbox empty from now on. @returns how to stop */
-export function startOutbox(services: Needs, handlers: Record<string, Handler>): () => void {
+export function startOutbox(services: Needs, handlers: Record<string, Handler>, line?: Line): () => void {
   let running = false;
   const timer = setInterval(async () => {
     if (running) return;
@@ -85,9 +96,16 @@ export function startOutbox(services: Needs, handlers: Record<string, Handler>):
       const [due] = await services.read
         .select({ id: outbox.id })
         .from(outbox)
-        .where(and(isNull(outbox.doneAt), isNull(outbox.deadAt), lte(outbox.dueAt, services.clock.now())))
+        .where(
+          and(
+            isNull(outbox.doneAt),
+            isNull(outbox.deadAt),
+            lte(outbox.dueAt, services.clock.now()),
+            inLine(line),
+          ),
+        )
         .limit(1);
-      if (due) await runOutboxOnce(services, handlers);
+      if (due) await runOutboxOnce(services, handlers, line);
     } catch (error) {
       services.log.error({ err: error }, 'the outbox could not be worked');
     } finally {

@@ -10,6 +10,7 @@ const PAGES = [
   { href: '/keyroom/policies', label: 'Policies', permission: 'policy.read' },
   { href: '/keyroom/connections', label: 'Connections', permission: 'connections.read' },
   { href: '/keyroom/clients', label: 'API clients', permission: 'connections.read' },
+  { href: '/keyroom/webhooks', label: 'Webhooks', permission: 'connections.read' },
 ] as const satisfies { href: string; label: string; permission: Permission }[];
 
 /** Above every page of the Key room: the way to the others. */
