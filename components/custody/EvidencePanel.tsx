@@ -90,7 +90,7 @@ function RequestLine({ request, mine }: { request: Request; mine: boolean }) {
   const open = request.decision === 'not-needed' || request.decision === 'approved';
   return (
     <li className="grid gap-1.5 border-b border-line py-2.5 last:border-0">
-      <p className="break-words">“{request.reason}”</p>
+      <p className="[overflow-wrap:anywhere]">“{request.reason}”</p>
       <p className="text-13 text-ink-soft">
         {request.askedBy.name}, <Time at={request.askedAt} mode="minute" withZone />.{' '}
         <span className={`font-semibold ${tone}`}>{word}</span>

@@ -7,6 +7,7 @@ import { Notice } from '@/components/ui/Notice';
 import { Panel } from '@/components/ui/Panel';
 import { CHECK_IDS, type Check, type CheckedThread, type CheckId } from '@/lib/custody/pure/checkThread';
 import { HeldHeadDialog } from './HeldHeadDialog';
+import { InclusionPath } from './InclusionPath';
 import { useThreadChecks } from './useThreadChecks';
 import { publishedKeys } from './verifySources';
 
@@ -36,7 +37,7 @@ interface Props {
 
 /** Checks the thread in the reader's own browser, one after another, with the values that were computed. */
 export function VerifyThread({ number, mayOpen, thread }: Props) {
-  const { checks, held, setHeld, verify } = useThreadChecks(number, mayOpen, thread);
+  const { checks, seen, held, setHeld, verify } = useThreadChecks(number, mayOpen, thread);
   const [keys, setKeys] = useState<string[]>([]);
   const [asking, setAsking] = useState(false);
   const [busy, setBusy] = useState(false);
@@ -58,8 +59,10 @@ export function VerifyThread({ number, mayOpen, thread }: Props) {
       {bad.length > 0 ? (
         <div className="p-[18px] pb-0">
           <Notice tone="alarm" title="This thread does not verify">
-            {bad.map((check) => `${TITLES[check.id]}: it does not. ${check.detail}`).join(' ')} Tell the
-            auditor and IT before anything else is done with it.
+            <span className="[overflow-wrap:anywhere]">
+              {bad.map((check) => `Not so: “${TITLES[check.id]}”. ${check.detail}`).join(' ')} Tell the
+              auditor and IT before anything else is done with it.
+            </span>
           </Notice>
         </div>
       ) : null}
@@ -68,6 +71,12 @@ export function VerifyThread({ number, mayOpen, thread }: Props) {
           <CheckLine key={check.id} check={check} held={held !== undefined} />
         ))}
       </ol>
+      {seen.path ? <InclusionPath {...seen.path} /> : null}
+      {seen.note ? (
+        <pre className="max-h-[240px] overflow-auto border-t border-line bg-well px-[18px] py-3 font-mono text-13 whitespace-pre-wrap [overflow-wrap:anywhere]">
+          {seen.note}
+        </pre>
+      ) : null}
       <div className="flex flex-wrap gap-2.5 border-t border-line px-[18px] py-3.5">
         <Button
           variant="primary"
@@ -126,7 +135,7 @@ function CheckLine({ check, held }: { check: Check; held: boolean }) {
       </span>
       {check.detail ? (
         <span
-          className={`col-start-2 col-end-4 break-words text-13 ${check.state === 'wrong' ? 'text-rust' : 'text-ink-soft'}`}
+          className={`col-start-2 col-end-4 [overflow-wrap:anywhere] text-13 ${check.state === 'wrong' ? 'text-rust' : 'text-ink-soft'}`}
         >
           {check.detail}
         </span>

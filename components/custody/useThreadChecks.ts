@@ -8,10 +8,17 @@ import {
   type CheckId,
   checkOriginal,
   checkThread,
+  type Sources,
 } from '@/lib/custody/pure/checkThread';
 import { ledgerSources } from './verifySources';
 
 type Checks = Record<CheckId, Check>;
+
+/** What the checks went by, to be shown: the newest head as it is signed, and the path of one entry. */
+export interface Seen {
+  note: string | null;
+  path: { sequence: number; size: number; leaf: string; path: readonly string[] } | null;
+}
 
 const waiting = (): Checks =>
   Object.fromEntries(
@@ -24,6 +31,7 @@ const waiting = (): Checks =>
  */
 export function useThreadChecks(number: string | null, mayOpen: boolean, thread: CheckedThread) {
   const [checks, setChecks] = useState(waiting);
+  const [seen, setSeen] = useState<Seen>({ note: null, path: null });
   const [held, setHeld] = useState<string>();
   // Drawn anew by every live event: only other entries are another thread.
   const what = thread.entries.map(({ leafHash }) => leafHash).join();
@@ -35,7 +43,8 @@ export function useThreadChecks(number: string | null, mayOpen: boolean, thread:
   const checkLog = useCallback(
     async (against?: string) => {
       const report = reporter(logTurn, setChecks);
-      await checkThread(latest.current, ledgerSources(mayOpen ? number : null), report, against);
+      const sources = watched(ledgerSources(mayOpen ? number : null), latest.current, setSeen);
+      await checkThread(latest.current, sources, report, against);
     },
     [number, mayOpen],
   );
@@ -52,6 +61,7 @@ export function useThreadChecks(number: string | null, mayOpen: boolean, thread:
   }, [checkLog, what, held]);
   return {
     checks,
+    seen,
     held,
     setHeld,
     verify: async () => {
@@ -66,5 +76,28 @@ function reporter(turn: { current: number }, tell: (change: (before: Checks) => 
   const mine = ++turn.current;
   return (check: Check) => {
     if (mine === turn.current) tell((before) => ({ ...before, [check.id]: check }));
+  };
+}
+
+/** Sources that show what they gave. */
+function watched(
+  sources: Sources,
+  thread: CheckedThread,
+  show: (change: (before: Seen) => Seen) => void,
+): Sources {
+  return {
+    ...sources,
+    async heads() {
+      const answer = await sources.heads();
+      show((before) => ({ ...before, note: answer.rows[0]?.note ?? null }));
+      return answer;
+    },
+    async inclusion(sequences, size) {
+      const proofs = await sources.inclusion(sequences, size);
+      const proof = proofs.at(-1);
+      const leaf = thread.entries.find(({ sequence }) => sequence === proof?.sequence)?.leafHash;
+      show((before) => ({ ...before, path: proof && leaf ? { ...proof, size, leaf } : null }));
+      return proofs;
+    },
   };
 }

@@ -52,6 +52,28 @@ export async function rootFromInclusion(
 }
 
 /**
+ * On which side of the entry's own hash each hash of its path stands, leaf first (RFC 9162, 2.1.3.2): for showing a
+ * path, not for proving by it. As long as the path is.
+ */
+export function sidesOfPath(index: number, size: number): ('left' | 'right')[] {
+  const sides: ('left' | 'right')[] = [];
+  let at = index;
+  let last = size - 1;
+  while (last > 0) {
+    if (isOdd(at) || at === last) {
+      sides.push('left');
+      while (!isOdd(at) && at !== 0) {
+        at = half(at);
+        last = half(last);
+      }
+    } else sides.push('right');
+    at = half(at);
+    last = half(last);
+  }
+  return sides;
+}
+
+/**
  * That an entry is in the tree of a head (RFC 9162, 2.1.3.2).
  *
  * @throws CustodyError as rootFromInclusion, and `proof-root` where the path leads to another root

@@ -3,9 +3,14 @@ import fc from 'fast-check';
 import { describe, expect, test } from 'vitest';
 import { CustodyError } from '@/lib/custody/pure/errors';
 import { fromHex, hex } from '@/lib/custody/pure/hash';
-import { rootFromInclusion, verifyConsistency, verifyInclusion } from '@/lib/custody/pure/proofs';
+import {
+  rootFromInclusion,
+  sidesOfPath,
+  verifyConsistency,
+  verifyInclusion,
+} from '@/lib/custody/pure/proofs';
 import { consistencyParts, inclusionParts, type Place, placesOfRange } from '@/lib/custody/pure/shape';
-import { foldHashes } from '@/lib/custody/tree/hashes';
+import { foldHashes, nodeHashNow } from '@/lib/custody/tree/hashes';
 import { naiveConsistency, naiveInclusion, naiveLeaf, naiveRoot } from '@/tests/support/naiveTree';
 
 const read = <T>(name: string): T =>
@@ -115,6 +120,13 @@ describe('any tree, against the definition', () => {
         const path = inclusionParts(index, size).map((part) => new Uint8Array(fold(part, leaves)));
         expect(path.map(hex)).toEqual(naiveInclusion(index, leaves).map(hex));
         const root = naiveRoot(leaves);
+        const sides = sidesOfPath(index, size);
+        const folded = path.reduce(
+          (hash, sibling, i) =>
+            new Uint8Array(sides[i] === 'left' ? nodeHashNow(sibling, hash) : nodeHashNow(hash, sibling)),
+          leaf,
+        );
+        expect([hex(folded), sides.length]).toEqual([hex(root), path.length]);
         await verifyInclusion(leaf, index, size, path, root);
         if (size > 1) {
           const bad = path.map((hash) => Uint8Array.from(hash));
