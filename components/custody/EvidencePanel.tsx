@@ -20,6 +20,14 @@ interface Request {
 
 const packageHref = (id: string) => `/api/ledger/evidence/${id}`;
 
+/** As a download, so that a refusal leaves the page where it is. */
+function takeAway(id: string): void {
+  const link = document.createElement('a');
+  link.href = packageHref(id);
+  link.download = '';
+  link.click();
+}
+
 /** The button, and the question for a reason. What is open at once is taken away at once. */
 export function MakeEvidence({ number, sealed }: { number: string; sealed: boolean }) {
   const [open, setOpen] = useState(false);
@@ -51,7 +59,7 @@ export function MakeEvidence({ number, sealed }: { number: string; sealed: boole
             { reason },
             crypto.randomUUID(),
           );
-          if (answer.state === 'open') window.location.assign(packageHref(answer.id));
+          if (answer.state === 'open') takeAway(answer.id);
           router.refresh();
         }}
       >

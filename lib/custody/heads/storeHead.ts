@@ -1,6 +1,6 @@
-import { and, eq, isNull, lt } from 'drizzle-orm';
+import { and, desc, eq, isNull, lt, lte } from 'drizzle-orm';
 import { z } from 'zod';
-import { outbox } from '@/db/schema';
+import { outbox, policyVersion } from '@/db/schema';
 import type { Services } from '@/lib/platform/services';
 import { hex } from '../pure/hash';
 import { readHead } from '../pure/head';
@@ -15,9 +15,21 @@ export const headKey = (head: { size: number; root: Uint8Array }): string =>
   `${sizeKey(head.size)}-${hex(head.root)}`;
 const sizeKey = (size: number): string => `${HEADS_PREFIX}${String(size).padStart(16, '0')}`;
 
-/** A head outlives what it proves: the originals sealed that day, by a year. */
-const lockedUntil = (services: Pick<Services, 'env'>, head: Pick<HeadRow, 'madeAt'>): number =>
-  Math.floor(head.madeAt + (services.env.RETENTION_YEARS + 1) * YEAR_MS);
+/** A head outlives what it proves, the originals sealed that day, by a year; by policy or setting, whichever is longer. */
+async function lockedUntil(
+  services: Pick<Services, 'env' | 'read'>,
+  head: Pick<HeadRow, 'madeAt'>,
+): Promise<number> {
+  const [policy] = await services.read
+    .select({ settings: policyVersion.settings })
+    .from(policyVersion)
+    .where(and(eq(policyVersion.kind, 'retention'), lte(policyVersion.madeAt, head.madeAt)))
+    .orderBy(desc(policyVersion.version))
+    .limit(1);
+  const decided = policy?.settings.originalYears;
+  const years = Math.max(services.env.RETENTION_YEARS, typeof decided === 'number' ? decided : 0);
+  return Math.floor(head.madeAt + (years + 1) * YEAR_MS);
+}
 
 const Payload = z.object({ size: z.number().int() });
 
@@ -36,7 +48,7 @@ export async function storeHead(
   if (!head) throw new Error(`there is no head of ${size} entries`);
   const key = headKey(head);
   const body = Buffer.from(head.note, 'utf8');
-  const retainUntilMs = lockedUntil(services, head);
+  const retainUntilMs = await lockedUntil(services, head);
   const { outcome, lock } = await services.storage.put({
     key,
     body,

@@ -1,6 +1,6 @@
 import { eq } from 'drizzle-orm';
 import { afterEach, beforeEach, expect, test } from 'vitest';
-import { custodyHead, custodyHeadMail, outbox, signingKey } from '@/db/schema';
+import { custodyHead, custodyHeadMail, outbox, policyVersion, signingKey } from '@/db/schema';
 import { appendEntries } from '@/lib/custody/append';
 import { SERVICE_ACTOR } from '@/lib/custody/entry';
 import { verifierLines } from '@/lib/custody/heads/headKeys';
@@ -96,6 +96,25 @@ test('a head lies under lock in storage after the outbox ran, once and again', a
   await expect(house.services.storage.remove(headKey(head))).rejects.toMatchObject({ code: 'locked' });
   const { entries } = await house.services.storage.list(HEADS_PREFIX);
   expect(entries).toHaveLength(1);
+});
+
+test('a head is locked a year longer than policy keeps originals', async () => {
+  const madeAt = house.clock.now();
+  await house.services.write(async (tx) => {
+    await tx.insert(policyVersion).values({
+      kind: 'retention',
+      version: 1,
+      settings: { originalYears: 30 },
+      reason: 'children',
+      madeBy: 'somebody',
+      madeAt,
+    });
+  });
+  await append();
+  const head = await made();
+  await work();
+  const kept = await lockedHead(house.services, head);
+  expect(kept?.retainUntilMs).toBeGreaterThan(madeAt + 30.9 * 365 * 24 * HOUR_MS);
 });
 
 test('a head whose storing failed is stored later, and one that was stored though the answer was lost is not doubled', async () => {
