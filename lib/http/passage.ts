@@ -21,6 +21,10 @@ export function ingestServices(services: Services): IngestServices {
   return { ...services, analysis: shared.bellkeepAnalysis, place: placeRecording };
 }
 
+/** What the analysing threads do now; null where none was needed yet. */
+export const analysisFigures = (): ReturnType<AnalysisPool['figures']> | null =>
+  shared.bellkeepAnalysis?.figures() ?? null;
+
 /** End the analysing threads: for commands that stop. */
 export async function closeAnalysis(): Promise<void> {
   await shared.bellkeepAnalysis?.close();

@@ -6,6 +6,7 @@ import { sweepRecordings } from '@/lib/ingest/sweep';
 import { currentSigningKey } from '@/lib/keys/signingKeys';
 import { Message } from '@/lib/mail/port';
 import { startOutbox } from '@/lib/platform/outbox';
+import { beat, beginPulse } from '@/lib/platform/pulse';
 import { DELIVERY } from '@/lib/webhooks/fanOut';
 import { forgetDeliveries } from '@/lib/webhooks/forgetDeliveries';
 import { recordPeerAddresses } from './clientAddress';
@@ -21,6 +22,7 @@ const TIDY_EVERY_MS = 3_600_000;
 export async function startProcess(): Promise<void> {
   recordPeerAddresses();
   const services = await getServices();
+  beginPulse(services.clock.now());
   await applyMigrations(services.database);
   await bringTreeUp(services);
   await currentSigningKey(services, 'device-token');
@@ -43,7 +45,9 @@ export async function startProcess(): Promise<void> {
       const done = await sweepRecordings(ingestServices(services));
       if (done > 0) services.log.info({ done }, 'the sweep carried clips on');
       await endForgottenSessions(services);
+      beat('sweep', services.clock.now(), true);
     } catch (error) {
+      beat('sweep', services.clock.now(), false);
       services.log.error({ err: error }, 'the sweep failed');
     } finally {
       sweeping = false;

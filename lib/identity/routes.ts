@@ -47,6 +47,7 @@ export const ROUTES = {
   'PAGE /keyroom/clients': { permission: 'connections.read' },
   'PAGE /keyroom/webhooks': { permission: 'connections.read' },
   'PAGE /keyroom/webhooks/[id]': { permission: 'connections.read' },
+  'PAGE /keyroom/health': { permission: 'health.read' },
   'PAGE /ledger': { permission: 'thread.read' },
   'PAGE /ledger/[kind]/[id]': { permission: 'thread.read' },
   'PAGE /ledger/recordings/[number]': { permission: 'thread.read' },

@@ -12,6 +12,8 @@ export interface AnalysisPool {
    * @returns null when the thread died or hung on it: the clip cannot be made sense of
    */
   analyse(bytes: AsyncIterable<Uint8Array>, request: AnalysisRequest): Promise<AnalysisResult | null>;
+  /** Threads it may have, those at work, and clips that wait for one. */
+  figures(): { size: number; busy: number; waiting: number };
   close(): Promise<void>;
 }
 
@@ -118,6 +120,11 @@ export function createAnalysisPool(
         give(thread, long, broken);
       }
     },
+    figures: () => ({
+      size,
+      busy: threads.filter((thread) => thread.busy).length,
+      waiting: waiting.length,
+    }),
     async close() {
       await Promise.all(threads.map((thread) => thread.worker.terminate()));
       threads.length = 0;

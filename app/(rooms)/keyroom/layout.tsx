@@ -11,6 +11,7 @@ const PAGES = [
   { href: '/keyroom/connections', label: 'Connections', permission: 'connections.read' },
   { href: '/keyroom/clients', label: 'API clients', permission: 'connections.read' },
   { href: '/keyroom/webhooks', label: 'Webhooks', permission: 'connections.read' },
+  { href: '/keyroom/health', label: 'Health', permission: 'health.read' },
 ] as const satisfies { href: string; label: string; permission: Permission }[];
 
 /** Above every page of the Key room: the way to the others. */
