@@ -22,7 +22,20 @@ const PAGES: Record<string, string[]> = {
     'encounter',
     'session',
   ],
-  tomasz: ['/keyroom', '/keyroom/people', '/keyroom/people/invitations'],
+  tomasz: [
+    '/keyroom',
+    '/keyroom/people',
+    '/keyroom/people/invitations',
+    '/keyroom/policies',
+    '/keyroom/policies/credentials',
+    '/keyroom/connections',
+    '/keyroom/clients',
+    '/keyroom/webhooks',
+    '/keyroom/health',
+    '/account',
+    '/device-api',
+    '/problems',
+  ],
   marguerite: ['/ledger', '/ledger?q=HM-0301', '/ledger/heads'],
 };
 
