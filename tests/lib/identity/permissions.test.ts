@@ -43,7 +43,15 @@ const MAY: Record<Role, Permission[]> = {
     'self',
     'thread.read',
   ],
-  auditor: ['device.read', 'ledger.read', 'policy.read', 'recording.read', 'self', 'thread.read'],
+  auditor: [
+    'device.read',
+    'evidence.make',
+    'ledger.read',
+    'policy.read',
+    'recording.read',
+    'self',
+    'thread.read',
+  ],
 };
 
 describe('the table of permissions', () => {
