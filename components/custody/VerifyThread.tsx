@@ -38,12 +38,8 @@ interface Props {
 /** Checks the thread in the reader's own browser, one after another, with the values that were computed. */
 export function VerifyThread({ number, mayOpen, thread }: Props) {
   const { checks, seen, held, setHeld, verify } = useThreadChecks(number, mayOpen, thread);
-  const [keys, setKeys] = useState<string[]>([]);
   const [asking, setAsking] = useState(false);
   const [busy, setBusy] = useState(false);
-  useEffect(() => {
-    publishedKeys().then(setKeys, () => setKeys([]));
-  }, []);
   const all = CHECK_IDS.filter((id) => number !== null || id !== 'original').map((id) => checks[id]);
   const bad = all.filter((check) => check.state === 'wrong');
   return (
@@ -56,16 +52,7 @@ export function VerifyThread({ number, mayOpen, thread }: Props) {
         </span>
       }
     >
-      {bad.length > 0 ? (
-        <div className="p-[18px] pb-0">
-          <Notice tone="alarm" title="This thread does not verify">
-            <span className="[overflow-wrap:anywhere]">
-              {bad.map((check) => `Not so: “${TITLES[check.id]}”. ${check.detail}`).join(' ')} Tell the
-              auditor and IT before anything else is done with it.
-            </span>
-          </Notice>
-        </div>
-      ) : null}
+      {bad.length > 0 ? <Alarm bad={bad} /> : null}
       <ol className="px-[18px] py-1.5">
         {all.map((check) => (
           <CheckLine key={check.id} check={check} held={held !== undefined} />
@@ -105,18 +92,41 @@ export function VerifyThread({ number, mayOpen, thread }: Props) {
           Fetching the original is written in this thread.
         </p>
       ) : null}
-      {keys.length > 0 ? (
-        <div className="border-t border-line bg-well px-[18px] py-3 text-13">
-          <p className="mb-1 text-ink-soft">
-            Published {keys.length === 1 ? 'key' : 'keys'}: compare with the one you were sent first.
-          </p>
-          {keys.map((key) => (
-            <CopyText key={key} text={key} what="key" className="block" />
-          ))}
-        </div>
-      ) : null}
+      <PublishedKeys />
       <HeldHeadDialog open={asking} onOpenChange={setAsking} onHeld={setHeld} />
     </Panel>
+  );
+}
+
+function Alarm({ bad }: { bad: readonly Check[] }) {
+  return (
+    <div className="p-[18px] pb-0">
+      <Notice tone="alarm" title="This thread does not verify">
+        <span className="[overflow-wrap:anywhere]">
+          {bad.map((check) => `Not so: “${TITLES[check.id]}”. ${check.detail}`).join(' ')} Tell the auditor
+          and IT before anything else is done with it.
+        </span>
+      </Notice>
+    </div>
+  );
+}
+
+/** The keys from the address that anybody reads. */
+function PublishedKeys() {
+  const [keys, setKeys] = useState<string[]>([]);
+  useEffect(() => {
+    publishedKeys().then(setKeys, () => setKeys([]));
+  }, []);
+  if (keys.length === 0) return null;
+  return (
+    <div className="border-t border-line bg-well px-[18px] py-3 text-13">
+      <p className="mb-1 text-ink-soft">
+        Published {keys.length === 1 ? 'key' : 'keys'}: compare with the one you were sent first.
+      </p>
+      {keys.map((key) => (
+        <CopyText key={key} text={key} what="key" className="block" />
+      ))}
+    </div>
   );
 }
 

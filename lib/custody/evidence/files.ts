@@ -49,16 +49,8 @@ const pemOf = (publicKey: Uint8Array): string =>
     .export({ type: 'spki', format: 'pem' })
     .toString();
 
-/**
- * The files of a package, by the layout that VERIFY.md and DEVELOPERS.md describe: an independent verifier can be
- * written from it. A change of it is a new number in `format`.
- */
-export async function packageFiles(
-  services: Pick<Services, 'storage'>,
-  evidence: Evidence,
-  making: Making,
-): Promise<PackageFiles> {
-  const originalPath = `original/${evidence.number}.${EXTENSIONS[evidence.original.mediaType] ?? 'bin'}`;
+/** The files that prove, and that checks go by. */
+async function provingFiles(services: Pick<Services, 'storage'>, evidence: Evidence): Promise<PackageFile[]> {
   const keys = await Promise.all(
     evidence.treeKeys.map(async ({ verifier }) => ({ verifier, ...(await parseVerifier(verifier)) })),
   );
@@ -68,7 +60,7 @@ export async function packageFiles(
       body: Buffer.from(await services.storage.getBytes(key, LARGEST_PICTURE_BYTES)),
     })),
   );
-  const proven: PackageFile[] = [
+  return [
     ...derived,
     { path: 'entries.jsonl', body: text(evidence.entries.map(({ canonical }) => `${canonical}\n`).join('')) },
     ...evidence.proofs.map((proof) => ({ path: `proofs/${proof.sequence}.json`, body: json(proof) })),
@@ -85,6 +77,19 @@ export async function packageFiles(
     { path: 'keys/device-token.jwks.json', body: json({ keys: evidence.tokenKeys }) },
     { path: 'device.json', body: json(evidence.device) },
   ];
+}
+
+/**
+ * The files of a package, by the layout that VERIFY.md and DEVELOPERS.md describe: an independent verifier can be
+ * written from it. A change of it is a new number in `format`.
+ */
+export async function packageFiles(
+  services: Pick<Services, 'storage'>,
+  evidence: Evidence,
+  making: Making,
+): Promise<PackageFiles> {
+  const originalPath = `original/${evidence.number}.${EXTENSIONS[evidence.original.mediaType] ?? 'bin'}`;
+  const proven = await provingFiles(services, evidence);
   const read: PackageFile[] = [
     { path: 'report.html', body: text(htmlReport(evidence, making)) },
     { path: 'report.pdf', body: await pdfReport(evidence, making) },

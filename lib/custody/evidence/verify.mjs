@@ -1,4 +1,5 @@
-// Checks an evidence package of Bellkeep on bare Node 20: no packages, no network. The layout is described in VERIFY.md.
+// Checks an evidence package of Bellkeep on bare Node 20: no packages, no network, one file that travels with the
+// package. The layout is described in VERIFY.md.
 //
 //   node verify.mjs FOLDER-OR-ZIP [--key VERIFIER-KEY]
 //
