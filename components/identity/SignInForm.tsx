@@ -47,10 +47,12 @@ interface SignInFormProps {
   notice: string | null;
   /** Name of the hospital's account, where single sign-on is set up. */
   signOn: string | null;
+  /** Browsers make passkeys for this address. */
+  passkeys: boolean;
 }
 
 /** E-mail and password and the second factor, a passkey, or the hospital's account. */
-export function SignInForm({ next, first, notice, signOn }: SignInFormProps) {
+export function SignInForm({ next, first, notice, signOn, passkeys }: SignInFormProps) {
   const [step, setStep] = useState<SignInStep>(first);
   const [busy, setBusy] = useState<'form' | 'passkey' | null>(null);
   const [failure, setFailure] = useState<string | null>(notice);
@@ -100,11 +102,13 @@ export function SignInForm({ next, first, notice, signOn }: SignInFormProps) {
           <OtherWay step={step} onStep={setStep} />
         </div>
       </form>
-      {step === 'password' ? (
+      {step === 'password' && (passkeys || signOn) ? (
         <div className="flex flex-wrap gap-3 border-t border-line pt-5">
-          <Button busy={busy === 'passkey'} onClick={() => void go('passkey', sendPasskey)}>
-            Use a passkey
-          </Button>
+          {passkeys ? (
+            <Button busy={busy === 'passkey'} onClick={() => void go('passkey', sendPasskey)}>
+              Use a passkey
+            </Button>
+          ) : null}
           {signOn ? (
             // A route and not a page: the browser itself must go there.
             <a

@@ -188,7 +188,9 @@ export async function clocks(services: Needs): Promise<HealthPart> {
     state: ours ? 'alarm' : off > 0 ? 'care' : 'good',
     sentence: ours
       ? `${off} of ${heard} devices heard today are off: look at the clock of this server first.`
-      : `${off} of ${count(heard, 'device', 'devices')} heard today ${off === 1 ? 'is' : 'are'} off by ${settings.deviceNoticeSeconds} s or more.`,
+      : heard === 0
+        ? 'No device was heard in the last day.'
+        : `${off} of ${count(heard, 'device', 'devices')} heard today ${off === 1 ? 'is' : 'are'} off by ${settings.deviceNoticeSeconds} s or more.`,
     figures: worst.map(({ id, assetTag, offsetMs }) => ({
       term: assetTag,
       value: `${Math.round((offsetMs ?? 0) / 1000).toLocaleString('en-GB')} s`,

@@ -3,6 +3,7 @@ import { redirect } from 'next/navigation';
 import { SignInForm, type SignInStep } from '@/components/identity/SignInForm';
 import { readVisitor } from '@/lib/http/page';
 import { safeNext } from '@/lib/http/safeNext';
+import { passkeysPossible } from '@/lib/identity/passkeys/passkeysOf';
 import { readConnection } from '@/lib/platform/connectionSetting';
 
 export const metadata: Metadata = { title: 'Sign in' };
@@ -31,6 +32,7 @@ export default async function SignInPage({
       first={STEPS[String(search.step)] ?? 'password'}
       notice={NOTICES[String(search['sign-on'])] ?? null}
       signOn={provider?.settings.name ?? null}
+      passkeys={passkeysPossible(services)}
     />
   );
 }

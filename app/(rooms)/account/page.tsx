@@ -10,7 +10,7 @@ import { Panel, Section } from '@/components/ui/Panel';
 import { requirePage } from '@/lib/http/page';
 import { hasOwnPassword } from '@/lib/identity/changePassword';
 import { listWards } from '@/lib/identity/describePerson';
-import { passkeysOf } from '@/lib/identity/passkeys/passkeysOf';
+import { passkeysOf, passkeysPossible } from '@/lib/identity/passkeys/passkeysOf';
 import { hasSecondFactor } from '@/lib/identity/secondFactor';
 import { sessionsOf } from '@/lib/identity/sessions';
 
@@ -49,9 +49,11 @@ export default async function AccountPage() {
           <Panel title="Second factor">
             <SecondFactor on={on} needed={needed && passkeys.length === 0} />
           </Panel>
-          <Panel title="Passkeys">
-            <Passkeys passkeys={passkeys} hasPassword={hasPassword} />
-          </Panel>
+          {passkeysPossible(services) ? (
+            <Panel title="Passkeys">
+              <Passkeys passkeys={passkeys} hasPassword={hasPassword} />
+            </Panel>
+          ) : null}
           <Section title="Sessions">
             <OwnSessions first={{ sessions, current: person.sessionId }} personId={person.id} />
           </Section>

@@ -1,3 +1,4 @@
+import { isIP } from 'node:net';
 import { asc, eq } from 'drizzle-orm';
 import { passkey } from '@/db/schema';
 import type { Services } from '@/lib/platform/services';
@@ -32,6 +33,10 @@ export async function hasPasskey(services: Pick<Services, 'read'>, personId: str
     .limit(1);
   return row !== undefined;
 }
+
+/** Browsers make passkeys for names only: a house that is reached by a bare address has none (WebAuthn, 5.1.2). */
+export const passkeysPossible = ({ env }: Pick<Services, 'env'>): boolean =>
+  isIP(new URL(env.BELLKEEP_ORIGIN).hostname.replace(/^\[|\]$/g, '')) === 0;
 
 /** Who we are to a browser: the host of our address (WebAuthn, 5.1.3). */
 export const relyingParty = ({ env }: Pick<Services, 'env'>) => ({

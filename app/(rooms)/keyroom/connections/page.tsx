@@ -107,7 +107,7 @@ function Connection({ line }: { line: ConnectionLine }) {
     >
       <div className="grid gap-4">
         <p className="text-ink-soft">{words.about}</p>
-        <DefinitionList facts={line.facts} />
+        {line.facts.length > 0 ? <DefinitionList facts={line.facts} /> : null}
         {line.source ? <ConnectionTest kind={line.kind} label={words.test} check={line.check} /> : null}
         {line.settable ? (
           <div>

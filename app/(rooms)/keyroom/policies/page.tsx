@@ -1,8 +1,8 @@
 import type { Metadata } from 'next';
 import Link from 'next/link';
+import { SettingsList } from '@/components/keyroom/SettingsList';
 import { settingWords } from '@/components/keyroom/settingWords';
 import { LiveRefresh } from '@/components/shell/LiveEvents';
-import { DefinitionList } from '@/components/ui/DefinitionList';
 import { PageHead } from '@/components/ui/PageHead';
 import { Panel } from '@/components/ui/Panel';
 import { Time } from '@/components/ui/Time';
@@ -47,10 +47,10 @@ export default async function PoliciesPage() {
             }
           >
             <p className="mb-3 text-ink-soft">{policy.about}</p>
-            <DefinitionList
-              facts={Object.entries(policy.fields).map(([name, field]) => ({
-                key: name,
-                term: field.label,
+            <SettingsList
+              rows={Object.entries(policy.fields).map(([name, field]) => ({
+                name,
+                label: field.label,
                 value: settingWords(policy.settings[name], field.type === 'number' ? field.unit : ''),
               }))}
             />

@@ -103,6 +103,7 @@ function Facts({ found }: { found: PersonDescription }) {
         { term: 'E-mail', value: found.email },
         { term: 'Work', value: found.jobTitle },
         { term: 'Second factor', value: FACTOR[found.secondFactor] },
+        { term: 'Passkeys', value: found.passkeys > 0 ? found.passkeys : null },
         { term: 'Joined', value: <Time at={found.joinedAt} mode="date" /> },
         { term: 'Last signed in', value: <Time at={found.lastSignedInAt} mode="minute" withZone /> },
         { term: 'Left', value: found.leftAt === null ? null : <Time at={found.leftAt} mode="minute" /> },

@@ -2,9 +2,9 @@ import type { Metadata } from 'next';
 import Link from 'next/link';
 import { notFound } from 'next/navigation';
 import { PolicyForm } from '@/components/keyroom/PolicyForm';
+import { SettingsList } from '@/components/keyroom/SettingsList';
 import { settingWords } from '@/components/keyroom/settingWords';
 import { DataTable } from '@/components/ui/DataTable';
-import { DefinitionList } from '@/components/ui/DefinitionList';
 import { EmptyState } from '@/components/ui/EmptyState';
 import { PageHead } from '@/components/ui/PageHead';
 import { Panel, Section } from '@/components/ui/Panel';
@@ -81,10 +81,10 @@ export default async function PolicyPage({
               settings={policy.settings}
             />
           ) : (
-            <DefinitionList
-              facts={fields.map((field) => ({
-                key: field.name,
-                term: field.label,
+            <SettingsList
+              rows={fields.map((field) => ({
+                name: field.name,
+                label: field.label,
                 value: settingWords(policy.settings[field.name], field.type === 'number' ? field.unit : ''),
               }))}
             />
