@@ -46,6 +46,13 @@ export default async function ClientsPage({
         newerHref={filter.after ? link({}) : null}
         filtered={query !== ''}
       />
+      <p className="mt-6 max-w-line text-13 text-ink-soft">
+        A token: POST <span className="mono">grant_type=client_credentials</span> as a form, with client id
+        and secret by HTTP Basic (RFC 6749), or with an assertion signed by the client’s own key (RFC 7523).
+        Then <span className="mono">/recordings</span>, <span className="mono">/devices</span> and{' '}
+        <span className="mono">/ledger</span>, each a page at a time: give <span className="mono">next</span>{' '}
+        back as <span className="mono">after</span>.
+      </p>
     </>
   );
 }

@@ -141,6 +141,16 @@ export default async function WebhookPage({
             }
           />
         </Section>
+        <Section title="How a receiver checks a delivery">
+          <p className="max-w-line">
+            The field <span className="mono">webhook-signature</span> holds one or two signatures, each{' '}
+            <span className="mono">v1,</span> and base64 of HMAC-SHA-256 under the secret, over{' '}
+            <span className="mono">webhook-id</span>, a full stop,{' '}
+            <span className="mono">webhook-timestamp</span>, a full stop and the body as it came. One of them
+            being right is enough. Refuse a timestamp that is more than five minutes off, and an id that was
+            seen before. Answer 2xx within ten seconds; anything else is tried again, up to twelve times.
+          </p>
+        </Section>
       </div>
     </>
   );
