@@ -42,7 +42,16 @@ const TITLES: Record<string, string> = {
   'credential-revoked': 'Credential revoked',
   'credential-misused': 'Ended credential used',
   'signing-key-made': 'Signing key made',
+  'credential-quarantined': 'Credential quarantined',
   'signing-key-superseded': 'Signing key superseded',
+  'signing-key-distrusted': 'Signing key distrusted',
+  'signing-key-retired': 'Signing key retired',
+  'rotation-started': 'Rotation run started',
+  'rotation-paused': 'Rotation run paused',
+  'rotation-resumed': 'Rotation run resumed',
+  'rotation-cancelled': 'Rotation run cancelled',
+  'rotation-ended': 'Rotation run ended',
+  'device-lost': 'Device lost',
   'slot-issued': 'Slot issued',
   'slot-refused': 'Slot refused',
   received: 'Received',
@@ -234,6 +243,19 @@ const SENTENCES: Record<string, Sentence> = {
   'credential-renewal-asked': (d, e) => `${text(d.label)} by ${actorWords(e.actor)}`,
   'credential-first-used': (d) => text(d.label),
   'credential-retired': (d) => join(text(d.label), text(d.why)),
+  'credential-quarantined': (d) => join(text(d.label), text(d.why)),
+  'signing-key-distrusted': (d, e) =>
+    join(
+      `by ${actorWords(e.actor)}`,
+      `${text(d.renewing)} renew by their own keys`,
+      d.reason ? `reason: “${text(d.reason)}”` : false,
+    ),
+  'rotation-started': (d, e) =>
+    join(text(d.label), `${text(d.members)} credentials`, `by ${actorWords(e.actor)}`),
+  'rotation-ended': (d) =>
+    join(text(d.label), `${text(d.done ?? 0)} renewed`, d.missed ? `${text(d.missed)} missed` : false),
+  'device-lost': (d, e) =>
+    join(`by ${actorWords(e.actor)}`, d.reason ? `reason: “${text(d.reason)}”` : false),
   'credential-revoked': (d, e) =>
     join(text(d.label), `by ${actorWords(e.actor)}`, d.why ? `reason: “${text(d.why)}”` : false),
   'person-invited': (d, e) =>

@@ -8,4 +8,5 @@ export * from './integration';
 export * from './patient';
 export * from './policy';
 export * from './recording';
+export * from './rotation';
 export * from './ward';

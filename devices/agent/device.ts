@@ -1,5 +1,5 @@
-import type { CredentialAnswer } from '@/lib/contract/device';
-import { ServiceProblem } from './answers';
+import { CredentialAnswer } from '@/lib/contract/device';
+import { ServiceProblem, understood } from './answers';
 import { createApi, type ServiceApi } from './api';
 import type { DeviceClock } from './clock';
 import { type Disk, folderDisk, memoryDisk } from './disk';
@@ -68,6 +68,8 @@ async function wakeState(options: DeviceOptions, disk: Disk): Promise<{ state: S
   return { state, keys };
 }
 
+export const RENEW_PATH = '/api/device/v1/token';
+
 /** Whether the service let the credential in, whatever it said to the call. */
 const wasTaken = (error: unknown): boolean =>
   error instanceof ServiceProblem && error.status < 500 && ![401, 429].includes(error.status);
@@ -131,6 +133,12 @@ function holdCredential(origin: string, disk: Disk, woken: State, keys: DeviceKe
         if (previous !== null && state.previous === previous) await keep(state.credential, null);
         return answer;
       } catch (error) {
+        if (error instanceof ServiceProblem && error.code === 'renewal-needed' && path !== RENEW_PATH) {
+          // The service trusts the key no more that signed this credential; ours still speaks for us.
+          const renewed = understood(CredentialAnswer, await api.call(RENEW_PATH, {}, { keys, credential }));
+          await keep(renewed, credential);
+          return await api.call<T>(path, body, { keys, credential: renewed });
+        }
         if (previous === null || state.previous !== previous) throw error;
         if (wasTaken(error)) await keep(state.credential, null);
         if (!(error instanceof ServiceProblem) || error.code !== 'token-invalid') throw error;

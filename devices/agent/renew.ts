@@ -1,6 +1,6 @@
 import { CredentialAnswer } from '@/lib/contract/device';
 import { understood } from './answers';
-import type { Device } from './device';
+import { type Device, RENEW_PATH } from './device';
 import { withRetry } from './retry';
 
 /**
@@ -11,7 +11,7 @@ import { withRetry } from './retry';
  */
 export async function renew(device: Device): Promise<CredentialAnswer> {
   const answer = await withRetry(device, async () =>
-    understood(CredentialAnswer, await device.call('/api/device/v1/token', {})),
+    understood(CredentialAnswer, await device.call(RENEW_PATH, {})),
   );
   await device.keepCredential(answer);
   return answer;

@@ -57,7 +57,7 @@ async function readToken(
   try {
     const { kid } = decodeProtectedHeader(token);
     const found = typeof kid === 'string' ? await verifyingKey(services, kid, 'client-token') : null;
-    if (!found) throw new errors.JWKSNoMatchingKey();
+    if (!found || found.distrusted) throw new errors.JWKSNoMatchingKey();
     const { payload } = await jwtVerify(token, found.key, {
       algorithms: [found.algorithm],
       typ: 'at+jwt',

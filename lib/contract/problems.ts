@@ -34,6 +34,12 @@ export const PROBLEMS = {
     keeps: 'Nothing was stored. Clips on the device stay valid.',
     next: 'Renew the credential, or enrol the device again at the bench.',
   },
+  'renewal-needed': {
+    status: 401,
+    title: 'The credential must be renewed first',
+    keeps: 'Nothing was stored. Clips on the device stay valid.',
+    next: 'Renew the credential with the key of the device, then repeat the call with the new one.',
+  },
   'proof-invalid': {
     status: 401,
     title: 'The proof of possession is not accepted',

@@ -13,6 +13,7 @@ import { type CredentialRow, verifyToken } from '@/lib/keys/token';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
 import { proofMemoryMs } from './nonce';
+import { noteMisuse } from './quarantineFamily';
 import { verifyProof } from './verifyProof';
 
 type Needs = Pick<Services, 'read' | 'write' | 'clock' | 'env' | 'log'>;
@@ -26,13 +27,18 @@ const refused = (why: string) => new Refusal('token-invalid', undefined, {}, { c
  * Who is calling: token, then its row (revoked, retired, superseded), then the proof of the key it is bound to.
  * First use of a successor retires its predecessor.
  *
+ * A token whose signing key is trusted no more says nothing of who shows it: then the proof alone does, by the key that
+ * the device enrolled with, and it is good for renewing only.
+ *
  * @param address the called address as devices see it, without query
- * @throws Refusal `token-invalid`, `proof-invalid`, `use-dpop-nonce`
+ * @param options.renewing the call is the one that renews
+ * @throws Refusal `token-invalid`, `proof-invalid`, `use-dpop-nonce`, `renewal-needed`
  */
 export async function authenticateDevice(
   services: Needs,
   request: Request,
   address: string,
+  options: { renewing?: boolean } = {},
 ): Promise<AuthenticatedDevice> {
   const { scheme, token } = readAuthorization(request);
   const claims = await verifyToken(services, token);
@@ -50,6 +56,7 @@ export async function authenticateDevice(
   ) {
     throw refused('no such credential');
   }
+  if (claims.distrusted && row.credential.boundThumbprint === null) throw refused('signing key distrusted');
   const now = services.clock.now();
   const standing = standingOf(row.credential, now);
   let jti: string | null = null;
@@ -72,6 +79,7 @@ export async function authenticateDevice(
     await noteMisuse(services, row, standing);
     throw refused(standing);
   }
+  if (claims.distrusted && !options.renewing) throw new Refusal('renewal-needed');
   const quietly = row.credential.firstUsedAt !== null && now - (row.device.lastHeardAt ?? 0) < HEARD_EVERY_MS;
   if (jti !== null || !quietly) await services.write((tx) => noteUse(tx, row, jti, now));
   return { device: row.device, model: row.model, credential: row.credential } as AuthenticatedDevice;
@@ -88,28 +96,6 @@ function standingOf(row: CredentialRow, now: number): string {
   if (row.expiresAt <= now) return 'expired';
   if (row.state === 'superseded' && (row.overlapEndsAt ?? 0) <= now) return 'overlap ended';
   return 'good';
-}
-
-async function noteMisuse(
-  services: Needs,
-  row: { credential: CredentialRow; device: DeviceRow },
-  why: string,
-) {
-  if (why === 'expired') return;
-  services.log.warn({ credentialId: row.credential.id, why }, 'an ended credential was used');
-  await services.write((tx) =>
-    appendEntries(tx, services.clock.now(), [
-      {
-        kind: 'credential-misused',
-        actor: deviceActor(row.device),
-        subjects: [
-          { kind: 'device', id: row.device.id },
-          { kind: 'credential', id: row.credential.id },
-        ],
-        detail: { why },
-      },
-    ]),
-  );
 }
 
 async function noteUse(

@@ -19,7 +19,17 @@ export const ENTRY_KINDS = [
   'credential-revoked',
   'credential-misused',
   'signing-key-made',
+  'credential-quarantined',
+  'rotation-started',
+  'rotation-paused',
+  'rotation-resumed',
+  'rotation-cancelled',
+  'rotation-ended',
+  'device-lost',
+  'device-found',
   'signing-key-superseded',
+  'signing-key-distrusted',
+  'signing-key-retired',
   'slot-issued',
   'slot-refused',
   'received',
@@ -89,6 +99,7 @@ export interface Subject {
     | 'credential'
     | 'session'
     | 'signing-key'
+    | 'rotation'
     | 'policy'
     | 'invitation'
     | 'connection'

@@ -44,6 +44,7 @@ export function audibleTo(services: Pick<Services, 'read' | 'clock'>, person: Pe
         return has.device;
       case 'credential':
       case 'signing-key':
+      case 'rotation':
         return has.credentials;
       case 'person':
       case 'invitation':

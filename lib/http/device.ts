@@ -49,7 +49,8 @@ async function spend(limiter: RateLimiterMemory, key: string): Promise<void> {
   }
 }
 
-const CHALLENGED = new Set(['token-invalid', 'proof-invalid']);
+const CHALLENGED = new Set(['token-invalid', 'proof-invalid', 'renewal-needed']);
+const NO_GUESS = new Set(['use-dpop-nonce', 'renewal-needed']);
 
 async function answer(
   request: Request,
@@ -101,7 +102,10 @@ async function answer(
  * nonce; every refusal is a problem of the catalogue.
  */
 export function deviceRoute<S extends z.ZodType>(
-  options: { body: S },
+  options: {
+    body: S /** The call that renews: a token of a distrusted key is enough with a proof. */;
+    renewing?: boolean;
+  },
   handler: (context: Context<z.infer<S>, AuthenticatedDevice>) => Promise<Response>,
 ) {
   return (request: Request, route: RouteContext): Promise<Response> =>
@@ -113,10 +117,11 @@ export function deviceRoute<S extends z.ZodType>(
           services,
           request,
           services.env.BELLKEEP_ORIGIN + new URL(request.url).pathname,
+          { renewing: options.renewing ?? false },
         );
       } catch (error) {
-        // A device that needs a nonce is no guesser; everything else that fails here is counted by address.
-        if (error instanceof Refusal && error.code !== 'use-dpop-nonce')
+        // A device that needs a nonce, or must renew, is no guesser; everything else that fails here is counted by address.
+        if (error instanceof Refusal && !NO_GUESS.has(error.code))
           await spend(wrong, clientAddress(services, request));
         throw error;
       }

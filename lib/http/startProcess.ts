@@ -10,7 +10,9 @@ import { beat, beginPulse } from '@/lib/platform/pulse';
 import { DELIVERY } from '@/lib/webhooks/fanOut';
 import { forgetDeliveries } from '@/lib/webhooks/forgetDeliveries';
 import { recordPeerAddresses } from './clientAddress';
+import { noticeWork } from './notices';
 import { ingestServices } from './passage';
+import { startRotation } from './rotation';
 import { getServices } from './services';
 import { headWork, startHeads } from './treeHeads';
 import { startWebhooks } from './webhooks';
@@ -31,11 +33,13 @@ export async function startProcess(): Promise<void> {
     {
       mail: (payload) => services.mail.send(Message.parse(payload)),
       ...headWork(services),
+      ...noticeWork(services),
     },
     { except: DELIVERY },
   );
   startWebhooks(services);
   startHeads(services);
+  startRotation(services);
 
   let sweeping = false;
   const sweep = setInterval(async () => {

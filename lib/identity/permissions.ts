@@ -19,6 +19,8 @@ export const PERMISSIONS = {
   'fleet.write': ['biomed'],
   /** Device pages, reached from a recording or a thread too. */
   'device.read': ['biomed', 'itadmin', 'auditor', 'clinician'],
+  /** Report a device lost: whoever hears of it first. */
+  'device.lost': ['biomed', 'itadmin'],
   'model.read': ['biomed', 'itadmin'],
   'model.write': ['biomed'],
   'bedside.read': ['clinician'],

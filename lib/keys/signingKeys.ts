@@ -28,7 +28,7 @@ async function readCurrent(services: Needs, use: SigningUse): Promise<SigningKey
 }
 
 /** An Ed25519 key pair as a row; its `kid` is the RFC 7638 thumbprint, so a kid can never name two keys. */
-async function makeRow(services: Needs, use: SigningUse): Promise<SigningKeyRow> {
+export async function makeSigningKey(services: Needs, use: SigningUse): Promise<SigningKeyRow> {
   const pair = await generateKeyPair('EdDSA', { crv: 'Ed25519', extractable: true });
   const publicJwk = await exportJWK(pair.publicKey);
   const kid = await calculateJwkThumbprint(publicJwk, 'sha256');
@@ -55,7 +55,7 @@ async function makeRow(services: Needs, use: SigningUse): Promise<SigningKeyRow>
 export async function currentSigningKey(services: Needs, use: SigningUse): Promise<SigningKeyRow> {
   const found = await readCurrent(services, use);
   if (found) return found;
-  const fresh = await makeRow(services, use);
+  const fresh = await makeSigningKey(services, use);
   return await services.write(async (tx) => {
     const [already] = await tx.select().from(signingKey).where(isCurrent(use)).limit(1);
     if (already) return already;
@@ -97,20 +97,26 @@ export async function publicKeySet(services: Pick<Services, 'read' | 'clock'>): 
   return { keys: rows.map((row) => JSON.parse(row.publicJwk) as JWK) };
 }
 
-/** A key that may still verify, by its kid; null for unknown, retired and compromised ones alike. */
+/**
+ * A key that may still verify, by its kid; null for unknown and retired ones alike.
+ *
+ * @returns `distrusted`: somebody else may hold it, so what it signed says nothing of who shows it
+ */
 export async function verifyingKey(
   services: Pick<Services, 'read' | 'clock'>,
   kid: string,
   use: SigningUse,
-): Promise<{ key: CryptoKey; algorithm: SigningKeyRow['algorithm'] } | null> {
+): Promise<{ key: CryptoKey; algorithm: SigningKeyRow['algorithm']; distrusted: boolean } | null> {
   const [row] = await services.read
     .select()
     .from(signingKey)
     .where(and(eq(signingKey.kid, kid), eq(signingKey.use, use)))
     .limit(1);
-  if (!row || row.compromisedAt !== null) return null;
-  if (row.retiredAt !== null && row.retiredAt <= services.clock.now()) return null;
+  if (!row) return null;
+  const distrusted = row.compromisedAt !== null;
+  if (!distrusted && row.retiredAt !== null && row.retiredAt <= services.clock.now()) return null;
   return {
+    distrusted,
     key: (await importJWK(JSON.parse(row.publicJwk) as JWK, row.algorithm)) as CryptoKey,
     algorithm: row.algorithm,
   };

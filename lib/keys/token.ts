@@ -38,6 +38,8 @@ export interface TokenClaims {
   deviceId: string;
   credentialId: string;
   thumbprint: string | null;
+  /** Signed by a key that is trusted no more: only a proof of the device's own key counts. */
+  distrusted: boolean;
 }
 
 const refused = (cause: unknown) => new Refusal('token-invalid', undefined, {}, { cause });
@@ -74,6 +76,7 @@ export async function verifyToken(
       deviceId: String(payload.sub),
       credentialId: String(payload.jti),
       thumbprint: typeof thumbprint === 'string' ? thumbprint : null,
+      distrusted: found.distrusted,
     };
   } catch (cause) {
     if (cause instanceof errors.JOSEError || cause instanceof TypeError || cause instanceof SyntaxError)

@@ -57,6 +57,13 @@ const MAKERS: Partial<Record<Entry['kind'], (entry: Entry, tagOf: AssetTag) => [
     const changed: [EventType, Data] = ['device.state-changed', data];
     return entry.after?.state === 'lost' ? [changed, ['device.lost', data]] : [changed];
   },
+  'device-lost': (entry, tagOf) => {
+    const data = { ...deviceOf(entry, tagOf), from: entry.before?.state, to: entry.after?.state };
+    return [
+      ['device.state-changed', data],
+      ['device.lost', data],
+    ];
+  },
   'credential-misused': (entry, tagOf) => [
     ['credential.alarm', { ...deviceOf(entry, tagOf), why: entry.detail?.why }],
   ],
