@@ -284,7 +284,10 @@ export async function countFleet(services: Pick<Services, 'read' | 'clock'>, _by
 }
 
 /** Wards, models and firmware versions to filter by. */
-export async function fleetChoices(services: Pick<Services, 'read'>, _by: Authorized<'fleet.read'>) {
+export async function fleetChoices(
+  services: Pick<Services, 'read'>,
+  _by: Authorized<'fleet.read'> | Authorized<'credential.read'>,
+) {
   const [wards, models, firmwares] = await Promise.all([
     services.read.select({ id: ward.id, name: ward.name }).from(ward).orderBy(asc(ward.name)),
     services.read

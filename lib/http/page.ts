@@ -30,6 +30,14 @@ export async function requirePage<P extends Permission>(
   return { person: person as unknown as Authorized<P>, services };
 }
 
+/** A further permission of whoever looks at a page; null where they lack it. */
+export function granted<P extends Permission>(
+  person: Authorized<Permission>,
+  permission: P,
+): Authorized<P> | null {
+  return may(person.roles, permission) ? (person as unknown as Authorized<P>) : null;
+}
+
 /** What a page shows, or the page for what one may not see and for what does not exist, which look alike. */
 export async function orNotFound<T>(wanted: Promise<T>): Promise<T> {
   try {

@@ -6,6 +6,8 @@ import { may, type Permission } from '@/lib/identity/permissions';
 /** The pages of the Key room, each with what it asks for. */
 const PAGES = [
   { href: '/keyroom', label: 'Credentials', permission: 'credential.read' },
+  { href: '/keyroom/rotations', label: 'Rotation runs', permission: 'credential.read' },
+  { href: '/keyroom/keys', label: 'Signing keys', permission: 'credential.read' },
   { href: '/keyroom/people', label: 'People', permission: 'people.read' },
   { href: '/keyroom/policies', label: 'Policies', permission: 'policy.read' },
   { href: '/keyroom/connections', label: 'Connections', permission: 'connections.read' },

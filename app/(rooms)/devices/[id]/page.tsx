@@ -5,6 +5,8 @@ import { Sparkline } from '@/components/charts/Sparkline';
 import { EntriesTable } from '@/components/custody/EntriesTable';
 import { DeviceClips } from '@/components/fleet/DeviceClips';
 import { DeviceState, serviceStateWord } from '@/components/fleet/DeviceState';
+import { ReportLost } from '@/components/fleet/ReportLost';
+import { SentSince } from '@/components/fleet/SentSince';
 import { StateChange } from '@/components/fleet/StateChange';
 import { LiveRefresh } from '@/components/shell/LiveEvents';
 import { ButtonLink } from '@/components/ui/Button';
@@ -17,11 +19,15 @@ import { Time } from '@/components/ui/Time';
 import { readThread } from '@/lib/custody/readThread';
 import { mayFollow } from '@/lib/fleet/changeState';
 import { type DeviceView, readDevice } from '@/lib/fleet/readDevice';
-import { requirePage } from '@/lib/http/page';
+import { sentSince } from '@/lib/fleet/reportLost';
+import { granted, requirePage } from '@/lib/http/page';
 import { mayReadThread } from '@/lib/http/threadAccess';
 import { may } from '@/lib/identity/permissions';
 
-type Props = { params: Promise<{ id: string }> };
+type Props = {
+  params: Promise<{ id: string }>;
+  searchParams: Promise<Record<string, string | string[] | undefined>>;
+};
 
 export const metadata: Metadata = { title: 'Device' };
 
@@ -34,7 +40,7 @@ const CREDENTIAL_WORDS: Record<string, string> = {
 };
 
 /** One device: what it is, what it sends, what happened. */
-export default async function DevicePage({ params }: Props) {
+export default async function DevicePage({ params, searchParams }: Props) {
   const { person, services } = await requirePage('device.read');
   const view = await readDevice(services, person, decodeURIComponent((await params).id));
   if (!view) notFound();
@@ -43,6 +49,12 @@ export default async function DevicePage({ params }: Props) {
     ? await readThread(services, { kind: 'device', id: device.id }, { limit: 12 })
     : null;
   const write = may(person.roles, 'fleet.write');
+  const loser = granted(person, 'device.lost');
+  const since = Number((await searchParams).since);
+  const sent =
+    loser && Number.isSafeInteger(since) && since > 0
+      ? await sentSince(services, loser, device.id, since)
+      : null;
   const clinical = may(person.roles, 'recording.read');
   return (
     <>
@@ -93,8 +105,14 @@ export default async function DevicePage({ params }: Props) {
               />
             </Section>
           ) : null}
+          {loser && !['lost', 'retired', 'waiting'].includes(device.state) ? (
+            <Section title="Not to be found">
+              <ReportLost deviceId={device.id} assetTag={device.assetTag} version={device.version} />
+            </Section>
+          ) : null}
         </aside>
         <div className="grid min-w-0 content-start gap-8">
+          {sent ? <SentSince sinceMs={since} clips={sent} /> : null}
           <Section title="Noise floor of its own clips, daily median, 60 days">
             {view.noiseFloor.length === 0 ? (
               <p className="text-ink-soft">No clips yet.</p>
