@@ -83,10 +83,14 @@ export function OperationPart({ document, path }: { document: ApiDocument; path:
         <Part title="Problems">
           <ul className="grid gap-1">
             {refused.map(([status, { content }]) => (
-              <li key={status} className="flex flex-wrap gap-x-3">
+              <li key={status} className="flex flex-wrap items-center gap-x-3 gap-y-1">
                 <span className="mono">{status}</span>
                 {Object.keys(content?.['application/problem+json']?.examples ?? {}).map((code) => (
-                  <Link key={code} href={`/problems/${code}`} className="link mono">
+                  <Link
+                    key={code}
+                    href={`/problems/${code}`}
+                    className="link mono inline-flex min-h-6 items-center"
+                  >
                     {code}
                   </Link>
                 ))}
