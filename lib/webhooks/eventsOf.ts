@@ -22,6 +22,12 @@ const deviceOf = (entry: Entry, tagOf: AssetTag): Data => {
   return device ? { device } : {};
 };
 
+function stateChanged(entry: Entry, tagOf: AssetTag): [EventType, Data][] {
+  const data = { ...deviceOf(entry, tagOf), from: entry.before?.state, to: entry.after?.state };
+  const changed: [EventType, Data] = ['device.state-changed', data];
+  return entry.after?.state === 'lost' ? [changed, ['device.lost', data]] : [changed];
+}
+
 const MAKERS: Partial<Record<Entry['kind'], (entry: Entry, tagOf: AssetTag) => [EventType, Data][]>> = {
   measured: (entry, tagOf) => [
     [
@@ -52,18 +58,12 @@ const MAKERS: Partial<Record<Entry['kind'], (entry: Entry, tagOf: AssetTag) => [
     ['recording.quarantined', { recording: entry.detail?.number, ...deviceOf(entry, tagOf) }],
   ],
   'device-enrolled': (entry, tagOf) => [['device.enrolled', deviceOf(entry, tagOf)]],
-  'device-state-changed': (entry, tagOf) => {
-    const data = { ...deviceOf(entry, tagOf), from: entry.before?.state, to: entry.after?.state };
-    const changed: [EventType, Data] = ['device.state-changed', data];
-    return entry.after?.state === 'lost' ? [changed, ['device.lost', data]] : [changed];
-  },
-  'device-lost': (entry, tagOf) => {
-    const data = { ...deviceOf(entry, tagOf), from: entry.before?.state, to: entry.after?.state };
-    return [
-      ['device.state-changed', data],
-      ['device.lost', data],
-    ];
-  },
+  'device-state-changed': stateChanged,
+  'device-lost': stateChanged,
+  'device-found': stateChanged,
+  'credential-quarantined': (entry, tagOf) => [
+    ['credential.alarm', { ...deviceOf(entry, tagOf), why: 'its family is quarantined' }],
+  ],
   'credential-misused': (entry, tagOf) => [
     ['credential.alarm', { ...deviceOf(entry, tagOf), why: entry.detail?.why }],
   ],

@@ -149,15 +149,18 @@ describe('an event', () => {
     expect(receiver.asked).toEqual([]);
   });
 
-  test('of a lost device is two, to whoever asked for both', async () => {
-    await added({ events: ['device.lost', 'device.state-changed'] });
-    await told(LOST);
-    expect(receiver.asked.map(({ body }) => (JSON.parse(body) as { type: string }).type).sort()).toEqual([
-      'device.lost',
-      'device.state-changed',
-    ]);
-    expect(receiver.asked[0]?.body).not.toContain('taxi');
-  });
+  test.each(['device-state-changed', 'device-lost'] as const)(
+    'of a lost device (%s) is two, to whoever asked for both',
+    async (kind) => {
+      await added({ events: ['device.lost', 'device.state-changed'] });
+      await told({ ...LOST, kind });
+      expect(receiver.asked.map(({ body }) => (JSON.parse(body) as { type: string }).type).sort()).toEqual([
+        'device.lost',
+        'device.state-changed',
+      ]);
+      expect(receiver.asked[0]?.body).not.toContain('taxi');
+    },
+  );
 
   test('is told once by several processes that look at the same moment', async () => {
     await added();
