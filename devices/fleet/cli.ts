@@ -7,6 +7,8 @@ import { startFleet } from './fleet';
 import { FAULTS } from './options';
 
 const HELP = `npm run fleet -- --origin URL --codes FILE [options]
+npm run fleet -- --rotate [--devices N] [--seed S] [--faults WORD]   a house of its own, whose credentials and signing
+                    key rotate while the fleet uploads
 
   --origin URL      address of the service
   --codes FILE      JSON: [{ "serialNumber", "code", "sampleRateHz", "firmware" }]; without a code where the state

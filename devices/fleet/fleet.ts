@@ -44,7 +44,7 @@ async function live(options: FleetOptions, facts: FleetDevice, stopping: AbortSi
   try {
     // Not all at once in the first minute.
     await sleep(random() * meanMs);
-    while (!stopping.aborted && member.recorded < wanted) {
+    while (!stopping.aborted && (member.recorded < wanted || options.enough?.() === false)) {
       await member.round();
       await sleep(meanMs * (0.5 + random()));
     }

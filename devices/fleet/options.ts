@@ -52,6 +52,8 @@ export interface FleetOptions {
   pace: number;
   /** Each device records so many clips and ends when they are sent; without it the fleet runs until it is stopped. */
   clipsEach?: number;
+  /** Asked after `clipsEach`: while it says no, devices go on recording; each ends with nothing left to send. */
+  enough?(): boolean;
   /** Seconds of sound a clip; the recipes' own length without it. */
   clipSeconds?: number;
   faults?: FleetFaults;
