@@ -1,35 +1,24 @@
-import { mkdtemp, rm } from 'node:fs/promises';
-import { tmpdir } from 'node:os';
-import { join } from 'node:path';
 import { parseArgs } from 'node:util';
 import { isNotNull, sql } from 'drizzle-orm';
 import { z } from 'zod';
-import { applyMigrations } from '@/db/migrate';
 import { recording } from '@/db/schema';
 import type { FleetEvent } from '@/devices/fleet/events';
 import { startFleet } from '@/devices/fleet/fleet';
 import { FAULTS, type FleetDevice } from '@/devices/fleet/options';
-import { SERVICE_ACTOR } from '@/lib/custody/entry';
-import { issueEnrolmentCode } from '@/lib/enrolment/issueCode';
-import { addDevice } from '@/lib/fleet/addDevice';
-import { describeModel } from '@/lib/fleet/describeModel';
-import { createServices } from '@/lib/http/services';
 import { rotateSigningKey } from '@/lib/keys/changeSigningKey';
 import { currentSigningKey } from '@/lib/keys/signingKeys';
 import type { Authorized } from '@/lib/platform/authority';
-import { readEnv } from '@/lib/platform/env';
 import type { Services } from '@/lib/platform/services';
 import { readRun } from '@/lib/rotation/readRuns';
 import { startRun } from '@/lib/rotation/startRun';
-import { freePort, Household, untilAnswers } from './processes.mjs';
-import { localSettings, storageFakeArgs, webArgs } from './settings.mjs';
+import { listDevices, withTemporaryHouse } from './temporaryHouse';
 
 const HELP = `npm run fleet -- --rotate [--devices N] [--seed S] [--clips N] [--pace CLIPS] [--faults WORD]
 
   A house of its own on free ports; all credentials and the signing key rotate while the devices upload.
   --devices N   (1000)
   --clips N     at least so many a device (2)
-  --pace CLIPS  clips a minute over the whole fleet (2400)
+  --pace CLIPS  clips a minute over the whole fleet (1200)
   --seed S      the same seed gives the same sounds, clocks and faults (1)
   --faults WORD none, usual or harsh (none)`;
 
@@ -37,7 +26,7 @@ const Settings = z.object({
   rotate: z.literal(true, 'say --rotate, or name a service with --origin'),
   devices: z.coerce.number().int().min(1).max(10_000).default(1000),
   clips: z.coerce.number().int().min(1).default(2),
-  pace: z.coerce.number().positive().default(2400),
+  pace: z.coerce.number().positive().default(1200),
   seed: z.coerce.number().int().default(1),
   faults: z.enum(['none', 'usual', 'harsh']).default('none'),
 });
@@ -79,38 +68,6 @@ function readSettings(): Settings | null {
   }
 }
 
-/** The devices of the fleet, on the list and with a code each. */
-async function listDevices(services: Services, count: number): Promise<FleetDevice[]> {
-  const modelId = await describeModel(services, SERVICE_ACTOR, {
-    maker: 'Any',
-    name: 'Any model',
-    sampleRatesHz: [],
-    bitDepths: [],
-    mediaTypes: ['audio/wav'],
-    allowLossy: false,
-    longestClipSeconds: 600,
-    fullScaleNote: null,
-    checkIntervalDays: 365,
-    signsRequests: true,
-  });
-  const devices: FleetDevice[] = [];
-  for (let i = 1; i <= count; i++) {
-    const serialNumber = `FLEET-${i}`;
-    const deviceId = await addDevice(services, SERVICE_ACTOR, {
-      assetTag: `F-${String(i).padStart(5, '0')}`,
-      serialNumber,
-      modelId,
-      wardId: null,
-      udi: null,
-      lot: null,
-      firmware: null,
-    });
-    const { code } = await issueEnrolmentCode(services, SERVICE_ACTOR, deviceId);
-    devices.push({ serialNumber, code, sampleRateHz: RATE_HZ });
-  }
-  return devices;
-}
-
 /** What the devices did, as they tell it. */
 class Tally {
   readonly recorded = new Set<string>();
@@ -145,7 +102,8 @@ async function arrived(services: Services): Promise<{ whole: number; duplicated:
 }
 
 async function rotateWhileUploading(services: Services, settings: Settings, origin: string): Promise<number> {
-  const devices = await listDevices(services, settings.devices);
+  const listed = await listDevices(services, settings.devices);
+  const devices: FleetDevice[] = listed.map((device) => ({ ...device, sampleRateHz: RATE_HZ }));
   const tally = new Tally();
   let runId: string | null = null;
   let over = false;
@@ -223,42 +181,12 @@ async function report(
   return right ? 0 : 1;
 }
 
-async function main(settings: Settings): Promise<number> {
-  const folder = await mkdtemp(join(tmpdir(), 'bellkeep-fleet-'));
-  const household = new Household();
-  const stop = async () => {
-    await household.stop();
-    await rm(folder, { recursive: true, force: true });
-  };
-  for (const signal of ['SIGINT', 'SIGTERM'] as const)
-    process.on(signal, () => void stop().then(() => process.exit(130)));
-  try {
-    const ports = { webPort: await freePort(), storagePort: await freePort() };
-    const env = {
-      ...localSettings({ folder, ...ports }),
-      LOG_LEVEL: 'warn',
-      DEVICE_REQUESTS_PER_MINUTE: '100000',
-    };
-    const storage = household.start('the storage fake', storageFakeArgs(env, folder));
-    const services = await createServices(readEnv({ ...env, LOG_LEVEL: 'silent' }));
-    await applyMigrations(services.database);
-    await untilAnswers(`${env.S3_ENDPOINT}`, storage);
-    const web = household.start('the web server', webArgs(ports.webPort), {
-      env: { ...env, NODE_ENV: 'production' },
-    });
-    await untilAnswers(`${env.BELLKEEP_ORIGIN}/api/health`, web);
-    const code = await rotateWhileUploading(services, settings, env.BELLKEEP_ORIGIN);
-    services.database.close();
-    return code;
-  } finally {
-    await stop();
-  }
-}
-
 const settings = readSettings();
 process.exit(
   settings
-    ? await main(settings).catch((error: unknown) => {
+    ? await withTemporaryHouse('fleet', ({ services, origin }) =>
+        rotateWhileUploading(services, settings, origin),
+      ).catch((error: unknown) => {
         console.error(error instanceof Error ? error.message : error);
         return 1;
       })

@@ -1,8 +1,9 @@
 import type { Figure } from './figure';
 import { ingest } from './ingest';
+import { latency } from './latency';
 import { log } from './log';
 
-const BENCHES: Record<string, () => Promise<Figure[]>> = { ingest, log };
+const BENCHES: Record<string, () => Promise<Figure[]>> = { ingest, latency, log };
 
 const [name, ...rest] = process.argv.slice(2);
 const bench = BENCHES[name ?? ''];
