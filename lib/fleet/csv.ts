@@ -1,8 +1,12 @@
 import { stringify } from 'csv-stringify/sync';
 import type { FleetLine } from './readFleet';
 
-/** A cell that a spreadsheet would take for a formula is quoted with an apostrophe (OWASP, CSV Injection, from memory). */
-export const inertCell = (value: string): string => (/^[=+\-@\t\r]/.test(value) ? `'${value}` : value);
+/**
+ * A cell that a spreadsheet would take for a formula is quoted with an apostrophe (OWASP, CSV Injection, from memory):
+ * also behind spaces, and in full width, which some programs read as the plain sign.
+ */
+export const inertCell = (value: string): string =>
+  /^\s*[=+\-@＝＋－＠]|^[\t\r\n]/.test(value) ? `'${value}` : value;
 
 const iso = (at: number | null): string => (at === null ? '' : new Date(at).toISOString());
 

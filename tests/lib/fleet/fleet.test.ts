@@ -175,6 +175,12 @@ test('a cell that a spreadsheet would run is inert', () => {
   ]);
 });
 
+test('spaces, a line feed or full width before it hide no formula', () => {
+  const cells = [' =1+1', '\n=1', '\nx', '＝1+1', '－1', '＋1', '＠x'];
+  expect(cells.map(inertCell)).toEqual(cells.map((cell) => `'${cell}`));
+  expect(['a=1', 'x - y', '', 'HM-1 '].map(inertCell)).toEqual(['a=1', 'x - y', '', 'HM-1 ']);
+});
+
 test('the exported fleet is CSV with a line a device', async () => {
   const { rows } = await readFleet(house.services, engineer, FleetFilter.parse({ limit: 1000 }));
   const text = fleetCsv(rows);

@@ -7,6 +7,7 @@ import { may, PERMISSIONS, type Permission, ROLES, ROOMS, type Role } from '@/li
  */
 const MAY: Record<Role, Permission[]> = {
   biomed: [
+    'device.lost',
     'device.read',
     'fleet.read',
     'fleet.write',
@@ -32,6 +33,7 @@ const MAY: Record<Role, Permission[]> = {
     'connections.write',
     'credential.read',
     'credential.write',
+    'device.lost',
     'device.read',
     'fleet.read',
     'health.read',
