@@ -24,6 +24,8 @@ const PAGES: Record<string, string[]> = {
   ],
   tomasz: [
     '/keyroom',
+    '/keyroom/rotations',
+    '/keyroom/keys',
     '/keyroom/people',
     '/keyroom/people/invitations',
     '/keyroom/policies',
