@@ -13,8 +13,11 @@ const RATES = [4000, 8000, 44_100];
 const ALONE_ROUNDS = 24;
 const WARM_ROUNDS = 6;
 const CROWD = 50;
-const CROWD_CLIPS = 4;
+const CROWD_CLIPS = 2;
+const CROWD_ROUNDS = 2;
 const TARGET = 2.5;
+/** Two cores, of which the long file has one: engineering choice. */
+const BESIDE_TARGET = 3;
 const OVERNIGHT_SECONDS = 8 * 3600;
 
 const wavOf = (seconds: number, rate: number, seed: number): Uint8Array =>
@@ -117,32 +120,70 @@ async function measure(house: TemporaryHouse): Promise<Figure[]> {
         ...(await alone(house, first, `${seconds} s at ${rate / 1000} kHz`, wavOf(seconds, rate, 1))),
       );
   const short = wavOf(15, 4000, 2);
-  const put = quantile(await Promise.all(Array.from({ length: 50 }, () => barePut(house, short))), 0.5);
-  const without = await crowd(others, short);
+  const puts: number[] = [];
+  const without: number[] = [];
+  for (let round = 0; round < CROWD_ROUNDS; round++) {
+    // The bare PUTs come at once too: both sides have the same crowd to wait in.
+    puts.push(...(await Promise.all(others.map(() => barePut(house, short)))));
+    without.push(...(await crowd(others, short)));
+  }
   for (const fraction of [0.5, 0.95, 0.99])
     figures.push(
       figure(
         `15 s at 4 kHz, ${CROWD} devices at once, p${fraction * 100}`,
-        quantile(without, fraction) / put,
+        quantile(without, fraction) / quantile(puts, fraction),
       ),
     );
-  // An overnight file under analysis beside the same crowd: what the slowest short clip pays for it.
+  figures.push(await besideOvernight(first, others, short, Math.max(...without)));
+  return figures;
+}
+
+/**
+ * What the slowest short clip of a crowd pays for an overnight file that is being analysed. The file is uploaded first;
+ * the crowd begins when its bytes are there.
+ *
+ * @throws Error when the long file was done before the crowd: then nothing was measured
+ */
+async function besideOvernight(
+  device: Device,
+  others: readonly Device[],
+  short: Uint8Array,
+  slowestWithout: number,
+): Promise<Figure> {
   const night = new Uint8Array(44 + 2 * 4000 * OVERNIGHT_SECONDS);
   night.set(overnightHeader(night.length - 44));
   for (let at = 44; at < night.length; at += short.length - 44)
     night.set(short.subarray(44, Math.min(short.length, 44 + night.length - at)), at);
-  const long = send(first, night);
-  const beside = await crowd(others, short);
+  let done = false;
+  let uploaded: () => void = () => undefined;
+  const whenUploaded = new Promise<void>((resolve) => {
+    uploaded = resolve;
+  });
+  const long = sendRecording(
+    device,
+    { recordingNumber: 'night', bytes: night, mediaType: 'audio/wav', recordedAt: Date.now() },
+    {
+      onStep: async (step) => {
+        if (step === 'put') uploaded();
+      },
+    },
+  ).then(() => {
+    done = true;
+  });
+  await whenUploaded;
+  const first = await Promise.all(
+    others.map(async (other) => (await send(other, short)).milliseconds.complete),
+  );
+  if (done) throw new Error('the overnight file was done before the crowd: nothing was measured');
   await long;
-  const value = quantile(beside, 0.99) / quantile(without, 0.99);
-  figures.push({
-    name: `latency 15 s at 4 kHz, ${CROWD} devices at once: p99 beside an 8 h file / without`,
+  const value = Math.max(...first) / slowestWithout;
+  return {
+    name: `latency 15 s at 4 kHz, ${CROWD} devices at once: slowest beside an 8 h file / without`,
     value,
     unit: 'times',
-    target: 3,
-    ok: value <= 3,
-  });
-  return figures;
+    target: BESIDE_TARGET,
+    ok: value <= BESIDE_TARGET,
+  };
 }
 
 function overnightHeader(dataBytes: number): Uint8Array {
