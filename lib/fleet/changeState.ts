@@ -1,12 +1,13 @@
-import { and, eq, inArray, isNull } from 'drizzle-orm';
+import { eq } from 'drizzle-orm';
 import { z } from 'zod';
-import { credential, device, enrolmentCode, listeningSession, type SERVICE_STATES } from '@/db/schema';
+import { device, type SERVICE_STATES } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
 import type { NewEntry } from '@/lib/custody/entry';
 import { type Authorized, personActor } from '@/lib/platform/authority';
 import { Refusal } from '@/lib/platform/errors';
 import type { Services } from '@/lib/platform/services';
+import { endCredentials, endSessions } from './endOfService';
 
 type State = (typeof SERVICE_STATES)[number];
 
@@ -28,6 +29,8 @@ const FOLLOWS: Record<State, readonly State[]> = {
 };
 
 export const mayFollow = (from: State): readonly State[] => FOLLOWS[from];
+
+const OUT_OF_SERVICE = { code: 'device-moved', words: 'device taken out of service' } as const;
 
 interface Changed {
   assetTag: string;
@@ -86,68 +89,13 @@ export async function changeState(
         after: { state: change.to },
       },
     ];
-    if (change.to !== 'in-service') entries.push(...(await endSessions(tx, deviceId, actor, now)));
-    if (change.to === 'retired') entries.push(...(await endCredentials(tx, deviceId, actor, now)));
+    if (change.to !== 'in-service')
+      entries.push(...(await endSessions(tx, deviceId, actor, now, OUT_OF_SERVICE)));
+    if (change.to === 'retired')
+      entries.push(...(await endCredentials(tx, deviceId, actor, now, 'device retired')));
     await appendEntries(tx, now, entries);
     const answer = { assetTag: found.assetTag, state: change.to, version };
     await remember?.(tx, answer);
     return answer;
   });
-}
-
-async function endSessions(
-  tx: Tx,
-  deviceId: string,
-  actor: NewEntry['actor'],
-  now: number,
-): Promise<NewEntry[]> {
-  const closed = await tx
-    .update(listeningSession)
-    .set({ closedAt: now, closedBy: actor.id, closedWhy: 'device-moved' })
-    .where(and(eq(listeningSession.deviceId, deviceId), isNull(listeningSession.closedAt)))
-    .returning();
-  return closed.map((session) => ({
-    kind: 'session-closed',
-    actor,
-    subjects: [
-      { kind: 'session', id: session.id },
-      { kind: 'device', id: deviceId },
-      { kind: 'encounter', id: session.encounterId },
-    ],
-    detail: { number: session.number, why: 'device taken out of service' },
-  }));
-}
-
-async function endCredentials(
-  tx: Tx,
-  deviceId: string,
-  actor: NewEntry['actor'],
-  now: number,
-): Promise<NewEntry[]> {
-  await tx
-    .update(enrolmentCode)
-    .set({ withdrawnAt: now })
-    .where(
-      and(
-        eq(enrolmentCode.deviceId, deviceId),
-        isNull(enrolmentCode.usedAt),
-        isNull(enrolmentCode.withdrawnAt),
-      ),
-    );
-  const ended = await tx
-    .update(credential)
-    .set({ state: 'revoked', revokedAt: now, endReason: 'device retired' })
-    .where(
-      and(eq(credential.deviceId, deviceId), inArray(credential.state, ['issued', 'in-use', 'superseded'])),
-    )
-    .returning({ id: credential.id, label: credential.label });
-  return ended.map((row) => ({
-    kind: 'credential-revoked',
-    actor,
-    subjects: [
-      { kind: 'credential', id: row.id },
-      { kind: 'device', id: deviceId },
-    ],
-    detail: { label: row.label, why: 'device retired' },
-  }));
 }

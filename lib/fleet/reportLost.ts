@@ -1,14 +1,6 @@
-import { and, desc, eq, gte, inArray, isNull, sql } from 'drizzle-orm';
+import { and, desc, eq, gte, isNull, sql } from 'drizzle-orm';
 import { z } from 'zod';
-import {
-  credential,
-  device,
-  enrolmentCode,
-  listeningSession,
-  outbox,
-  recording,
-  type SERVICE_STATES,
-} from '@/db/schema';
+import { device, outbox, recording, type SERVICE_STATES } from '@/db/schema';
 import type { Tx } from '@/db/write';
 import { appendEntries } from '@/lib/custody/append';
 import type { Actor, NewEntry } from '@/lib/custody/entry';
@@ -16,6 +8,7 @@ import { type Authorized, personActor } from '@/lib/platform/authority';
 import { Refusal } from '@/lib/platform/errors';
 import { newId } from '@/lib/platform/ids';
 import type { Services } from '@/lib/platform/services';
+import { endCredentials, endSessions } from './endOfService';
 
 export const LostReport = z.strictObject({
   /** When it was last surely in hand, UTC ms. */
@@ -101,57 +94,15 @@ export async function reportLost(
 
 /** Credentials, codes, slots and the listening session of a device end. */
 async function closeAll(tx: Tx, deviceId: string, actor: Actor, now: number): Promise<NewEntry[]> {
-  const revoked = await tx
-    .update(credential)
-    .set({ state: 'revoked', revokedAt: now, endReason: 'device lost' })
-    .where(
-      and(eq(credential.deviceId, deviceId), inArray(credential.state, ['issued', 'in-use', 'superseded'])),
-    )
-    .returning({ id: credential.id, label: credential.label });
-  await tx
-    .update(enrolmentCode)
-    .set({ withdrawnAt: now })
-    .where(
-      and(
-        eq(enrolmentCode.deviceId, deviceId),
-        isNull(enrolmentCode.usedAt),
-        isNull(enrolmentCode.withdrawnAt),
-      ),
-    );
+  const revoked = await endCredentials(tx, deviceId, actor, now, 'device lost');
   // A presigned address may live a few minutes longer: what is put there is not taken up any more.
   await tx
     .update(recording)
     .set({ slotExpiresAt: now, stopped: 'slot-ended' })
     .where(and(eq(recording.deviceId, deviceId), eq(recording.stage, 'awaited'), isNull(recording.stopped)));
-  const closed = await tx
-    .update(listeningSession)
-    .set({ closedAt: now, closedBy: actor.id, closedWhy: 'device-lost' })
-    .where(and(eq(listeningSession.deviceId, deviceId), isNull(listeningSession.closedAt)))
-    .returning();
   return [
-    ...revoked.map(
-      (row): NewEntry => ({
-        kind: 'credential-revoked',
-        actor,
-        subjects: [
-          { kind: 'credential', id: row.id },
-          { kind: 'device', id: deviceId },
-        ],
-        detail: { label: row.label, why: 'device lost' },
-      }),
-    ),
-    ...closed.map(
-      (session): NewEntry => ({
-        kind: 'session-closed',
-        actor,
-        subjects: [
-          { kind: 'session', id: session.id },
-          { kind: 'device', id: deviceId },
-          { kind: 'encounter', id: session.encounterId },
-        ],
-        detail: { number: session.number, why: 'device lost' },
-      }),
-    ),
+    ...revoked,
+    ...(await endSessions(tx, deviceId, actor, now, { code: 'device-lost', words: 'device lost' })),
   ];
 }
 
